@@ -1,0 +1,1 @@
+"""Readers: a file on disk becomes a :class:`levelcrossing.model.Board`."""

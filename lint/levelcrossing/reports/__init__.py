@@ -1,0 +1,1 @@
+"""Reports: a :class:`levelcrossing.model.Review` becomes text. Nothing here prints."""
