@@ -721,6 +721,7 @@ class Drive:
     rated_low_amps: float | None
     basis: Basis
     source: str
+    tristate: bool = False
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -905,6 +906,12 @@ class Crossing:
     condition : str
         What must be true for the crossing to carry a signal at all.
     basis : Basis
+    stage_driver : PinModel or None
+        The pin that drives the receiver's island when the signal comes through a translator: its output on that side.
+    segment : bool
+        The first half of a way through a translator (driver to the translator's input); shown only when it is not sound.
+    inferred : str
+        How the level of a far end was inferred; empty when nothing was inferred. An inferred level proves nothing.
     """
 
     driver: PinModel | None
@@ -919,6 +926,9 @@ class Crossing:
     through: tuple[str, ...] = ()
     condition: str = ""
     basis: Basis = Basis.ASSUMED
+    stage_driver: PinModel | None = None
+    segment: bool = False
+    inferred: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

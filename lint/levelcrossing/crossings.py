@@ -1,0 +1,451 @@
+"""Every driver and receiver on different supplies within an island, and every rail that drives a receiver."""
+
+from __future__ import annotations
+
+import re
+from collections import defaultdict
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass, replace
+
+import networkx
+
+from levelcrossing import pins as pin_models
+from levelcrossing import shifters
+from levelcrossing.islands import SWITCH_KINDS
+from levelcrossing.model import (
+    Basis,
+    Board,
+    Crossing,
+    Element,
+    Island,
+    NotJudged,
+    PartFacts,
+    PinModel,
+    Rails,
+    Shifter,
+    Spread,
+)
+
+# Two supplies are one for this purpose when their usual voltages are this close [1]: 3.3 V and 3.35 V rails of two
+# regulators do not make a crossing, 3.0 V and 3.3 V do.
+SAME_SUPPLY = 0.04
+SERIES_AT_MOST_OHMS = 2_200.0
+CHAIN_KINDS = frozenset({"auto-buffer", "dual-dir", "dual-fixed", "i2c-buffer"})
+ANALOG_NET = re.compile(r".*(TMDS|USB_?D[PMN+-]|CSI|DSI|MDI|ETH|_D\d?[PN]$|[_.](P|N)$|LVDS|CANH|CANL|RS485|AUDIO|SPK|MIC|ANT)", re.I)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Survey:
+    """What was found: crossings, and the signal pins that could not be judged."""
+
+    crossings: tuple[Crossing, ...]
+    not_judged: tuple[NotJudged, ...]
+    far_ends: tuple[tuple[str, str, str], ...] = ()
+
+
+def same_supply(a: Spread, b: Spread) -> bool:
+    """Tell whether two supply voltages count as one."""
+    return abs(a.nominal - b.nominal) <= SAME_SUPPLY * max(abs(a.nominal), abs(b.nominal))
+
+
+def find_crossings(
+    board: Board,
+    rails: Rails,
+    pins: Mapping[tuple[str, str], PinModel],
+    facts: Mapping[str, PartFacts],
+    islands: Sequence[Island],
+) -> Survey:
+    """Find every crossing of a board.
+
+    Parameters
+    ----------
+    board : Board
+    rails : Rails
+    pins : mapping
+        (reference, number) to PinModel.
+    facts : mapping
+        Reference to the part's row.
+    islands : sequence of Island
+
+    Returns
+    -------
+    Survey
+        Crossings in a stable order, with what could not be judged and why.
+    """
+    finder = _Finder(board, rails, pins, facts, islands)
+    return finder.run()
+
+
+class _Finder:
+    def __init__(
+        self,
+        board: Board,
+        rails: Rails,
+        pins: Mapping[tuple[str, str], PinModel],
+        facts: Mapping[str, PartFacts],
+        islands: Sequence[Island],
+    ) -> None:
+        self.rails = rails
+        self.facts = facts
+        self.pins = pins
+        self.supplies_on: dict[str, list[tuple[str, Spread]]] = defaultdict(list)
+        for (reference, _), pin in pins.items():
+            volts = rails.volts(pin.net)
+            if pin.role == "supply" and volts is not None and volts.nominal > 0.5:
+                self.supplies_on[reference].append((pin.net, volts))
+        self.islands = [_Field(self._with_far_ends(island), rails) for island in islands]
+        self.by_net = {net: field for field in self.islands for net in field.island.nets}
+        self.not_judged: dict[tuple[str, str], NotJudged] = {}
+        self.far_ends: dict[tuple[str, str], str] = {}
+        self.drivers_of = {id(field): self._drivers(field) for field in self.islands}
+
+    def run(self) -> Survey:
+        found: list[Crossing] = []
+        for field in self.islands:
+            found.extend(self._direct(field))
+            found.extend(self._from_rails(field))
+        found.extend(self._through_translators())
+        found.extend(self._tied_inputs())
+        found = _two_way(found)
+        found.sort(key=_order)
+        return Survey(
+            crossings=tuple(found),
+            not_judged=tuple(self.not_judged[key] for key in sorted(self.not_judged)),
+            far_ends=tuple((part, number, why) for (part, number), why in sorted(self.far_ends.items())),
+        )
+
+    # -- far ends ----------------------------------------------------------------------------------------------------
+
+    def _with_far_ends(self, island: Island) -> Island:
+        """Give undeclared connector pins the level that the board suggests, marked as inferred."""
+        if not any(pin.role == "far-end" and not pin.declared_far_end for pin in island.pins):
+            return island
+        pulls = pull_ups(island, self.rails)
+        near = _near_groups(island)
+        new: list[PinModel] = []
+        for pin in island.pins:
+            if pin.role != "far-end" or pin.declared_far_end:
+                new.append(pin)
+                continue
+            pulled = [(rail, volts) for net in near[pin.net] for rail, volts, _ in pulls.get(net, ())]
+            new.append(self._inferred(pin, pulled))
+        return replace(island, pins=tuple(new))
+
+    def _inferred(self, pin: PinModel, pulled: Sequence[tuple[str, Spread]]) -> PinModel:
+        if pulled:
+            rail, volts = max(pulled, key=lambda pull: pull[1].nominal)
+            why = f"the other side of {pin.part}.{pin.number} is an open-drain line at the level of its pull-up to {rail}"
+            style, basis = True, Basis.TRACED
+        else:
+            supplies = self.supplies_on.get(pin.part, [])
+            nominal = {round(volts.nominal, 2) for _, volts in supplies}
+            if len(nominal) != 1:
+                return pin
+            rail, volts = supplies[0]
+            why = f"the other side of {pin.part}.{pin.number} works from {rail}, the only supply on {pin.part}"
+            style, basis = False, Basis.ASSUMED
+        return replace(
+            pin,
+            supply=rail,
+            supply_volts=volts,
+            drive=pin_models.far_end_drive(open_drain=style, basis=basis),
+            receive=replace(pin_models.cmos_receive(), basis=Basis.ASSUMED, source="an ordinary CMOS input is assumed beyond the connector"),
+            basis=Basis.ASSUMED,
+            inferred_far_end=True,
+            why=why,
+        )
+
+    # -- drivers -----------------------------------------------------------------------------------------------------
+
+    def _is_switch(self, pin: PinModel) -> bool:
+        known = self.facts.get(pin.part)
+        return known is not None and known.translator is not None and known.translator.kind in SWITCH_KINDS
+
+    def _drivers(self, field: _Field) -> list[PinModel]:
+        """Return the pins that may drive an island; possible drivers give way to certain ones."""
+        drivers = [pin for pin in field.island.pins if pin.drive is not None and not self._is_switch(pin)]
+        certain = [pin for pin in drivers if not pin.when and pin.role == "signal" and pin.drive and pin.drive.style == "push-pull"]
+        if any(pin.drive is not None and not pin.drive.tristate for pin in certain):
+            return [pin for pin in drivers if not pin.when and pin.role == "signal" or pin.declared_far_end]
+        readers = [pin for pin in field.island.pins if pin.receive is not None and pin.drive is None]
+        possible = [pin for pin in drivers if pin.when]
+        others = [pin for pin in drivers if not pin.when]
+        far = [pin for pin in field.island.pins if pin.role == "far-end"]
+        if len(possible) == 1 and not others and readers and not far:
+            alone = replace(possible[0], when="", basis=Basis.weakest(possible[0].basis, Basis.TRACED), why="the only pin that can drive this net")
+            return [alone]
+        return drivers
+
+    # -- the three sources of crossings --------------------------------------------------------------------------------
+
+    def _direct(self, field: _Field) -> Iterator[Crossing]:
+        receivers = [pin for pin in field.island.pins if pin.receive is not None and not self._is_switch(pin)]
+        drivers = self.drivers_of[id(field)]
+        self._note_unknown(field, drivers, receivers)
+        for driver in drivers:
+            for receiver in receivers:
+                if (driver.part, driver.number) == (receiver.part, receiver.number):
+                    continue
+                if driver.part == receiver.part and driver.role == "far-end":
+                    continue
+                if driver.supply_volts is None or receiver.supply_volts is None:
+                    continue
+                if driver.role == "far-end" and receiver.role == "far-end":
+                    continue
+                if same_supply(driver.supply_volts, receiver.supply_volts):
+                    continue
+                path = field.path(driver.net, receiver.net)
+                if path is not None:
+                    yield self._crossing(field, driver, receiver, path)
+
+    def _crossing(self, field: _Field, driver: PinModel, receiver: PinModel, path: Sequence[Element], **more: object) -> Crossing:
+        shifter = shifters.recognise(field.island, path, driver, receiver, self.rails, self.facts)
+        inferred = "; ".join(dict.fromkeys(pin.why for pin in (driver, receiver) if pin.inferred_far_end))
+        crossing = Crossing(
+            driver=driver,
+            driver_rail=driver.supply,
+            receiver=receiver,
+            receiver_rail=receiver.supply,
+            link=tuple(dict.fromkeys(element.part for element in path)),
+            shifter=shifter,
+            island=field.island.index,
+            inverting=shifters.inverts(path, driver.net),
+            condition=driver.when,
+            inferred=inferred,
+            basis=Basis.weakest(driver.basis, receiver.basis, *(element.basis for element in path)),
+        )
+        return replace(crossing, **more) if more else crossing  # type: ignore[arg-type]
+
+    def _from_rails(self, field: _Field) -> Iterator[Crossing]:
+        """Rails that reach a receiver through resistors (a pull-up to another supply), whatever drives the net."""
+        drivers = self.drivers_of[id(field)]
+        near = field.near
+        pulls = field.pulls
+        for receiver in field.island.pins:
+            if receiver.receive is None or receiver.supply_volts is None or receiver.role == "far-end" or self._is_switch(receiver):
+                continue
+            if _held(drivers, near[receiver.net]):
+                continue
+            seen: set[str] = set()
+            for net in near[receiver.net]:
+                for rail, volts, element in pulls.get(net, ()):
+                    if rail in seen or same_supply(volts, receiver.supply_volts):
+                        continue
+                    seen.add(rail)
+                    path = field.path(net, receiver.net) or []
+                    yield Crossing(
+                        driver=None,
+                        driver_rail=rail,
+                        receiver=receiver,
+                        receiver_rail=receiver.supply,
+                        link=tuple(dict.fromkeys([element.part, *(step.part for step in path)])),
+                        shifter=Shifter(kind="series-resistor", parts=(element.part,), title=f"pull-up to {rail}"),
+                        island=field.island.index,
+                        condition="",
+                        basis=Basis.weakest(receiver.basis, self.rails.by_net[rail].basis),
+                    )
+
+    def _through_translators(self) -> Iterator[Crossing]:
+        for reference in sorted(self.facts):
+            known = self.facts[reference]
+            if known.translator is None or known.translator.kind not in CHAIN_KINDS:
+                continue
+            channels: dict[str, dict[str, PinModel]] = defaultdict(dict)
+            for (part, _), pin in self.pins.items():
+                if part == reference and pin.facts is not None and pin.facts.channel and pin.facts.side and pin.net in self.by_net:
+                    channels[pin.facts.channel][pin.facts.side] = pin
+            for _, sides in sorted(channels.items()):
+                if set(sides) == {"a", "b"}:
+                    yield from self._chain(reference, known, sides["a"], sides["b"])
+                    yield from self._chain(reference, known, sides["b"], sides["a"])
+
+    def _chain(self, reference: str, known: PartFacts, into: PinModel, out: PinModel) -> Iterator[Crossing]:
+        if into.receive is None or out.drive is None or into.supply_volts is None or out.supply_volts is None:
+            return
+        near_side, far_side = self.by_net[into.net], self.by_net[out.net]
+        if near_side is far_side:
+            return
+        sources = [
+            pin
+            for pin in self.drivers_of[id(near_side)]
+            if pin.part != reference and pin.supply_volts is not None and near_side.path(pin.net, into.net) is not None
+        ]
+        sinks = [
+            pin
+            for pin in far_side.island.pins
+            if pin.part != reference and pin.receive is not None and pin.supply_volts is not None and not self._is_switch(pin)
+        ]
+        shifter = Shifter(kind="translator", parts=(reference,), title=known.title)
+        for source in sources:
+            for sink in sinks:
+                assert source.supply_volts is not None and sink.supply_volts is not None
+                if same_supply(source.supply_volts, sink.supply_volts) or (source.role == "far-end" and sink.role == "far-end"):
+                    continue
+                path = far_side.path(out.net, sink.net)
+                if path is None:
+                    continue
+                condition = " and ".join(dict.fromkeys(text for text in (source.when, out.when) if text))
+                yield Crossing(
+                    driver=source,
+                    driver_rail=source.supply,
+                    receiver=sink,
+                    receiver_rail=sink.supply,
+                    link=tuple(dict.fromkeys([*(step.part for step in near_side.path(source.net, into.net) or ()), reference, *(step.part for step in path)])),
+                    shifter=shifter,
+                    island=far_side.island.index,
+                    through=(reference,),
+                    condition=condition,
+                    stage_driver=replace(out, when=""),
+                    inferred="; ".join(dict.fromkeys(pin.why for pin in (source, sink) if pin.inferred_far_end)),
+                    basis=Basis.weakest(source.basis, sink.basis, out.basis),
+                )
+
+    def _tied_inputs(self) -> Iterator[Crossing]:
+        """Inputs tied straight to a rail that is not their own supply."""
+        for pin in self.pins.values():
+            if pin.role != "signal" or pin.receive is None or pin.supply_volts is None:
+                continue
+            volts = self.rails.volts(pin.net)
+            if volts is None or volts.nominal < 0.5 or same_supply(volts, pin.supply_volts) or self._is_switch(pin):
+                continue
+            yield Crossing(
+                driver=None,
+                driver_rail=pin.net,
+                receiver=pin,
+                receiver_rail=pin.supply,
+                shifter=Shifter(kind="wire", title=f"tied to {pin.net}"),
+                island=-1,
+                basis=Basis.weakest(pin.basis, self.rails.by_net[pin.net].basis),
+            )
+
+    # -- what cannot be judged -----------------------------------------------------------------------------------------
+
+    def _note_unknown(self, field: _Field, drivers: Sequence[PinModel], receivers: Sequence[PinModel]) -> None:
+        active = {(pin.part, pin.number): pin for pin in [*drivers, *receivers] if pin.role == "signal"}
+        if not active:
+            return
+        for key, pin in active.items():
+            others = [other for other in field.island.pins if (other.part, other.number) != key]
+            if pin.supply_volts is None and others:
+                self.not_judged[key] = NotJudged(part=pin.part, pin=pin.number, name=pin.name, net=pin.net, why=pin.why)
+        for pin in field.island.pins:
+            if pin.role == "far-end" and pin.supply_volts is None and not any(ANALOG_NET.match(net) for net in (pin.net, pin.name)):
+                self.far_ends[pin.part, pin.number] = f"nothing tells the level beyond {pin.part}.{pin.number}"
+
+
+class _Field:
+    """An island with its directed graph of signal ways."""
+
+    def __init__(self, island: Island, rails: Rails) -> None:
+        self.island = island
+        self.pulls = pull_ups(island, rails)
+        self.near = _near_groups(island)
+        self.graph: networkx.MultiDiGraph[str] = networkx.MultiDiGraph()
+        self.graph.add_nodes_from(island.nets)
+        for element in island.elements:
+            for source, target in _signal_ways(element):
+                if source in self.graph and target in self.graph:
+                    self.graph.add_edge(source, target, element=element)
+        self._paths: dict[tuple[str, str], list[Element] | None] = {}
+
+    def path(self, source: str, target: str) -> list[Element] | None:
+        """Return the elements on the shortest way between two nets, or None when no signal can go that way."""
+        if source == target:
+            return []
+        key = (source, target)
+        if key not in self._paths:
+            try:
+                nets = networkx.shortest_path(self.graph, source, target)
+            except (networkx.NetworkXNoPath, networkx.NodeNotFound):
+                self._paths[key] = None
+            else:
+                steps = []
+                for a, b in zip(nets, nets[1:], strict=False):
+                    edges = self.graph.get_edge_data(a, b)
+                    steps.append(min((data["element"] for data in edges.values()), key=_preference))
+                self._paths[key] = steps
+        return self._paths[key]
+
+
+def _preference(element: Element) -> tuple[int, float, str]:
+    """Prefer the element that carries the signal best: link, switch, transistor, resistor by value, diode."""
+    order = {"link": 0, "switch": 1, "mosfet": 2, "bipolar": 3, "resistor": 4, "diode": 5, "zener": 6}
+    return order.get(element.kind, 9), element.ohms.nominal if element.ohms else 0.0, element.part
+
+
+def _signal_ways(element: Element) -> Iterator[tuple[str, str]]:
+    """Yield the net pairs between which an element carries a signal, in its direction."""
+    match element.kind:
+        case "mosfet":
+            drain, gate, source = element.nets
+            yield from ((drain, source), (source, drain), (gate, drain), (gate, source))
+        case "bipolar":
+            collector, base, emitter = element.nets
+            yield from ((collector, emitter), (emitter, collector), (base, collector), (base, emitter))
+        case "capacitor":
+            return
+        case _:
+            yield element.nets[0], element.nets[1]
+            yield element.nets[1], element.nets[0]
+
+
+def pull_ups(island: Island, rails: Rails) -> dict[str, list[tuple[str, Spread, Element]]]:
+    """Return, by net, the positive rails that reach it through one resistor: rail, its voltage, the resistor."""
+    found: dict[str, list[tuple[str, Spread, Element]]] = defaultdict(list)
+    for element in island.elements:
+        if element.kind not in ("resistor", "link"):
+            continue
+        for net, other in (element.nets, element.nets[::-1]):
+            volts = rails.volts(other)
+            if net in island.nets and volts is not None and volts.nominal > 0.5:
+                found[net].append((other, volts, element))
+    return found
+
+
+def _near_groups(island: Island) -> dict[str, tuple[str, ...]]:
+    """Return for each net those it is tied to by links and small series resistors, itself first."""
+    graph: networkx.Graph[str] = networkx.Graph()
+    graph.add_nodes_from(island.nets)
+    for element in island.elements:
+        small = element.kind == "link" or (element.kind == "resistor" and element.ohms is not None and element.ohms.nominal <= SERIES_AT_MOST_OHMS)
+        if small and element.nets[0] in graph and element.nets[1] in graph:
+            graph.add_edge(*element.nets)
+    groups: dict[str, tuple[str, ...]] = {}
+    for component in networkx.connected_components(graph):
+        for net in component:
+            groups[net] = (net, *sorted(component - {net}))
+    return groups
+
+
+def _held(drivers: Sequence[PinModel], nets: Sequence[str]) -> bool:
+    """Tell whether a push-pull output that never lets go holds one of these nets."""
+    return any(
+        pin.net in nets and not pin.when and pin.role == "signal" and pin.drive is not None and pin.drive.style == "push-pull" and not pin.drive.tristate
+        for pin in drivers
+    )
+
+
+def _two_way(found: Sequence[Crossing]) -> list[Crossing]:
+    ends = {_ends(crossing) for crossing in found if crossing.driver is not None}
+    return [
+        replace(crossing, two_way=True) if crossing.driver is not None and _ends(crossing)[::-1] in ends else crossing for crossing in found
+    ]
+
+
+def _ends(crossing: Crossing) -> tuple[tuple[str, str], tuple[str, str]]:
+    assert crossing.driver is not None
+    return (crossing.driver.part, crossing.driver.number), (crossing.receiver.part, crossing.receiver.number)
+
+
+def _order(crossing: Crossing) -> tuple[object, ...]:
+    from levelcrossing.units import natural_key
+
+    driver = crossing.driver
+    return (
+        natural_key(crossing.receiver.part),
+        natural_key(crossing.receiver.number),
+        natural_key(driver.part if driver else ""),
+        natural_key(driver.number if driver else ""),
+        crossing.driver_rail,
+        crossing.link,
+    )
