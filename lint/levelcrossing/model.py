@@ -931,6 +931,19 @@ class Crossing:
     inferred: str = ""
 
 
+    @property
+    def source(self) -> str:
+        """Name the driver for people: ``U1.5 (TX) on +5V``, or ``+5V through R3``."""
+        if self.driver is None:
+            return f"{self.driver_rail} through {self.link[0]}" if self.link else self.driver_rail
+        return self.driver.label + (f" on {self.driver_rail}" if self.driver_rail else "")
+
+    @property
+    def target(self) -> str:
+        """Name the receiver for people: ``U2.7 (RX) on +3V3``."""
+        return self.receiver.label + (f" on {self.receiver_rail}" if self.receiver_rail else "")
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Margin:
     """How far a quantity stays on the good side of its limit, over all corners; negative means it is exceeded.
@@ -1087,6 +1100,49 @@ class SolvedCrossing:
     assumptions: tuple[str, ...] = ()
     proposal: str = ""
 
+    def finding(
+        self, index: int, rule: str, outcome: Outcome, text: str, *, remedy: str = "", cause: str = "", condition: str = "", part: str = ""
+    ) -> Finding:
+        """Return a finding at the receiver of this crossing.
+
+        A level that was only inferred proves nothing: the outcome becomes ``unknown`` and the condition says on what it
+        depends. A receiver of which nothing is known adds that to the condition.
+
+        Parameters
+        ----------
+        index : int
+            Place of this crossing among the case's crossings.
+        rule, outcome, text, remedy, cause
+            As of :class:`Finding`.
+        condition : str
+            A further condition.
+        part : str
+            The part at fault when that is not the receiver's (its pin and net stay the receiver's otherwise).
+        """
+        crossing = self.crossing
+        conditions = [crossing.condition, condition]
+        receive = crossing.receiver.receive
+        if receive is not None and receive.basis is Basis.ASSUMED and not crossing.receiver.inferred_far_end:
+            conditions.append(f"{crossing.receiver.part} is an ordinary CMOS part (no data on it)")
+        if crossing.inferred:
+            conditions.append(crossing.inferred)
+            outcome = Outcome.UNKNOWN
+        sources = [pin.source for pin in (receive, (crossing.driver.drive if crossing.driver else None)) if pin is not None]
+        return Finding(
+            rule=rule,
+            outcome=outcome,
+            text=text,
+            remedy=remedy or self.proposal,
+            part=part or crossing.receiver.part,
+            pin="" if part else crossing.receiver.number,
+            net=crossing.receiver.net,
+            condition=" and ".join(dict.fromkeys(condition for condition in conditions if condition)),
+            basis=crossing.basis,
+            crossing=index,
+            sources=tuple(dict.fromkeys(sources)),
+            cause=cause,
+        )
+
 
 # ---------------------------------------------------------------------------------------------------- findings, review
 
@@ -1233,7 +1289,10 @@ class Review:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class PinSetting:
-    """What the user declared of a pin: tolerated volts, direction, levels, rail (net name or volts)."""
+    """What the user declared of a pin: tolerated volts, direction, levels, rail (net name or volts).
+
+    ``levels`` is ``ttl``, ``cmos`` or empty. ``volts`` is set when ``rail`` was given as a voltage.
+    """
 
     tolerates_volts: float | None = None
     drives: bool | None = None
@@ -1244,6 +1303,7 @@ class PinSetting:
     rail: str = ""
     volts: Spread | None = None
     line: int = 0
+    levels: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -1283,6 +1343,7 @@ class Settings:
     thin_margin_volts : float
         Below this a margin is called thin [V].
     stop_at : Outcome or None
+        None when the settings do not say, and when ``never_stops`` says that no outcome stops.
     today : str
         Day on which waivers are judged, ``YYYY-MM-DD``; empty when unknown.
     """
@@ -1299,3 +1360,4 @@ class Settings:
     thin_margin_volts: float = 0.1
     stop_at: Outcome | None = None
     today: str = ""
+    never_stops: bool = False
