@@ -1231,6 +1231,7 @@ class CaseFile:
     islands: tuple[Island, ...]
     crossings: tuple[SolvedCrossing, ...]
     settings: Settings
+    not_judged: tuple[tuple[PinModel, str], ...] = ()
 
     def pins_of(self, part: str) -> Iterator[PinModel]:
         """Yield the pins of one part."""
@@ -1357,7 +1358,7 @@ class Settings:
     rail_tolerance: float = 0.05
     resistor_tolerance: float = 0.01
     stray_farads: float = 10e-12
-    thin_margin_volts: float = 0.1
+    thin_margin_volts: float = 0.05
     stop_at: Outcome | None = None
     today: str = ""
     never_stops: bool = False

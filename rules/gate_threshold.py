@@ -1,0 +1,55 @@
+"""A shifter's MOSFET is not sure to conduct at the gate voltage it gets.
+
+Why: the threshold of a part spreads over a volt or more. A 2N7000 may need 3.0 V where a 3.3 V gate over a 0.4 V low
+leaves 2.9 V: one sample works on the bench, the next batch does not.
+
+What to do: take a part whose greatest threshold lies well below the gate voltage (at 3.3 V a BSS138, at 1.8 V an FDV301N
+class part).
+
+Speaks when the gate voltage less the driver's low, at the least supply, does not exceed the greatest threshold, and the
+solved low fails at that corner.
+
+Stays quiet when the low is reached at every corner of the threshold.
+"""
+
+from collections.abc import Iterator
+
+from levelcrossing.model import CaseFile, Finding, MosfetFacts, Outcome
+from levelcrossing.units import format_volts
+
+NAME = "gate-threshold"
+OUTCOME = Outcome.MALFUNCTION
+SOURCES = ("VGS(th) rows of the transistor's data sheet", "NXP AN10441 rev. 01")
+EXPLAINS = ("low-not-reached", "margin-thin")
+
+
+def check(case: CaseFile) -> Iterator[Finding]:
+    """Yield one finding per transistor whose threshold may be too high."""
+    done: set[str] = set()
+    for index, solved in enumerate(case.crossings):
+        crossing = solved.crossing
+        if crossing.shifter.kind not in ("mosfet-pass", "inverting-stage"):
+            continue
+        element = next((element for element in solved.elements if element.part in crossing.shifter.parts and isinstance(element.facts, MosfetFacts)), None)
+        if element is None or element.part in done:
+            continue
+        failing = [state for state in solved.states.values() if state.solved and state.low_margin is not None and state.low_margin.spread.low < -1e-6]
+        if not failing:
+            continue
+        state = failing[0]
+        assert state.low_margin is not None
+        volts = case.rails.volts(element.nets[1])
+        if crossing.shifter.kind == "mosfet-pass" and volts is None:
+            continue
+        gate = volts.low if volts is not None else (crossing.driver.supply_volts.low if crossing.driver is not None and crossing.driver.supply_volts is not None else 0.0)
+        threshold = element.facts.threshold_volts
+        drive = gate - max(state.driver_volts.high, 0.0) if crossing.shifter.kind == "mosfet-pass" else gate
+        if drive > threshold.high + 0.3:
+            continue
+        done.add(element.part)
+        text = (
+            f"{element.part} ({element.value}) gets {format_volts(drive)} from gate to source, its threshold may be as high as {format_volts(threshold.high)} "
+            f"(usually {format_volts(threshold.nominal)}): {crossing.target} then stays at {format_volts(state.low_margin.at)} where a low ends at {format_volts(state.low_margin.limit)}."
+        )
+        outcome = Outcome.MALFUNCTION if state.low_margin.spread.nominal < 0 else Outcome.MARGINAL
+        yield solved.finding(index, NAME, outcome, text, part=element.part, remedy=f"Take a transistor whose greatest threshold is below about {format_volts(max(drive - 0.5, 0.3))}.", cause=f"threshold {element.part}")
