@@ -638,6 +638,8 @@ class Rail:
         A sentence when two pieces of evidence contradict each other; empty otherwise.
     load_farads : float
         Decoupling capacitance found on the net [F].
+    fed_by : str
+        Net that a regulator or converter makes this rail from; empty when it comes from elsewhere or nothing tells.
     """
 
     net: str
@@ -648,6 +650,7 @@ class Rail:
     ground: bool = False
     disagreement: str = ""
     load_farads: float = 0.0
+    fed_by: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
