@@ -11,7 +11,8 @@ import contextlib
 import os
 import subprocess
 import tempfile
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Sequence, Set
+from dataclasses import dataclass
 from pathlib import Path, PurePosixPath
 
 from levelcrossing.errors import CommandError
@@ -23,43 +24,70 @@ _MOST_SECONDS = 120
 _REGULAR = (b"100644", b"100755")
 
 
-@contextlib.contextmanager
-def files_of(path: str, revision: str) -> Iterator[str | None]:
-    """Provide a reviewed file or folder as it was in a revision, with the sheets and settings around it.
+@dataclass(frozen=True, slots=True, kw_only=True)
+class OldFiles:
+    """A revision's files in a temporary folder.
 
     Parameters
     ----------
-    path : str
-        File or folder in the work tree of a git repository.
+    top : Path
+        The work tree's root.
+    root : Path
+        The temporary folder that stands for it.
+    """
+
+    top: Path
+    root: Path
+
+    def old(self, path: str) -> str | None:
+        """Return where the old version of a file or folder of the work tree is; None when the revision lacks it."""
+        there = self.root / _within(path, self.top)
+        return str(there) if there.exists() else None
+
+
+@contextlib.contextmanager
+def files_of(paths: Sequence[str], revision: str) -> Iterator[OldFiles]:
+    """Provide reviewed files or folders as they were in a revision, with the sheets and settings around them.
+
+    Parameters
+    ----------
+    paths : sequence of str
+        Files or folders in the work tree of one git repository; at least one.
     revision : str
         Any name that git gives to a commit.
 
     Yields
     ------
-    str or None
-        The path of the old file in a temporary folder; None when the revision does not have it.
+    OldFiles
+        Valid until the context ends.
 
     Raises
     ------
     CommandError
         When there is no git, no repository or no such revision.
     """
-    target = Path(os.path.abspath(path))
-    folder = target if target.is_dir() else target.parent
+    first = Path(os.path.abspath(paths[0]))
+    folder = first if first.is_dir() else first.parent
     if not folder.is_dir():
-        raise CommandError(f"{path} is not in an existing folder", remedy="name a file of the work tree")
-    top = Path(_git(folder, "rev-parse", "--show-toplevel").decode("utf-8", "surrogateescape").rstrip("\n"))
+        raise CommandError(f"{paths[0]} is not in an existing folder", remedy="name a file of the work tree")
+    top = Path(_git(folder, "rev-parse", "--show-toplevel").decode("utf-8", "surrogateescape").rstrip("\n")).resolve()
     commit = _commit(folder, revision)
-    try:
-        within = (folder.resolve() if target.is_dir() else folder.resolve() / target.name).relative_to(top.resolve())
-    except ValueError:
-        raise CommandError(f"{path} lies outside of the repository", remedy="name a file of the work tree") from None
+    reviewed = {_within(path, top).as_posix() for path in paths}
     with tempfile.TemporaryDirectory(prefix="levelcrossing-") as temporary:
         root = Path(temporary).resolve()
         (root / ".git").mkdir()  # the search for settings ends here
-        _write_tree(folder, commit, root, within.as_posix())
-        old = root / within
-        yield str(old) if old.exists() else None
+        _write_tree(folder, commit, root, reviewed)
+        yield OldFiles(top=top, root=root)
+
+
+def _within(path: str, top: Path) -> Path:
+    """Return a path relative to the repository's root."""
+    target = Path(os.path.abspath(path))
+    try:
+        # The folder may be reached through a link; the file itself is named as git names it.
+        return (target.parent.resolve() / target.name).relative_to(top) if target != top else Path()
+    except ValueError:
+        raise CommandError(f"{path} lies outside of the repository", remedy="name a file of the work tree") from None
 
 
 def _commit(folder: Path, revision: str) -> str:
@@ -73,7 +101,7 @@ def _commit(folder: Path, revision: str) -> str:
     return name.decode("ascii").strip()
 
 
-def _write_tree(folder: Path, commit: str, root: Path, reviewed: str) -> None:
+def _write_tree(folder: Path, commit: str, root: Path, reviewed: Set[str]) -> None:
     """Write what a review may need of a commit below ``root``."""
     wanted: list[tuple[bytes, PurePosixPath]] = []
     for entry in _git(folder, "ls-tree", "-r", "-z", "--full-tree", commit).split(b"\0"):
@@ -82,7 +110,7 @@ def _write_tree(folder: Path, commit: str, root: Path, reviewed: str) -> None:
         meta, _, raw = entry.partition(b"\t")
         mode, _, blob = meta.split(b" ")[:3]
         name = PurePosixPath(raw.decode("utf-8", "surrogateescape"))
-        needed = name.suffix in _ENDINGS or name.name == FILE_NAME or str(name) == reviewed
+        needed = name.suffix in _ENDINGS or name.name == FILE_NAME or str(name) in reviewed
         if needed and mode in _REGULAR and _stays_inside(name):
             wanted.append((blob, name))
     written = 0
@@ -97,7 +125,7 @@ def _write_tree(folder: Path, commit: str, root: Path, reviewed: str) -> None:
 
 
 def _stays_inside(name: PurePosixPath) -> bool:
-    odd = any(part in ("", ".", "..") or part.casefold() == ".git" or "\\" in part or ":" in part for part in name.parts)
+    odd = any(part in (".", "..") or part.casefold() == ".git" or "\\" in part or ":" in part for part in name.parts)
     return not name.is_absolute() and not odd
 
 
