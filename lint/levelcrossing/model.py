@@ -1347,7 +1347,7 @@ class Settings:
     thin_margin_volts : float
         Below this a margin is called thin [V].
     stop_at : Outcome or None
-        None when the settings do not say, and when ``never_stops`` says that no outcome stops.
+        None when the settings do not say, ``SOUND`` for never.
     today : str
         Day on which waivers are judged, ``YYYY-MM-DD``; empty when unknown.
     """
@@ -1364,4 +1364,3 @@ class Settings:
     thin_margin_volts: float = 0.05
     stop_at: Outcome | None = None
     today: str = ""
-    never_stops: bool = False

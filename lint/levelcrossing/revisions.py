@@ -39,9 +39,13 @@ class OldFiles:
     top: Path
     root: Path
 
+    def there(self, path: str) -> Path:
+        """Return where the old version of a file or folder of the work tree is, or would be."""
+        return self.root / _within(path, self.top)
+
     def old(self, path: str) -> str | None:
-        """Return where the old version of a file or folder of the work tree is; None when the revision lacks it."""
-        there = self.root / _within(path, self.top)
+        """Return the old version of a file; None when the revision lacks it."""
+        there = self.there(path)
         return str(there) if there.exists() else None
 
 

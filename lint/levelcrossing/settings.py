@@ -285,7 +285,6 @@ class _Document:
         rail_tolerance = self._fraction(tolerances, "rails", defaults.rail_tolerance)
         margins = self._table("margins", ("thin",))
         loads = self._table("loads", ("stray",))
-        stop_at, never = self._stop()
         pins = self._pin_table("pins", rail_tolerance)
         far_ends = self._pin_table("far_ends", rail_tolerance)
         for place, setting in far_ends.items():
@@ -308,8 +307,7 @@ class _Document:
             thin_margin_volts=self._number(
                 ("margins", "thin"), margins.get("thin", defaults.thin_margin_volts), "V", 'voltage such as "0.1 V"'
             ),
-            stop_at=stop_at,
-            never_stops=never,
+            stop_at=self._stop(),
         )
 
     # -- errors ------------------------------------------------------------------------------------------------------
@@ -370,13 +368,13 @@ class _Document:
             self._fail(path, f"{_joined(path)} is {shown(value)}, not a bit rate", 'write "8M" or "400k" or 115200')
         return rate
 
-    def _stop(self) -> tuple[Outcome | None, bool]:
+    def _stop(self) -> Outcome | None:
         if "stop_at" not in self._document:
-            return None, False
+            return None
         word = self._document["stop_at"]
         if not isinstance(word, str) or word not in STOP_WORDS:
             self._fail(("stop_at",), f"stop_at is {shown(word)}", nearest(str(word), STOP_WORDS))
-        return (None, True) if word == "never" else (Outcome(word), False)
+        return Outcome.SOUND if word == "never" else Outcome(word)
 
     # -- pins and far ends -------------------------------------------------------------------------------------------
 
@@ -387,7 +385,7 @@ class _Document:
             if not _PLACE_KEY.fullmatch(place):
                 self._fail(path, f"{shown(place)} is neither a pin nor a part", 'write "U3.4" or "U3"')
             if not isinstance(value, dict):
-                self._fail(path, f"{_joined(path)} must be a table, not {shown(value)}", "write {rail = \"5\"}")
+                self._fail(path, f"{_joined(path)} must be a table, not {shown(value)}", 'write {rail = "5"}')
             self._check_keys(value, PIN_KEYS, path)
             try:
                 setting = pin_setting(value, tolerance)
