@@ -600,6 +600,54 @@ class RegulatorFacts:
     provenance: Provenance
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class BusMode:
+    """One speed class of a bus: bit rate [bit/s], edge limits [s], largest load [F], required sink current [A] at a low [V]."""
+
+    name: str
+    bits_per_second: float
+    rise_max_s: float | None = None
+    fall_max_s: float | None = None
+    load_max_farads: float | None = None
+    sink_amps: float | None = None
+    sink_volts: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class BusFacts:
+    """What the trade data says of a kind of bus.
+
+    Parameters
+    ----------
+    name : str
+        ``i2c``, ``spi``, ``uart`` ...
+    nets, pins : tuple of (str, str)
+        Role (``scl``) and regular expression on net names (last component) and on pin names.
+    bits_per_second : float
+        Rate to assume when nothing is said [bit/s].
+    rise_max_s : float or None
+        Longest 10-90 % rise that the bus allows [s] (30-70 % for I2C).
+    rise_fraction : float or None
+        The same as a fraction of the bit time [1].
+    open_drain, both_directions : bool
+    modes : tuple of BusMode
+    notes : tuple of str
+    provenance : Provenance
+    """
+
+    name: str
+    nets: tuple[tuple[str, str], ...]
+    pins: tuple[tuple[str, str], ...]
+    bits_per_second: float
+    rise_max_s: float | None
+    rise_fraction: float | None
+    open_drain: bool
+    both_directions: bool
+    modes: tuple[BusMode, ...]
+    notes: tuple[str, ...]
+    provenance: Provenance
+
+
 # --------------------------------------------------------------------------------------------------------------- rails
 
 
