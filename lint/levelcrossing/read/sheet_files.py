@@ -383,14 +383,16 @@ def _symbol(node: Tree) -> SheetSymbol:
 def _box(node: Tree, index: int) -> SheetBox:
     fields = _fields(node)
     named = dict(fields)
+    # Sheets that KiCad 6 wrote in another language name the two differently; they always come first.
+    texts = [text for _, text in fields[:2]] + ["", ""]
     pages = []
     for group in _children(node, "instances"):
         for project in _children(group, "project"):
             pages.extend((_plain(path[1]), _text(path, "page")) for path in _children(project, "path"))
     return SheetBox(
         uuid=_text(node, "uuid"),
-        name=named.get("Sheetname", named.get("Sheet name", "")),
-        file=named.get("Sheetfile", named.get("Sheet file", "")),
+        name=named.get("Sheetname", named.get("Sheet name", texts[0])),
+        file=named.get("Sheetfile", named.get("Sheet file", texts[1])),
         pins=tuple(
             Label(kind="sheet", text=_plain(pin[1]), at=_point(_child(pin, "at")), box=index, shape=str(pin[2]))
             for pin in _children(node, "pin")

@@ -3,7 +3,8 @@
 The rules are those that exported netlists show:
 
 - ends of wires and buses, pins, labels and no-connect marks connect where their points coincide;
-- a label or the pin of a sheet box also connects in the middle of one wire or bus, a pin of a symbol does not;
+- a label or the pin of a sheet box also connects in the middle of a wire or bus (the first of several), unless
+  another label, a pin or a no-connect mark stands at the same point; a pin of a symbol does not;
 - a junction dot does nothing by itself: KiCad has split the wires under it when it wrote the file;
 - crossing or overlapping wires connect nothing;
 - a bus entry is a wire, but does not connect at an end that lies on a bus;
@@ -12,7 +13,7 @@ The rules are those that exported netlists show:
 
 from __future__ import annotations
 
-from collections import defaultdict
+from collections import Counter, defaultdict
 from collections.abc import Iterable
 from dataclasses import dataclass, field
 
@@ -153,7 +154,6 @@ def touching(sheet: SheetFile, pins: list[PlacedPin]) -> list[Group]:
     union = Union(len(lines) + len(labels) + len(pins))
     buses = _Segments((i, line) for i, line in enumerate(lines) if line.kind == "bus")
     at: dict[Point, int] = {}
-    ends: set[Point] = set()
 
     def put(item: int, point: Point) -> None:
         known = at.setdefault(point, item)
@@ -164,11 +164,11 @@ def touching(sheet: SheetFile, pins: list[PlacedPin]) -> list[Group]:
         for point in (line.start, line.end):
             if line.kind != "entry" or not buses.holding(point):
                 put(index, point)
-                ends.add(point)
     segments = _Segments(enumerate(lines))
     first_label = len(lines)
+    crowd = Counter(label.at for label in labels) + Counter(pin.at for pin in pins) + Counter(sheet.crosses)
     for index, label in enumerate(labels, first_label):
-        if label.at not in ends:
+        if crowd[label.at] == 1:
             for line_index in segments.holding(label.at)[:1]:
                 union.join(line_index, index)
         put(index, label.at)

@@ -13,7 +13,7 @@ The way:
 
 from __future__ import annotations
 
-from collections import defaultdict
+from collections import Counter, defaultdict
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field
 
@@ -114,6 +114,7 @@ class Nets:
         self.nodes: list[_Node] = []
         self.keys: dict[tuple[int, str], int] = {}
         self.buses: dict[str, Bus | None] = {}
+        self.renamed: set[int] = set()
 
     def drawn(self) -> list[DrawnNet]:
         """Return all nets that hold a pin of a part."""
@@ -167,6 +168,22 @@ class Nets:
             for own in node.own:
                 if own.strength > SHEET_PIN:
                     self.union.join(index, self._key(node.use, own.short))
+        self._join_sheet_pins()
+
+    def _join_sheet_pins(self) -> None:
+        """Join a sheet pin that alone names its net to nets of that name which go by another, stronger name."""
+        known = {(node.use, own.short) for node in self.nodes for own in node.own if own.strength > SHEET_PIN}
+        firsts = {node.own[0].name for node in self.nodes if node.own and node.own[0].strength > SHEET_PIN}
+        globals_ = {(node.use, node.own[0].short) for node in self.nodes if node.own and node.own[0].strength >= POWER}
+        alone = {}
+        for index, node in enumerate(self.nodes):
+            if node.own and node.own[0].strength == SHEET_PIN and not node.is_bus:
+                alone[node.own[0].name] = index
+        for name, index in alone.items():
+            node = self.nodes[index]
+            place = (node.use, node.own[0].short)
+            if place in known and name not in firsts and place not in globals_:
+                self.union.join(index, self._key(*place))
 
     def _strongest(self) -> dict[int, list[_Own]]:
         """Return by set of equal names on a sheet its names, strongest first."""
@@ -186,10 +203,7 @@ class Nets:
         for bus, members in bus_members.items():
             for position, member in enumerate(members):
                 attached[sheet_of[member] if member < len(sheet_of) else member].append((bus, position))
-        self._join_second_globals(owns)
-        for use_index, use in enumerate(self.uses):
-            for child in use.children.values():
-                _ = child
+        self.renamed = self._join_second_globals(owns)
         for index, node in enumerate(self.nodes):
             for label, text in node.labels:
                 if label.kind != "sheet":
@@ -243,8 +257,9 @@ class Nets:
         for position, other in _matches(first, second):
             self.union.join(members[above][position], members[below][other])
 
-    def _join_second_globals(self, owns: dict[int, list[_Own]]) -> None:
-        """A second global name on a net takes the nets of that name along, on every sheet."""
+    def _join_second_globals(self, owns: dict[int, list[_Own]]) -> set[int]:
+        """A second global name on a net takes the nets of that name along, on every sheet; return the sets taken."""
+        taken: set[int] = set()
         first: dict[str, list[int]] = defaultdict(list)
         for root, names in owns.items():
             if names and names[0].strength >= POWER:
@@ -254,6 +269,8 @@ class Nets:
                 if other.strength >= POWER and other.name != names[0].name:
                     for found in first.get(other.name, ()):
                         self.union.join(root, found)
+                        taken.add(found)
+        return taken
 
     # ---------------------------------------------------------------------------------------------------------- names
 
@@ -284,15 +301,14 @@ class Nets:
                     continue
                 seen.add(root)
                 names = owns.get(root)
-                if names and (names[0].strength >= POWER or root not in attached):
+                if names and root not in self.renamed and (names[0].strength >= POWER or root not in attached):
                     offer(whole, names[0])
         for member, buses in attached.items():
             whole = self.union.find(member)
             if whole in sets:
                 for bus, position in buses:
                     own = self._member_name(owns[bus][0], bus_names[self.union.find(bus)], position)
-                    if own is not None:
-                        offer(whole, own)
+                    offer(whole, own)
         strong: dict[str, list[int]] = defaultdict(list)
         weak: list[tuple[str, list[int]]] = []
         for whole, indices in sets.items():
@@ -307,15 +323,16 @@ class Nets:
                     weak.append((name, indices))
         return self._finish(strong, weak)
 
-    def _member_name(self, own: _Own, whole: _Own, position: int) -> _Own | None:
-        """Return the name of a bus member: that of the strongest bus it is joined with."""
+    def _member_name(self, own: _Own, whole: _Own, position: int) -> _Own:
+        """Return the name of a bus member: that of the strongest bus it is joined with, where it has such a member."""
         assert own.bus is not None and whole.bus is not None
         for first, second in _matches(whole.bus, own.bus):
             if second == position:
                 name = whole.bus.members[first].name
                 path = whole.name[: len(whole.name) - len(whole.short)]
                 return _Own(whole.strength, whole.depth, path + name, name)
-        return None
+        name = own.bus.members[position].name
+        return _Own(own.strength, own.depth, own.name[: len(own.name) - len(own.short)] + name, name)
 
     def _pin_name(self, indices: Iterable[int]) -> str:
         """Return the name that pins give a net; empty when no pin can."""
@@ -337,16 +354,17 @@ class Nets:
         return min(names)[2] if names else ""
 
     def _finish(self, strong: dict[str, list[int]], weak: list[tuple[str, list[int]]]) -> list[DrawnNet]:
-        taken = set(strong)
-        # Names are kept apart while they still read Net-(...), so a lone pin and a net may not share a number either.
-        nets = [(name, indices) for name, indices in strong.items()]
-        for name, indices in sorted(weak, key=lambda item: (not item[0].startswith("unconnected-"), item[1][0])):
-            plain = "Net-" + name.removeprefix("unconnected-") if name.startswith("unconnected-") else name
-            suffix = ""
+        nets = list(strong.items())
+        taken = {node.own[0].name for node in self.nodes if node.own and node.own[0].strength > SHEET_PIN}
+        # Names are told apart while they still read Net-(...): the last of equals keeps the plain name.
+        waiting = Counter(_as_net(name) for name, _ in weak)
+        for name, indices in sorted(weak, key=lambda item: item[1][0]):
+            plain = _as_net(name)
+            waiting[plain] -= 1
             count = 0
-            while plain + suffix in taken:
+            while (count == 0 and (waiting[plain] or plain in taken)) or (count and f"{plain}_{count}" in taken):
                 count += 1
-                suffix = f"_{count}"
+            suffix = f"_{count}" if count else ""
             taken.add(plain + suffix)
             nets.append((name + suffix, indices))
         drawn = []
@@ -362,6 +380,10 @@ class Nets:
                     )
                 )
         return drawn
+
+
+def _as_net(name: str) -> str:
+    return "Net-" + name.removeprefix("unconnected-") if name.startswith("unconnected-") else name
 
 
 def _matches(first: Bus, second: Bus) -> list[tuple[int, int]]:

@@ -32,7 +32,7 @@ DEEPEST_TREE = 50
 MOST_USES = 20_000
 """Uses of sheets in one project; reused sheets within reused sheets multiply."""
 
-_SHEET_FILE = re.compile(r'\(property\s+"Sheet ?file"\s+"((?:[^"\\]|\\.)*)"')
+_SHEET_FILE = re.compile(r'\(property\s+"(?:[^"\\]|\\.)*"\s+"((?:[^"\\]|\\.)*\.kicad_sch)"')
 
 
 @dataclass(slots=True, kw_only=True)
