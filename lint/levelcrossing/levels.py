@@ -1,7 +1,7 @@
 """Voltage levels written as expressions of the supply, ``0.7*V``: read them safely, without ``eval``.
 
-The grammar holds numbers, the supply ``V`` [V], ``+ - * /``, parentheses, ``min(a, b)`` and ``max(a, b)``. A parsed level
-is a function that takes a float or a numpy array of supplies and gives the same shape back [V].
+The grammar holds numbers, the supply ``V`` [V], ``+ - * /``, parentheses, ``min(a, b)`` and ``max(a, b)``. A parsed
+level is a function that takes a float or a numpy array of supplies and gives the same shape back [V].
 """
 
 from __future__ import annotations

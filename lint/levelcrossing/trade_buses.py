@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from levelcrossing.model import BusFacts, BusMode
-from levelcrossing.trade_parts import scaled
+from levelcrossing.trade_pins import scaled
 from levelcrossing.trade_rows import Row
 
 

@@ -112,7 +112,9 @@ def kind_of(part: Part) -> str:
     words = f"{part.symbol} {part.value}"
     three = {"G", "S", "D"} <= names or {"GATE", "SOURCE", "DRAIN"} <= names
     bipolar = {"B", "C", "E"} <= names
-    diode = {"A", "K"} <= names or (len(part.pins) in (2, 3) and re.match(r"(D|LED|ZD|TVS|CR)\d", part.reference) is not None)
+    diode = {"A", "K"} <= names or (
+        len(part.pins) in (2, 3) and re.match(r"(D|LED|ZD|TVS|CR)\d", part.reference) is not None
+    )
     for kind, pattern in _SYMBOLS:
         if not (pattern.search(part.symbol) or pattern.search(part.value)):
             continue
@@ -151,7 +153,9 @@ _ZENER_SERIES = re.compile(
     r"(?P<whole>\d{1,2})V(?P<tenths>\d)?",
     re.IGNORECASE,
 )
-_VOLTS = re.compile(r"^(?:ZENER[-_ ]*)?(?P<a>\d{1,2})(?:V(?P<b>\d{1,2})|[.,](?P<c>\d{1,2})\s*V?|\s*V)(?!\w)", re.IGNORECASE)
+_VOLTS = re.compile(
+    r"^(?:ZENER[-_ ]*)?(?P<a>\d{1,2})(?:V(?P<b>\d{1,2})|[.,](?P<c>\d{1,2})\s*V?|\s*V)(?!\w)", re.IGNORECASE
+)
 
 
 def zener_from_number(text: str) -> float | None:
@@ -223,7 +227,8 @@ def _regulator(row: Row, output: Spread | None, reference: Spread | None, defaul
         ground_pins=pins("ground_pins"),
         feedback_pins=pins("feedback_pins"),
         enable_pins=pins("enable_pins"),
-        switch_pins=str(row.get("switch_pins", "")) or (pins("switch_pins") if row.get("through_inductor") or row.get("boost") else ""),
+        switch_pins=str(row.get("switch_pins", ""))
+        or (pins("switch_pins") if row.get("through_inductor") or row.get("boost") else ""),
         through_inductor=bool(row.get("through_inductor", False)),
         input_max_volts=row.get("input_max_volts"),
         dropout_volts=row.get("dropout_volts"),
@@ -235,8 +240,8 @@ def _regulator(row: Row, output: Spread | None, reference: Spread | None, defaul
 def decoded(code: str, kind: str, table: dict[str, float]) -> float | None:
     """Return the voltage that a code in a part number stands for [V].
 
-    A code in ``table`` comes first; a point, a dash or a V in the code always means volts; three digits under ``tenths``
-    mean hundredths.
+    A code in ``table`` comes first; a point, a dash or a V in the code always means volts; three digits under
+    ``tenths`` mean hundredths.
     """
     code = code.upper().rstrip("V")
     if code in table:

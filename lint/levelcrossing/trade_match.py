@@ -23,11 +23,32 @@ _MAKER_PREFIX = re.compile(
     r"(?<![A-Z0-9])(?:SN|CD|MC|MM|M|TC|NL|DM|HD|PI|IDT|IN|N|GD|CY|T|K|U|MN|UCY|KR|TI[-_]|NXP[-_])(?=(?:74|54)[A-Z]*\d)"
 )
 _WORD = re.compile(r"(?<![A-Z0-9])[A-Z0-9]")
-_NOTHING = {"", "~", "R", "C", "L", "D", "Q", "IC", "U", "NA", "N/A", "DNP", "DNF", "NC", "NP", "?", "-", "VALUE", "POWER", "GND"}
+_NOTHING = {
+    "",
+    "~",
+    "R",
+    "C",
+    "L",
+    "D",
+    "Q",
+    "IC",
+    "U",
+    "NA",
+    "N/A",
+    "DNP",
+    "DNF",
+    "NC",
+    "NP",
+    "?",
+    "-",
+    "VALUE",
+    "POWER",
+    "GND",
+}
 
 
 def unwrapped(text: str) -> str:
-    """Return a value without the sign that the part is not fitted: ``NA(BSS138(SOT23-3))`` gives ``BSS138(SOT23-3)``."""
+    """Return a value without the sign that the part is not fitted: ``NA(BSS138(SOT23-3))`` gives its inside."""
     found = _NOT_FITTED.match(text)
     return (found[1] or found[2] or "").strip() if found else text
 
@@ -43,7 +64,9 @@ def normal(text: str) -> str:
 def texts(part: Part) -> list[tuple[str, str]]:
     """Return the texts by which a part may be known, as (text, where from), the strongest first."""
     found = [(normal(part.value), "value")]
-    found += [(normal(text), f"field {name}") for name, text in part.fields if text and _NUMBER_FIELD.match(name.strip())]
+    found += [
+        (normal(text), f"field {name}") for name, text in part.fields if text and _NUMBER_FIELD.match(name.strip())
+    ]
     found.append((normal(part.symbol), "symbol"))
     return [(text, where) for text, where in found if text not in _NOTHING and len(text) > 1]
 

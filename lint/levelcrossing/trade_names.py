@@ -13,7 +13,7 @@ _VOLTAGE = re.compile(r"(?<![A-Z0-9])[+-]?\d{1,2}(?:V\d{0,2}|[.,]\d{1,3}V?)(?![A
 
 
 def last_component(net_name: str) -> str:
-    """Return the last part of a hierarchical net name: ``/Power/+3V3`` gives ``+3V3``; ``~{...}`` and ``{slash}`` resolved."""
+    """Return the last part of a hierarchical net name: ``/Power/+3V3`` gives ``+3V3``."""
     plain = re.sub(r"~\{([^}]*)\}", r"\1", net_name.strip()).replace("{slash}", "_").replace("~", "")
     return plain.rstrip("/").rsplit("/", 1)[-1].strip()
 
@@ -67,7 +67,10 @@ class RailNames:
             row = self.lists.get("signal words")
             self._signal_words = frozenset(word.upper() for word in row.get("words", ())) if row else frozenset()
         tokens = [token for token in re.split(r"[_\-/ .()\[\]<>]+", name.upper()) if token]
-        if any(token.strip("~#+").rstrip("#") in self._signal_words or self._any(token, "signal patterns") for token in tokens):
+        if any(
+            token.strip("~#+").rstrip("#") in self._signal_words or self._any(token, "signal patterns")
+            for token in tokens
+        ):
             return True
         # two different voltages in one name are the two ends of something, not a rail
         found = {hit.lstrip("+-").upper().replace(",", ".") for hit in _VOLTAGE.findall(name)}

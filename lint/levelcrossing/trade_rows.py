@@ -1,24 +1,18 @@
-"""The rows of ``rules/trade/*.toml``: read them, and refuse what is malformed.
+"""The rows of a file of trade data: cut it at its ``[[table]]`` headers and keep where each row stands.
 
-A file is cut at its ``[[table]]`` headers; a row's figures are read when the row is first needed, which keeps the start
-short. Whether the shipped files are sound is checked once, when they are changed: ``CHECKED`` beside them holds a
-checksum of each file that passed the full check, and a file whose checksum differs is checked in full at load. Files of
-the house or of a project are always checked in full.
+A row's figures are read when the row is first needed, which keeps the start of a review short.
 """
 
 from __future__ import annotations
 
 import re
 import tomllib
-import zlib
-from collections.abc import Iterable, Sequence
 from pathlib import Path
 from typing import Any
 
 from levelcrossing.errors import TradeDataError
 from levelcrossing.model import Provenance
 
-STAMP = "CHECKED"
 _HEADER = re.compile(r"^\[\[\s*([A-Za-z_]+)\s*\]\]", re.MULTILINE)
 _ID = re.compile(r"^id\s*=\s*\"((?:[^\"\\]|\\.)*)\"", re.MULTILINE)
 _MATCH = re.compile(r"^match\s*=\s*(\[.*\])\s*$", re.MULTILINE)
@@ -122,73 +116,3 @@ def read_text(path: Path, label: str) -> str:
         return path.read_text(encoding="utf-8").replace("\r\n", "\n")
     except (OSError, UnicodeDecodeError) as fault:
         raise TradeDataError(f"cannot be read: {fault}", file=label) from fault
-
-
-def read_folder(folder: Path) -> list[Row]:
-    """Read all shipped rows, and check in full each file that changed since the last full check."""
-    from levelcrossing import trade_schema  # only needed when something changed
-
-    passed = read_stamp(folder)
-    rows: list[Row] = []
-    for path in sorted(folder.glob("*.toml")):
-        text = read_text(path, path.name)
-        found = read_rows(path, f"rules/trade/{path.name}", text)
-        if passed.get(path.name) != checksum(text):
-            trade_schema.check_file(f"rules/trade/{path.name}", text, found)
-        rows += found
-    if not rows:
-        raise TradeDataError("holds no trade data (*.toml)", file=str(folder))
-    return rows
-
-
-def read_extra(paths: Iterable[Path]) -> list[Row]:
-    """Read and check the rows of house or project files."""
-    from levelcrossing import trade_schema
-
-    rows: list[Row] = []
-    for path in paths:
-        text = read_text(path, str(path))
-        found = read_rows(path, None, text)
-        trade_schema.check_file(str(path), text, found)
-        rows += found
-    return rows
-
-
-def overridden(rows: Sequence[Row], extra: Sequence[Row]) -> list[Row]:
-    """Put extra rows before the shipped ones; an extra row takes the place of the shipped row of its table and id."""
-    taken = {(row.table, row.id) for row in extra}
-    return [*extra, *(row for row in rows if (row.table, row.id) not in taken)]
-
-
-def checksum(text: str) -> str:
-    """Return the checksum under which a checked file is remembered."""
-    raw = text.encode()
-    return f"{zlib.crc32(raw):08x}-{len(raw)}"
-
-
-def read_stamp(folder: Path) -> dict[str, str]:
-    """Return which files passed the full check, by name."""
-    try:
-        lines = (folder / STAMP).read_text(encoding="utf-8").splitlines()
-    except (OSError, UnicodeDecodeError):
-        return {}
-    return dict(line.split(" ", 1) for line in lines if " " in line and not line.startswith("#"))
-
-
-def stamp_text(folder: Path) -> str:
-    """Check every file in full and return the text that ``CHECKED`` should hold."""
-    from levelcrossing import trade_schema
-
-    lines = ["# Checksums of the files that passed the full check; made by: python -m levelcrossing.trade_rows"]
-    for path in sorted(folder.glob("*.toml")):
-        text = read_text(path, path.name)
-        trade_schema.check_file(f"rules/trade/{path.name}", text, read_rows(path, f"rules/trade/{path.name}", text))
-        lines.append(f"{path.name} {checksum(text)}")
-    return "\n".join(lines) + "\n"
-
-
-if __name__ == "__main__":  # a maintainer's step after editing rows
-    import sys
-
-    here = Path(sys.argv[1]) if len(sys.argv) > 1 else Path("rules/trade")
-    (here / STAMP).write_text(stamp_text(here), encoding="utf-8")

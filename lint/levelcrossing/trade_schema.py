@@ -19,8 +19,24 @@ from levelcrossing.levels import LevelError, compiled
 from levelcrossing.trade_rows import Row
 
 CERTAINTIES = ("datasheet", "secondary", "memory", "practice")
-_ANY = {"id": "text", "source": "text", "certainty": "certainty", "note": "text", "notes": "texts", "doubtful": "text", "checked": "text"}
-_NAMED = {**_ANY, "match": "regexes", "examples": "texts", "title": "text", "maker": "text", "generic": "flag", "sure_members": "texts"}
+_ANY = {
+    "id": "text",
+    "source": "text",
+    "certainty": "certainty",
+    "note": "text",
+    "notes": "texts",
+    "doubtful": "text",
+    "checked": "text",
+}
+_NAMED = {
+    **_ANY,
+    "match": "regexes",
+    "examples": "texts",
+    "title": "text",
+    "maker": "text",
+    "generic": "flag",
+    "sure_members": "texts",
+}
 _CERTAINTY = {f"certainty_{part}": "certainty" for part in ("levels", "outputs", "maxima", "rates", "reverse_gain")}
 _LEVELS = {"vih_volts": "level", "vil_volts": "level", "levels": "rows:levels"}
 _INPUT = {
@@ -325,7 +341,18 @@ CHOICES: dict[str, tuple[str, ...]] = {
     "code": ("decimal", "tenths", "hundredths", "whole", "table"),
     "formula": ("ground-referred", "floating"),
     "direction": ("dir-pin", "a-to-b", "b-to-a", "auto", "by-channel"),
-    "pin-direction": ("in", "out", "inout", "open-drain", "open-source", "analog", "supply", "supply-out", "ground", "passive"),
+    "pin-direction": (
+        "in",
+        "out",
+        "inout",
+        "open-drain",
+        "open-source",
+        "analog",
+        "supply",
+        "supply-out",
+        "ground",
+        "passive",
+    ),
     "side": ("a", "b"),
     "use": ("enable", "direction", "reference"),
     "active": ("H", "L"),
@@ -372,7 +399,9 @@ def check_file(label: str, text: str, rows: Sequence[Row]) -> None:
         raise TradeDataError(f"is not TOML: {fault}", file=label, line=int(found[1]) if found else 0) from fault
     for key, value in whole.items():
         if not isinstance(value, list):
-            raise TradeDataError(f"'{key}' stands outside any [[table]]", remedy="rows begin with [[part]]", file=label, line=1)
+            raise TradeDataError(
+                f"'{key}' stands outside any [[table]]", remedy="rows begin with [[part]]", file=label, line=1
+            )
     seen: dict[tuple[str, str], int] = {}
     for row in rows:
         check_row(row)
@@ -442,7 +471,12 @@ def _check_value(row: Row, kind: str, value: Any, key: str) -> None:
         except LevelError as fault:
             raise row.refuse(f"has a wrong '{key}': {fault}") from fault
     elif kind in ("regex", "regexes"):
-        _need(row, isinstance(value, str) if kind == "regex" else isinstance(value, list) and bool(value), key, "a pattern")
+        _need(
+            row,
+            isinstance(value, str) if kind == "regex" else isinstance(value, list) and bool(value),
+            key,
+            "a pattern",
+        )
         for pattern in [value] if kind == "regex" else value:
             _check_regex(row, pattern, key)
     elif kind == "order":

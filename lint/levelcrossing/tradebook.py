@@ -11,7 +11,7 @@ from functools import cached_property
 from pathlib import Path
 from typing import TypeVar
 
-from levelcrossing import trade_devices, trade_parts
+from levelcrossing import trade_devices, trade_logic, trade_parts, trade_pins, trade_translators
 from levelcrossing.errors import TradeDataError
 from levelcrossing.model import (
     BipolarFacts,
@@ -24,12 +24,16 @@ from levelcrossing.model import (
     RegulatorFacts,
     Spread,
 )
+from levelcrossing.trade_buses import bus_facts
+from levelcrossing.trade_files import overridden, read_extra, read_folder
 from levelcrossing.trade_match import Matcher, texts
 from levelcrossing.trade_names import RailNames
-from levelcrossing.trade_rows import Row, overridden, read_extra, read_folder
+from levelcrossing.trade_rows import Row
 
 _PASSIVE = re.compile(r"^(R|RN|RP|RV|C|L|FB|F|TP|JP|SJ|H|MH|Y|X|XTAL|FID|SW|BT)\d+[A-Z]?$")
-_PASSIVE_LIBRARY = re.compile(r"^(Device|pspice|Switch|Mechanical|Jumper|TestPoint|Connector_Generic.*|Graphic)$", re.IGNORECASE)
+_PASSIVE_LIBRARY = re.compile(
+    r"^(Device|pspice|Switch|Mechanical|Jumper|TestPoint|Connector_Generic.*|Graphic)$", re.IGNORECASE
+)
 _COMPONENT_VALUE = re.compile(
     r"^\d+([.,]\d+)?\s*[PNUMKRΩ]?\d*\s*(F|H|R|OHMS?|Ω|V|A|W|HZ|MHZ|KHZ|%)?([/ ,].*)?$", re.IGNORECASE
 )
@@ -48,7 +52,7 @@ class Tradebook:
 
     def __init__(self, rows: Sequence[Row]) -> None:
         self.rows = tuple(rows)
-        self._remembered: dict[tuple[str, _Key, tuple[str, ...]], object] = {}
+        self._remembered: dict[tuple[str, _Key, tuple[tuple[str, str, str], ...]], object] = {}
 
     def table(self, name: str) -> list[Row]:
         """Return the rows of one table in their order."""
@@ -62,13 +66,14 @@ class Tradebook:
         The value is searched first, then the fields that hold a part number, the symbol last: symbols often carry the
         wrong family.
         """
-        return self._once("part", part, self._find_part, with_pins=True)
+        return self._once("part", part, self._find_part)
 
     def _find_part(self, part: Part) -> PartFacts | None:
         if _PASSIVE.match(part.reference) and (_PASSIVE_LIBRARY.match(part.library) or len(part.pins) < 3):
             return None
         for text, where in texts(part):
-            if _COMPONENT_VALUE.match(text) and (where != "value" or not _bare_number(text) or _PASSIVE.match(part.reference)):
+            bare = where == "value" and _bare_number(text) and not _PASSIVE.match(part.reference)
+            if _COMPONENT_VALUE.match(text) and not bare:
                 continue
             found = self.part_of(text, where, part)
             if found is not None:
@@ -83,13 +88,13 @@ class Tradebook:
             if row.get("family_by_name"):
                 family = self._families.find(text)
                 if family is not None:
-                    whole = trade_parts.translator_facts(row)
-                    return trade_parts.family_facts(family[0], self._functions, part, text, where, whole)
+                    whole = trade_translators.translator_facts(row)
+                    return trade_logic.family_facts(family[0], self._functions, part, text, where, whole)
             else:
-                return trade_parts.two_sided_facts(row, self._family(row), part, text, where)
+                return trade_translators.two_sided_facts(row, self._family(row), part, text, where)
         family = self._families.find(text)
         if family is not None:
-            return trade_parts.family_facts(family[0], self._functions, part, text, where)
+            return trade_logic.family_facts(family[0], self._functions, part, text, where)
         hit = self._parts.find(text)
         if hit is not None and _reference_fits(hit[0], part):
             return trade_parts.part_facts(hit[0], text, where)
@@ -108,7 +113,7 @@ class Tradebook:
 
     def mosfet(self, part: Part) -> MosfetFacts | None:
         """Return a MOSFET's data, that of an unknown one when the part plainly is one, or None."""
-        return self._once("mosfet", part, self._find_mosfet, with_pins=True)
+        return self._once("mosfet", part, self._find_mosfet)
 
     def _find_mosfet(self, part: Part) -> MosfetFacts | None:
         row = self._device(part, self._mosfets, ("nmos", "pmos"))
@@ -116,7 +121,7 @@ class Tradebook:
 
     def bipolar(self, part: Part) -> BipolarFacts | None:
         """Return a bipolar transistor's data, that of an unknown one when the part plainly is one, or None."""
-        return self._once("bipolar", part, self._find_bipolar, with_pins=True)
+        return self._once("bipolar", part, self._find_bipolar)
 
     def _find_bipolar(self, part: Part) -> BipolarFacts | None:
         row = self._device(part, self._bipolars, ("npn", "pnp"))
@@ -124,7 +129,7 @@ class Tradebook:
 
     def diode(self, part: Part) -> DiodeFacts | None:
         """Return a diode's or Zener's data, that of an unknown one when the part plainly is one, or None."""
-        return self._once("diode", part, self._find_diode, with_pins=True)
+        return self._once("diode", part, self._find_diode)
 
     def _find_diode(self, part: Part) -> DiodeFacts | None:
         kind = trade_devices.kind_of(part)
@@ -173,13 +178,13 @@ class Tradebook:
 
     def regulator(self, part: Part) -> RegulatorFacts | None:
         """Return a voltage regulator's data, or None when the part is none that is known."""
-        return self._once("regulator", part, self._find_regulator, with_pins=True)
+        return self._once("regulator", part, self._find_regulator)
 
     def _find_regulator(self, part: Part) -> RegulatorFacts | None:
         if _PASSIVE.match(part.reference):
             return None
         known = texts(part)
-        looks = trade_names_say_regulator(part)
+        looks = _looks_like_regulator(part)
         for text, where in known:
             hit = self._fixed.find(text)
             if hit is not None:
@@ -212,18 +217,14 @@ class Tradebook:
     @cached_property
     def buses(self) -> tuple[BusFacts, ...]:
         """The electrical rules of common buses."""
-        from levelcrossing.trade_buses import bus_facts
-
         return tuple(bus_facts(row) for row in self.table("bus"))
 
     # ----------------------------------------------------------------------------------------------------- helpers
 
-    def _once(
-        self, what: str, part: Part, find: Callable[[Part], _Facts | None], *, with_pins: bool
-    ) -> _Facts | None:
+    def _once(self, what: str, part: Part, find: Callable[[Part], _Facts | None]) -> _Facts | None:
         """Search once for all parts of equal value, fields, symbol and pins."""
         key: _Key = (part.value, part.fields, f"{part.library}:{part.symbol}:{part.reference.rstrip('0123456789')}")
-        pins = tuple(f"{pin.number}={pin.name}={pin.kind}" for pin in part.pins) if with_pins else ()
+        pins = tuple((pin.number, pin.name, pin.kind) for pin in part.pins)
         full = (what, key, pins)
         if full not in self._remembered:
             self._remembered[full] = find(part)
@@ -262,8 +263,8 @@ class Tradebook:
         return Matcher(self.table("adjustable"), guarded=False)
 
     @cached_property
-    def _functions(self) -> trade_parts.Functions:
-        return trade_parts.Functions(self.table("function"))
+    def _functions(self) -> trade_logic.Functions:
+        return trade_logic.Functions(self.table("function"))
 
     @cached_property
     def _names(self) -> RailNames:
@@ -280,7 +281,7 @@ def _bare_number(text: str) -> bool:
 
 
 def _same_polarity(row: Row, kind: str) -> bool:
-    return {"nmos": "n", "pmos": "p"}.get(kind, kind) == row.get("polarity")
+    return bool({"nmos": "n", "pmos": "p"}.get(kind, kind) == row.get("polarity"))
 
 
 def _reference_fits(row: Row, part: Part) -> bool:
@@ -288,11 +289,11 @@ def _reference_fits(row: Row, part: Part) -> bool:
     return pattern is None or not part.reference or re.match(pattern, part.reference) is not None
 
 
-def trade_names_say_regulator(part: Part) -> bool:
+def _looks_like_regulator(part: Part) -> bool:
     """Tell whether library, symbol or pin names say that a part is a voltage regulator."""
     if re.search(r"regulator|ldo|dcdc|dc-dc|buck|converter", f"{part.library} {part.symbol}", re.IGNORECASE):
         return True
-    names = {trade_parts.plain_name(pin.name).upper() for pin in part.pins}
+    names = {trade_pins.plain_name(pin.name).upper() for pin in part.pins}
     return bool(names & {"VO", "VOUT", "OUT"}) and bool(names & {"VI", "VIN", "IN"}) and bool(names & {"GND", "ADJ"})
 
 
