@@ -26,7 +26,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     """Declare the arguments of ``settings``."""
     parser.add_argument("path", metavar="PATH", help="netlist, sheet or project folder")
     parser.add_argument("--to", metavar="FILE", help="write the file there; an existing one is never overwritten")
-    parser.add_argument("--settings", metavar="FILE", help="settings already made (default: levelcrossing.toml beside it)")
+    parser.add_argument("--settings", metavar="FILE", help="settings already made")
     parser.add_argument("--facts", metavar="FILE", action="append", default=[], help="further trade data of your own")
 
 
@@ -54,7 +54,8 @@ def run(args: argparse.Namespace) -> tuple[str, int]:
         with open(target, "x", encoding="utf-8", newline="\n") as stream:
             stream.write(text)
     except FileExistsError:
-        raise CommandError(f"{target} exists already", remedy="name a new file, or copy what you need from it") from None
+        remedy = "name a new file, or copy what you need from the draft"
+        raise CommandError(f"{target} exists already", remedy=remedy) from None
     return f"{target} written: {_size(text)}\n", 0
 
 
@@ -145,7 +146,8 @@ def _pins(review: Review) -> Iterator[str]:
     yield '# are true or false. "U1.3" declares one pin, "U1" the whole part.'
     parts = {part.reference: part for part in review.board.parts}
     for reference, pins in _sorted(found, review):
-        yield _entry(reference, "{tolerates = ?, vih = ?, vil = ?}", _what(parts.get(reference)) + ": pin " + _some(pins))
+        remark = _what(parts.get(reference)) + ": pin " + _some(pins)
+        yield _entry(reference, "{tolerates = ?, vih = ?, vil = ?}", remark)
 
 
 def _assumed(pin: PinModel) -> bool:
