@@ -17,6 +17,7 @@ from typing import Any
 
 from levelcrossing.errors import SettingsError
 from levelcrossing.model import PinSetting, Spread
+from levelcrossing.units import parse_volts
 
 TTL_VIH_VOLTS = 2.0
 TTL_VIL_VOLTS = 0.8
@@ -31,8 +32,6 @@ _PREFIXES = {
 }  # fmt: skip
 _NUMBER = r"[+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d+)?"
 _SCALED = re.compile(rf"({_NUMBER})\s*([pnuµμmkKMG]?)\s*([A-Za-z/]*)")
-_VOLTS = re.compile(rf"({_NUMBER})\s*(m?)[vV]?")
-_VOLTS_AS_LETTER = re.compile(r"([+-]?\d+)[vV](\d+)")
 _RATE_UNIT = re.compile(r"(?<=[\dkKMG\s])(?:bits?/s|b/s|bps|bd|baud|hz)$", re.IGNORECASE)
 
 
@@ -190,35 +189,11 @@ def read_volts(value: object, tolerance: float) -> Spread | None:
     Spread(low=9.8, nominal=10.0, high=10.2)
     """
     if isinstance(value, str):
-        text = value.strip()[:80]
-        pieces = [_one_voltage(piece.strip()) for piece in text.split("..")]
-        if len(pieces) in (2, 3):
-            known = [piece for piece in pieces if piece is not None]
-            if len(known) != len(pieces) or known != sorted(known):
-                return None
-            return Spread(low=known[0], nominal=known[1] if len(known) == 3 else sum(known) / 2, high=known[-1])
-        head, mark, tail = text.replace("±", "+-").replace("+/-", "+-").partition("+-")
-        if mark:
-            own = read_fraction(tail.strip())
-            if own is None:
-                return None
-            tolerance = own
-        number = _one_voltage(head.strip())
+        volts = parse_volts(value.strip().replace("+/-", "±").replace("+-", "±"), tolerance)
     else:
         number = _float(value)
-    if number is None or abs(number) > MOST_VOLTS:
-        return None
-    return Spread.around(number, tolerance)
-
-
-def _one_voltage(text: str) -> float | None:
-    if match := _VOLTS_AS_LETTER.fullmatch(text):
-        return float(f"{match[1]}.{match[2]}")
-    match = _VOLTS.fullmatch(text)
-    if not match:
-        return None
-    number = float(match[1]) / (1000 if match[2] else 1)
-    return number if math.isfinite(number) and abs(number) <= MOST_VOLTS else None
+        volts = None if number is None else Spread.around(number, tolerance)
+    return volts if volts is not None and max(abs(volts.low), abs(volts.high)) <= MOST_VOLTS else None
 
 
 def read_day(value: object) -> str | None:

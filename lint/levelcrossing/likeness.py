@@ -14,6 +14,7 @@ from collections.abc import Hashable, Iterable, Mapping, Sequence
 from typing import TypeVar
 
 from levelcrossing.model import Board, Part
+from levelcrossing.units import parse_capacitance, parse_inductance, parse_resistance
 
 Node = TypeVar("Node", bound=Hashable)
 
@@ -21,9 +22,6 @@ _SYMMETRIC = ("R", "C", "L", "FB", "F", "JP", "NT")
 """Reference letters of two-pin parts that may be turned round without changing the circuit."""
 
 _LETTERS = re.compile(r"#?[^\W\d_]*")
-_POWERS = {"r": 0, "": 0, "k": 3, "m": -3, "u": -6, "µ": -6, "μ": -6, "n": -9, "p": -12}
-_VALUE_WITH_LETTER = re.compile(r"(\d+)([rkmunpµμ])(\d+)")
-_VALUE = re.compile(r"(\d+(?:\.\d+)?)([rkmunpµμ]?)(?:ohms?|Ω|ω|f|h)?")
 
 
 def digest(*things: object) -> str:
@@ -39,19 +37,10 @@ def letters_of(reference: str) -> str:
 
 def plain_value(part: Part) -> str:
     """Return a part's value in one spelling: ``4k7``, ``4.7k`` and ``4.7 kOhm`` of a resistor are the same."""
-    value = "".join(part.value.split()).casefold()
-    if letters_of(part.reference) not in ("R", "RN", "C", "L"):
-        return value
-    match = _VALUE_WITH_LETTER.fullmatch(value)
-    if match:
-        number, scale = f"{match[1]}.{match[3]}", match[2]
-    else:
-        match = _VALUE.fullmatch(value)
-        if not match:
-            return value
-        number, scale = match[1], match[2]
-    power = 6 if scale == "m" and "M" in part.value else _POWERS[scale]
-    return f"{float(f'{number}e{power}'):.6g}"
+    readers = {"R": parse_resistance, "RN": parse_resistance, "C": parse_capacitance, "L": parse_inductance}
+    reader = readers.get(letters_of(part.reference))
+    number = reader(part.value) if reader else None
+    return "".join(part.value.split()).casefold() if number is None else f"{number:.6g}"
 
 
 def part_label(part: Part) -> str:
