@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from typing import Any
 
@@ -14,6 +14,7 @@ from levelcrossing.trade_pins import (
     level_pair,
     matches,
     output_points,
+    pin_pattern,
     plain_name,
     power_facts,
     remembered,
@@ -22,7 +23,7 @@ from levelcrossing.trade_pins import (
 from levelcrossing.trade_rows import Row
 
 
-def part_facts(row: Row, text: str, where: str) -> PartFacts:
+def part_facts(row: Row, text: str, where: str, names: Sequence[Row] = ()) -> PartFacts:
     """Return what a ``[[part]]`` row says.
 
     Parameters
@@ -32,10 +33,14 @@ def part_facts(row: Row, text: str, where: str) -> PartFacts:
         The normal text that matched.
     where : str
         Where the text stands (``value``, ``field MPN``, ``symbol``).
+    names : sequence of Row
+        The ``[[pin_names]]`` rows: what names imply where the row itself says nothing of a pin.
     """
     supplies = _supplies(row)
     base = _base(row)
     exceptions = [(item["names"], item) for item in row.get("pins", ()) if applies(item, text)]
+
+    implied = [item for table in names if _is_about(table, row, text) for item in table.get("pins")]
 
     def pin_facts(pin: Pin) -> PinFacts:
         name = plain_name(pin.name)
@@ -45,7 +50,7 @@ def part_facts(row: Row, text: str, where: str) -> PartFacts:
         for pattern, values in exceptions:
             if name and matches(pattern, pin.name):
                 return excepted(base, values, row)
-        return base
+        return replace(base, direction=_implied(implied, name)) if name else base
 
     tolerant = row.get("tolerant")
     return PartFacts(
@@ -59,6 +64,17 @@ def part_facts(row: Row, text: str, where: str) -> PartFacts:
         doubtful=row.get("doubtful", ""),
         note=row.get("note", ""),
     )
+
+
+def _is_about(table: Row, row: Row, text: str) -> bool:
+    return row.get("group", "other") in table.get("groups") and applies(table.data, text)
+
+
+def _implied(items: Sequence[Mapping[str, Any]], name: str) -> str | None:
+    for item in items:
+        if pin_pattern(item["names"]).fullmatch(name):
+            return str(item["direction"])
+    return None
 
 
 def applies(values: Mapping[str, Any], text: str) -> bool:

@@ -20,7 +20,7 @@ LOGIC_SUPPLY = r"VCC|VDD|V\+|VCC\d?|VDD\d?|VCCO?"
 @lru_cache(maxsize=4096)
 def plain_name(name: str) -> str:
     """Return a pin's name without overbars and blanks: ``~{OE}`` gives ``OE``."""
-    return re.sub(r"~\{([^}]*)\}", r"\1", name).replace("~", "").replace(" ", "").strip()
+    return re.sub(r"~\{([^}]*)\}", r"\1", name).replace("~", "").replace(" ", "").strip("#").strip()
 
 
 @lru_cache(maxsize=4096)

@@ -97,7 +97,7 @@ class Tradebook:
             return trade_logic.family_facts(family[0], self._functions, part, text, where)
         hit = self._parts.find(text)
         if hit is not None and _reference_fits(hit[0], part):
-            return trade_parts.part_facts(hit[0], text, where)
+            return trade_parts.part_facts(hit[0], text, where, self._implied)
         return None
 
     def _family(self, row: Row) -> Row | None:
@@ -241,6 +241,10 @@ class Tradebook:
     @cached_property
     def _parts(self) -> Matcher:
         return Matcher(self.table("part"))
+
+    @cached_property
+    def _implied(self) -> list[Row]:
+        return self.table("pin_names")
 
     @cached_property
     def _mosfets(self) -> Matcher:
