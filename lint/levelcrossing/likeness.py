@@ -86,8 +86,8 @@ def refined(
 
 
 def board_labels(board: Board, rounds: int = 4) -> list[Mapping[tuple[str, str], str]]:
-    """Return labels of all fitted parts (``("part", reference)``) and nets (``("net", name)``), round by round."""
-    return graph_labels([part for part in board.parts if part.fitted], {net.name: "net" for net in board.nets}, rounds)
+    """Return labels of all parts (``("part", reference)``), fitted or not, and nets (``("net", name)``) by round."""
+    return graph_labels(board.parts, {net.name: "net" for net in board.nets}, rounds)
 
 
 def graph_labels(
