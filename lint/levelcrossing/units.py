@@ -70,7 +70,7 @@ def _is_preferred(value: float) -> bool:
     return any(math.isclose(value, nearest_preferred(value, series), rel_tol=1e-9) for series in ("E24", "E192"))
 
 
-# ------------------------------------------------------------------------------------------------------ taking text apart
+# ---------------------------------------------------------------------------------------------------- taking text apart
 
 _LONGEST = 200  # longer texts are descriptions, not values
 _NUMBER = r"(?:\d{1,9}(?:\.\d{0,9})?|\.\d{1,9})"
@@ -303,7 +303,9 @@ def parse_inductance(text: str) -> float | None:
 # ------------------------------------------------------------------------------------------------------------ voltages
 
 _SIGNED = rf"[+-]?{_NUMBER}"
-_VOLTS_RANGE = re.compile(rf"({_SIGNED})\s*V?\s*(?:\.\.\.?|…|–|-|\bto\b)\s*({_SIGNED})\s*V?(?:\s*\.\.\s*({_SIGNED})\s*V?)?")
+_VOLTS_RANGE = re.compile(
+    rf"({_SIGNED})\s*V?\s*(?:\.\.\.?|…|–|-|\bto\b)\s*({_SIGNED})\s*V?(?:\s*\.\.\s*({_SIGNED})\s*V?)?"
+)
 _VOLTS_POINT = re.compile(
     rf"(?:([+-]?\d{{1,3}})[Vv](\d{{1,3}})|({_SIGNED})\s*(mV|V|v)?)"
     rf"(?:\s*(?:\+\s*/?\s*-|±)?\s*(?:({_NUMBER})\s*%|(?<=[-±\s])({_NUMBER})\s*(mV|V)))?"
@@ -355,9 +357,19 @@ def parse_volts(text: str, tolerance: float = 0.0) -> Spread | None:
     return Spread.around(volts, float(percent) / 100 if percent is not None else tolerance)
 
 
-# ------------------------------------------------------------------------------------------------------- numbers to text
+# ----------------------------------------------------------------------------------------------------- numbers to text
 
-_SYMBOLS = ((1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"), (1e-12, "p"), (1e-15, "f"))
+_SYMBOLS = (
+    (1e9, "G"),
+    (1e6, "M"),
+    (1e3, "k"),
+    (1.0, ""),
+    (1e-3, "m"),
+    (1e-6, "µ"),
+    (1e-9, "n"),
+    (1e-12, "p"),
+    (1e-15, "f"),
+)
 
 
 def format_si(value: float, unit: str, digits: int = 3) -> str:
