@@ -20,7 +20,8 @@ _NUMBER_FIELD = re.compile(
     re.IGNORECASE,
 )
 _MAKER_PREFIX = re.compile(
-    r"(?<![A-Z0-9])(?:SN|CD|MC|MM|M|TC|NL|DM|HD|PI|IDT|IN|N|GD|CY|T|K|U|MN|UCY|KR|TI[-_]|NXP[-_])(?=(?:74|54)[A-Z]*\d)"
+    r"(?<![A-Z0-9])(?:SN|CD|MC|MM|M|NL|DM|HD|PI|IDT|IN|N|GD|CY|T|K|U|MN|UCY|KR|TI[-_]|NXP[-_])(?=(?:74|54)[A-Z]*\d)"
+    r"|(?<![A-Z0-9])TC(?=74[A-Z]{2,}\d)"
 )
 _WORD = re.compile(r"(?<![A-Z0-9])[A-Z0-9]")
 _NOTHING = {
