@@ -15,7 +15,7 @@ from levelcrossing.errors import InputError
 Tree: TypeAlias = "list[str | Tree]"
 
 DEEPEST = 100  # KiCad's own netlists nest eight deep
-MOST_BRACKETS = 5_000_000  # the largest real netlist seen (8.6 MB) has 331,000
+MOST_TOKENS = 6_000_000  # bounds memory to about half a gigabyte; the largest real netlist seen has 1.5 million
 
 # A quoted text may hold escaped quotes and line ends; an unquoted token ends at white space or a bracket only.
 _TOKEN = re.compile(r'\s*(?:(\()|(\))|"([^"\\]*(?:\\.[^"\\]*)*)"|([^\s()"][^\s()]*)|(.))', re.DOTALL)
@@ -49,9 +49,11 @@ def read_brackets(text: str, file: str) -> Tree:
     current = root
     above: list[Tree] = []
     opened: list[int] = []
-    brackets = 0
-    for match in _TOKEN.finditer(text):
+    for count, match in enumerate(_TOKEN.finditer(text)):
         kind = match.lastindex
+        if count > MOST_TOKENS:
+            what = f"holds more than {MOST_TOKENS:,} words and brackets"
+            raise _error(text, match.start(), file, what, "no netlist does; export it again")
         if kind == 3:
             token = match[3]
             current.append(_ESCAPED.sub(_unescaped, token) if "\\" in token else token)
@@ -63,12 +65,8 @@ def read_brackets(text: str, file: str) -> Tree:
             above.append(current)
             opened.append(match.start(1))
             current = below
-            brackets += 1
             if len(above) > DEEPEST:
                 what = f"nests brackets more than {DEEPEST} deep"
-                raise _error(text, match.start(1), file, what, "no netlist does; export it again")
-            if brackets > MOST_BRACKETS:
-                what = f"holds more than {MOST_BRACKETS:,} brackets"
                 raise _error(text, match.start(1), file, what, "no netlist does; export it again")
         elif kind == 2:
             if not above:

@@ -94,6 +94,14 @@ class _Own:
 
 
 @dataclass(slots=True)
+class _Claim:
+    """The name that one set of groups brings into its net."""
+
+    use: int
+    own: _Own
+
+
+@dataclass(slots=True)
 class _Node:
     use: int
     group: int
@@ -114,7 +122,6 @@ class Nets:
         self.nodes: list[_Node] = []
         self.keys: dict[tuple[int, str], int] = {}
         self.buses: dict[str, Bus | None] = {}
-        self.renamed: set[int] = set()
 
     def drawn(self) -> list[DrawnNet]:
         """Return all nets that hold a pin of a part."""
@@ -197,13 +204,12 @@ class Nets:
     # -------------------------------------------------------------------------------------- across sheets and buses
 
     def _join_sheets(self, owns: dict[int, list[_Own]], sheet_of: list[int]) -> dict[int, list[tuple[int, int]]]:
-        """Join through sheet pins, buses and second global names; return by set the bus members it is."""
+        """Join through sheet pins and buses; return by set the bus members it is."""
         bus_members = self._bus_members(owns, sheet_of)
         attached: dict[int, list[tuple[int, int]]] = defaultdict(list)
         for bus, members in bus_members.items():
             for position, member in enumerate(members):
                 attached[sheet_of[member] if member < len(sheet_of) else member].append((bus, position))
-        self.renamed = self._join_second_globals(owns)
         for index, node in enumerate(self.nodes):
             for label, text in node.labels:
                 if label.kind != "sheet":
@@ -235,12 +241,19 @@ class Nets:
         """Return by bus the sets of its members, the members of its other names joined to them."""
         use_of = {sheet_of[index]: node.use for index, node in enumerate(self.nodes) if node.is_bus}
         members: dict[int, list[int]] = {}
+        last_of = {owns[root][0].name: root for root in use_of if owns[root]}
+        strong = {owns[root][0].name for root in use_of if owns[root] and owns[root][0].strength > SHEET_PIN}
         for root, use in use_of.items():
             names = owns[root]
             if not names or names[0].bus is None:
                 continue
             first = names[0].bus
-            members[root] = [self._key(use, member.name) for member in first.members]
+            name = names[0].name
+            if names[0].strength == SHEET_PIN and (name in strong or last_of[name] != root):
+                # Another bus of that name is not this one: its members stand for themselves.
+                members[root] = [self.union.add() for _ in first.members]
+            else:
+                members[root] = [self._key(use, member.name) for member in first.members]
             for other in names[1:]:
                 if other.bus is None or other.strength == SHEET_PIN:
                     continue
@@ -257,21 +270,6 @@ class Nets:
         for position, other in _matches(first, second):
             self.union.join(members[above][position], members[below][other])
 
-    def _join_second_globals(self, owns: dict[int, list[_Own]]) -> set[int]:
-        """A second global name on a net takes the nets of that name along, on every sheet; return the sets taken."""
-        taken: set[int] = set()
-        first: dict[str, list[int]] = defaultdict(list)
-        for root, names in owns.items():
-            if names and names[0].strength >= POWER:
-                first[names[0].name].append(root)
-        for root, names in owns.items():
-            for other in names[1:]:
-                if other.strength >= POWER and other.name != names[0].name:
-                    for found in first.get(other.name, ()):
-                        self.union.join(root, found)
-                        taken.add(found)
-        return taken
-
     # ---------------------------------------------------------------------------------------------------------- names
 
     def _named(
@@ -287,28 +285,8 @@ class Nets:
         for index, node in enumerate(self.nodes):
             if not node.is_bus or node.pins:
                 sets[self.union.find(index)].append(index)
-        best: dict[int, _Own] = {}
-
-        def offer(whole: int, own: _Own) -> None:
-            if whole not in best or own.key < best[whole].key:
-                best[whole] = own
-
-        seen: set[int] = set()
-        for whole, indices in sets.items():
-            for index in indices:
-                root = sheet_of[index]
-                if root in seen:
-                    continue
-                seen.add(root)
-                names = owns.get(root)
-                if names and root not in self.renamed and (names[0].strength >= POWER or root not in attached):
-                    offer(whole, names[0])
-        for member, buses in attached.items():
-            whole = self.union.find(member)
-            if whole in sets:
-                for bus, position in buses:
-                    own = self._member_name(owns[bus][0], bus_names[self.union.find(bus)], position)
-                    offer(whole, own)
+        claims = self._claims(owns, sheet_of, attached, bus_names, sets)
+        best = self._settled(owns, claims)
         strong: dict[str, list[int]] = defaultdict(list)
         weak: list[tuple[str, list[int]]] = []
         for whole, indices in sets.items():
@@ -322,6 +300,65 @@ class Nets:
                 if name:
                     weak.append((name, indices))
         return self._finish(strong, weak)
+
+    def _claims(
+        self,
+        owns: dict[int, list[_Own]],
+        sheet_of: list[int],
+        attached: dict[int, list[tuple[int, int]]],
+        bus_names: dict[int, _Own],
+        sets: dict[int, list[int]],
+    ) -> dict[int, _Claim]:
+        """Return by set of equal names on a sheet, in the order of the sheets, what it brings into its net."""
+        claims: dict[int, _Claim] = {}
+        for index in sorted(index for indices in sets.values() for index in indices):
+            root = sheet_of[index]
+            names = owns.get(root)
+            if not names or root in claims:
+                continue
+            own = names[0]
+            if own.strength < POWER and root in attached:
+                # The bus gives the name, the net keeps its standing.
+                member = min(
+                    (
+                        self._member_name(owns[bus][0], bus_names[self.union.find(bus)], position)
+                        for bus, position in attached[root]
+                    ),
+                    key=lambda found: found.key,
+                )
+                own = _Own(max(own.strength, HIERARCHICAL), own.depth, member.name, member.short)
+            claims[root] = _Claim(self.nodes[index].use, own)
+        return claims
+
+    def _settled(self, owns: dict[int, list[_Own]], claims: dict[int, _Claim]) -> dict[int, _Own]:
+        """Return the name of each net, second global names taking along the nets of that name."""
+        roots_of: dict[int, list[int]] = defaultdict(list)
+        for root in claims:
+            roots_of[self.union.find(root)].append(root)
+        best = {whole: min((claims[root] for root in roots), key=_across) for whole, roots in roots_of.items()}
+        named: dict[str, list[int]] = defaultdict(list)
+        for root in claims:
+            if owns[root][0].strength >= POWER:
+                for short in {own.short for own in owns[root]}:
+                    named[short].append(root)
+        taken: set[int] = set()
+        for whole, roots in roots_of.items():
+            first = owns[roots[0]]
+            if roots[0] in taken:
+                continue
+            for other in first[1:]:
+                if other.strength < POWER or other.name == first[0].name:
+                    continue
+                for root in named[other.short]:
+                    theirs = self.union.find(root)
+                    if theirs == whole or root in taken:
+                        continue
+                    taken.add(root)
+                    name = best[whole].own
+                    claim = claims[root]
+                    claims[root] = _Claim(claim.use, _Own(claim.own.strength, claim.own.depth, name.name, name.short))
+                    best[theirs] = min((claims[found] for found in roots_of[theirs]), key=_across)
+        return {whole: claim.own for whole, claim in best.items()}
 
     def _member_name(self, own: _Own, whole: _Own, position: int) -> _Own:
         """Return the name of a bus member: that of the strongest bus it is joined with, where it has such a member."""
@@ -380,6 +417,12 @@ class Nets:
                     )
                 )
         return drawn
+
+
+def _across(claim: _Claim) -> tuple[int, int, int, str]:
+    """Rank names across sheets: a power symbol is worth as much as a global label, of equals the first sheet's wins."""
+    shared = claim.own.strength >= POWER
+    return (-min(claim.own.strength, POWER), claim.own.depth, claim.use if shared else 0, claim.own.name)
 
 
 def _as_net(name: str) -> str:

@@ -7,7 +7,7 @@ from xml.parsers import expat
 
 from levelcrossing.errors import InputError
 from levelcrossing.model import Board
-from levelcrossing.read.brackets import DEEPEST, MOST_BRACKETS, Tree
+from levelcrossing.read.brackets import DEEPEST, MOST_TOKENS, Tree
 from levelcrossing.read.gather import gather
 from levelcrossing.read.opening import read_bytes
 
@@ -49,9 +49,9 @@ class _Shaper:
     def _start(self, name: str, attributes: dict[str, str]) -> None:
         self._count += 1 + len(attributes)
         line = self._parser.CurrentLineNumber
-        if len(self._above) > DEEPEST or self._count > MOST_BRACKETS:
+        if len(self._above) > DEEPEST or self._count > MOST_TOKENS:
             deep = len(self._above) > DEEPEST
-            what = f"nests elements more than {DEEPEST} deep" if deep else f"holds more than {MOST_BRACKETS:,} elements"
+            what = f"nests elements more than {DEEPEST} deep" if deep else f"holds more than {MOST_TOKENS:,} elements"
             raise InputError(what, remedy="no netlist does; export it again", file=self.file, line=line)
         node: Tree = [name]
         for label, text in attributes.items():
