@@ -10,7 +10,7 @@ import pytest
 from levelcrossing.declared import read_day, read_fraction, read_number, read_rate, read_volts
 from levelcrossing.errors import SettingsError
 from levelcrossing.model import Board, Net, Outcome, Part, Pin, Settings, Spread
-from levelcrossing.settings import find_settings, load_settings, parse_settings, settings_from_fields
+from levelcrossing.settings import find_settings, load_settings, parse_settings, settings_from_fields, unmatched
 
 WHOLE = """\
 stop_at = "marginal"
@@ -402,3 +402,19 @@ def test_a_field_that_cannot_be_read_is_told(fields: dict[str, str], word: str) 
         settings_from_fields(_board(("U1", {"1": "A", "2": "B"}, fields)), Settings())
     assert word in str(caught.value)
     assert str(caught.value).startswith("gauge.net: field ")
+
+
+def test_names_that_the_board_lacks_are_remarked() -> None:
+    board = _board(("U3", {"4": "/SDA", "5": "/SCL"}, {}), ("J1", {"1": "VMOT"}, {}))
+    file = parse_settings(
+        '[rails]\n"VMOTT" = "24"\n"VM*" = "24"\n[pins]\n"U3.4" = {}\n"U3.44" = {}\n"U33" = {}\n'
+        '[far_ends]\n"J1" = {rail = "5"}\n[rates]\n"/S*" = "1M"\n"/sda" = "1M"\n',
+        "levelcrossing.toml",
+    )
+    assert unmatched(board, file) == (
+        "levelcrossing.toml:6: pins 'U3.44': no such pin of 'U3' (did you mean '4'?)",
+        "levelcrossing.toml:7: pins 'U33': no such part on the board (did you mean 'U3'?)",
+        "levelcrossing.toml: rails 'VMOTT': no such net on the board (did you mean 'VMOT'?)",
+        "levelcrossing.toml: rates '/sda': no such net on the board",
+    )
+    assert unmatched(board, Settings()) == ()

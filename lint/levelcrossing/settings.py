@@ -43,6 +43,8 @@ file, the line and the nearest right key. What the same facts look like as field
 
 from __future__ import annotations
 
+import difflib
+import fnmatch
 import os
 import re
 import tomllib
@@ -64,10 +66,18 @@ from levelcrossing.declared import (
     shown,
 )
 from levelcrossing.errors import SettingsError
-from levelcrossing.model import Outcome, PinSetting, Settings, Spread, Waiver
+from levelcrossing.model import Board, Outcome, PinSetting, Settings, Spread, Waiver
 from levelcrossing.symbolfields import settings_from_fields
 
-__all__ = ["FILE_NAME", "find_settings", "load_settings", "parse_settings", "repository_root", "settings_from_fields"]
+__all__ = [
+    "FILE_NAME",
+    "find_settings",
+    "load_settings",
+    "parse_settings",
+    "repository_root",
+    "settings_from_fields",
+    "unmatched",
+]
 
 FILE_NAME = "levelcrossing.toml"
 
@@ -432,3 +442,45 @@ def _joined(path: tuple[str, ...]) -> str:
     if path[0] in ("rails", "rates", "pins", "far_ends"):
         return " ".join([path[0], *(shown(part) for part in path[1:])])
     return ".".join(path)
+
+
+# --------------------------------------------------------------------------------------------------- against the board
+
+
+def unmatched(board: Board, settings: Settings) -> tuple[str, ...]:
+    """Return a remark for each setting that names what the board does not have.
+
+    Parameters
+    ----------
+    board : Board
+    settings : Settings
+        From the file. One file may serve several boards, so that a name of another board is no error.
+
+    Returns
+    -------
+    tuple of str
+        One line each, with the nearest name that the board has.
+    """
+    pins = {part.reference: [pin.number for pin in part.pins] for part in board.parts}
+    nets = [net.name for net in board.nets]
+    remarks = []
+    for title, table in (("pins", settings.pins), ("far_ends", settings.far_ends)):
+        for place, setting in table.items():
+            part, dot, number = place.partition(".")
+            if part not in pins:
+                remarks.append((setting.line, f"{title} {shown(place)}: no such part on the board", part, [*pins]))
+            elif dot and number not in pins[part]:
+                remarks.append(
+                    (setting.line, f"{title} {shown(place)}: no such pin of {shown(part)}", number, pins[part])
+                )
+    for title, names in (("rails", [*settings.rails]), ("rates", [net for net, _ in settings.rates])):
+        for name in names:
+            if name not in nets and not any(fnmatch.fnmatchcase(net, name) for net in nets):
+                remarks.append((0, f"{title} {shown(name)}: no such net on the board", name, nets))
+    return tuple(_remark(settings.file, *remark) for remark in remarks)
+
+
+def _remark(file: str, line: int, what: str, word: str, known: list[str]) -> str:
+    where = f"{file}:{line}: " if file and line else f"{file}: " if file else ""
+    close = difflib.get_close_matches(word[:100], known, n=1, cutoff=0.6)
+    return f"{where}{what}" + (f" (did you mean {shown(close[0])}?)" if close else "")
