@@ -84,7 +84,7 @@ class Matcher:
     """
 
     def __init__(self, rows: Sequence[Row], *, guarded: bool = True) -> None:
-        self.guarded = guarded
+        self.guard = r"(?:(?<=\D)|(?!\d))" if guarded else ""
         self.rows = rows
         self.index: dict[str, list[tuple[int, str]]] = {}
         self.compiled: dict[str, re.Pattern[str]] = {}
@@ -127,11 +127,9 @@ class Matcher:
             return None
         compiled = self.compiled.get(pattern)
         if compiled is None:
-            compiled = self.compiled[pattern] = re.compile(pattern, re.IGNORECASE)
+            compiled = self.compiled[pattern] = re.compile(f"(?:{pattern})" + self.guard, re.IGNORECASE)
         found = compiled.match(text, begin)
         if found is None or found.end() == begin:
-            return None
-        if self.guarded and text[found.end() - 1].isdigit() and text[found.end() : found.end() + 1].isdigit():
             return None
         return found
 

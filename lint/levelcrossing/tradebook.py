@@ -34,9 +34,6 @@ _PASSIVE = re.compile(r"^(R|RN|RP|RV|C|L|FB|F|TP|JP|SJ|H|MH|Y|X|XTAL|FID|SW|BT)\
 _PASSIVE_LIBRARY = re.compile(
     r"^(Device|pspice|Switch|Mechanical|Jumper|TestPoint|Connector_Generic.*|Graphic)$", re.IGNORECASE
 )
-_COMPONENT_VALUE = re.compile(
-    r"^\d+([.,]\d+)?\s*[PNUMKRΩ]?\d*\s*(F|H|R|OHMS?|Ω|V|A|W|HZ|MHZ|KHZ|%)?([/ ,].*)?$", re.IGNORECASE
-)
 _Facts = TypeVar("_Facts")
 _Key = tuple[str, tuple[tuple[str, str], ...], str]
 
@@ -72,8 +69,7 @@ class Tradebook:
         if _PASSIVE.match(part.reference) and (_PASSIVE_LIBRARY.match(part.library) or len(part.pins) < 3):
             return None
         for text, where in texts(part):
-            bare = where == "value" and _bare_number(text) and not _PASSIVE.match(part.reference)
-            if _COMPONENT_VALUE.match(text) and not bare:
+            if text.isdigit() and (where != "value" or _PASSIVE.match(part.reference)):
                 continue
             found = self.part_of(text, where, part)
             if found is not None:
@@ -277,11 +273,6 @@ class Tradebook:
     @cached_property
     def _pin_names(self) -> Row | None:
         return next(iter(self.table("defaults")), None)
-
-
-def _bare_number(text: str) -> bool:
-    """Tell whether a value may be a bare logic number (``4050``, ``7407``) rather than ohms or farads."""
-    return text.isdigit() and len(text) in (4, 5)
 
 
 def _same_polarity(row: Row, kind: str) -> bool:
