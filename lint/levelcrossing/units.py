@@ -72,6 +72,7 @@ def _is_preferred(value: float) -> bool:
 
 # ---------------------------------------------------------------------------------------------------- taking text apart
 
+_FOREIGN_DIGIT = re.compile(r"(?![0-9])\d")
 _LONGEST = 200  # longer texts are descriptions, not values
 _NUMBER = r"(?:\d{1,9}(?:\.\d{0,9})?|\.\d{1,9})"
 _PREFIX = {"": 0, "f": -15, "p": -12, "n": -9, "u": -6, "m": -3, "k": 3, "M": 6, "G": 9}
@@ -104,7 +105,9 @@ def _read(text: str, strong: Callable[[str], float | None], plain: Callable[[str
     strong, plain : callable
         Read one word that shows its unit, and one bare number that stands alone; None for neither.
     """
-    if len(text) > _LONGEST or "@" in text or "MHz" in text:  # 600R@100MHz is an impedance, no resistance
+    if len(text) > _LONGEST or _FOREIGN_DIGIT.search(text):
+        return None
+    if "@" in text or "MHz" in text:  # 600R@100MHz is an impedance, no resistance
         return None
     text = _WATTS_AS_FRACTION.sub(" ", _OHM.sub("R", text.translate(_SAME)))
     if not _THOUSANDS.search(text):  # 1,000 is a thousand here and one there
@@ -336,7 +339,7 @@ def parse_volts(text: str, tolerance: float = 0.0) -> Spread | None:
     True
     """
     text = text.strip()
-    if not text or len(text) > 60:
+    if not text or len(text) > 60 or _FOREIGN_DIGIT.search(text):
         return None
     if not _THOUSANDS.search(text):
         text = _DECIMAL_COMMA.sub(".", text)

@@ -1,8 +1,8 @@
 """Text in brackets, to nested lists of text: the form of KiCad's netlists, old and new.
 
-A small reader of our own, because a Lisp reader takes ``58103E50`` for a number, ``'1k`` for a quotation, ``D[0]`` for
-two lists, ``;`` for a comment and ``5"`` for an unfinished text, and falls over its own recursion on hostile input.
-This one keeps every token as text, does not recurse and knows where each bracket was opened.
+A small reader of our own, because a Lisp reader takes ``58103E50`` for a number, ``'1k`` for a quotation, ``SIO[2]`` (a
+pin on published boards) for two lists, ``;`` for a comment and ``5"`` for an unfinished text, and falls over its own
+recursion on hostile input. This one keeps every token as text, does not recurse and knows where each bracket was opened.
 """
 
 from __future__ import annotations

@@ -90,7 +90,7 @@ def gather(tree: Tree, file: str, form: str, remarks: tuple[str, ...] = ()) -> B
     got = _Gathering(file, remarks=list(remarks))
     _take_symbols(got, tree)
     _take_parts(got, tree)
-    _take_nets(got, tree)
+    _take_nets(got, tree, names_are_escaped=form == "netlist")
     parts = tuple(_part(got, reference) for reference in sorted(got.comps, key=natural_key))
     nets = tuple(Net(name=name, pins=tuple(sorted(pins))) for name, pins in sorted(got.nets.items()))
     if got.symbolless:
@@ -169,8 +169,13 @@ def _take_parts(got: _Gathering, tree: Tree) -> None:
         got.remarks.append(f"{names} listed more than once, alike each time: taken as one part each")
 
 
-def _take_nets(got: _Gathering, tree: Tree) -> None:
-    """Take the nets; one name is one net."""
+def _take_nets(got: _Gathering, tree: Tree, *, names_are_escaped: bool) -> None:
+    """Take the nets; one name is one net.
+
+    In XML KiCad writes ``/a{slash}b`` as ``/a/b``, so that two nets may come to share a name: there the code tells them
+    apart.
+    """
+    codes: dict[str, str] = {}
     repeated: list[str] = []
     strangers: list[str] = []
     twice: list[str] = []
@@ -181,8 +186,13 @@ def _take_nets(got: _Gathering, tree: Tree) -> None:
             if not name and nodes:
                 name = f"(net {text_of(net, 'code') or len(got.nets) + 1} without a name)"
                 got.remarks.append(f"a net without a name is called {name!r}")
+            code = text_of(net, "code")
+            if name in got.nets and not names_are_escaped and code != codes[name]:
+                got.remarks.append(f"two nets are called {name!r}: the second is called {f'{name} (net {code})'!r}")
+                name = f"{name} (net {code})"
             if name in got.nets:
                 repeated.append(name)
+            codes.setdefault(name, code)
             pins = got.nets.setdefault(name, []) if name else []
             for node in nodes:
                 reference, number = text_of(node, "ref"), text_of(node, "pin")
