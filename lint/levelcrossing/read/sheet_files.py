@@ -307,7 +307,8 @@ def _fields(node: Tree) -> tuple[tuple[str, str], ...]:
         if words and words[0] == "private" and len(words) > 2:
             words = words[1:]
         if words:
-            found.append((_plain(words[0]), _plain(words[1]) if len(words) > 1 else ""))
+            text = _plain(words[1]) if len(words) > 1 else ""
+            found.append((_plain(words[0]), "" if text == "~" else text))  # a lone ~ has always meant "empty"
     return tuple(found)
 
 

@@ -70,11 +70,14 @@ class SheetUse:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class DrawnNet:
-    """A net as drawn: name, pins, whether it bears a no-connect mark, and the groups (use, group) it consists of."""
+    """A net as drawn: name, pins, and the groups (use, group) it consists of.
+
+    ``unused`` is set when it bears a no-connect mark and holds nothing but one pin, however often drawn at its point.
+    """
 
     name: str
     pins: tuple[UsedPin, ...]
-    crossed: bool
+    unused: bool
     groups: tuple[tuple[int, int], ...]
 
 
@@ -406,13 +409,15 @@ class Nets:
             nets.append((name + suffix, indices))
         drawn = []
         for name, indices in nets:
-            pins = [used for index in indices for used in self.nodes[index].pins if used.netlisted]
+            everything = [used for index in indices for used in self.nodes[index].pins]
+            pins = [used for used in everything if used.netlisted]
             if pins:
+                alone = len({(used.symbol, used.pin.at, used.pin.name) for used in everything}) == 1
                 drawn.append(
                     DrawnNet(
                         name=name,
                         pins=tuple(pins),
-                        crossed=any(self.nodes[index].crossed for index in indices),
+                        unused=alone and any(self.nodes[index].crossed for index in indices),
                         groups=tuple((self.nodes[index].use, self.nodes[index].group) for index in indices),
                     )
                 )

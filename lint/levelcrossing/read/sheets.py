@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-import re
 from collections import defaultdict
+from collections.abc import Iterable
 from dataclasses import dataclass
 from pathlib import Path
 
+from levelcrossing.errors import InputError
 from levelcrossing.model import Board, Net, Part, Pin
 from levelcrossing.read.sheet_files import (
     POWER_BY_VALUE_VERSION,
@@ -18,8 +19,13 @@ from levelcrossing.read.sheet_geometry import Group, PlacedPin, placed_pin, touc
 from levelcrossing.read.sheet_names import resolve, unit_letters
 from levelcrossing.read.sheet_nets import DrawnNet, Nets, SheetUse, UsedPin
 from levelcrossing.read.sheet_project import Project, Use, find_root
+from levelcrossing.units import natural_key
 
-_OWN_FIELDS = frozenset({"Reference", "Value", "Footprint", "Datasheet"})
+_OWN_FIELDS = frozenset({"Reference", "Value", "Footprint", "Datasheet", "Description"})
+_DROPPED_FIELDS = ("Sim.Enable", "Spice_")
+"""Beginnings of the fields for simulation that KiCad itself replaces when it reads an older sheet."""
+
+_MOST_NAMED = 6
 
 
 @dataclass(slots=True, kw_only=True)
@@ -53,37 +59,28 @@ def read_sheets(path: str | Path) -> Board:
     root = find_root(given)
     project = Project(root)
     reader = _Reader(project)
-    drawn = Nets(reader.sheet_uses(), project.aliases).drawn()
-    remarks = list(project.remarks)
+    drawn = sorted(Nets(reader.sheet_uses(), project.aliases).drawn(), key=lambda net: natural_key(net.name))
+    parts = reader.parts(drawn)
+    nets = reader.nets(drawn)
+    remarks = [*project.remarks, *reader.remarks]
     if given.is_file() and given.suffix == ".kicad_sch" and given != root:
         remarks.append(f"{given.name} is a sub-sheet: the whole board was read from {root.name}")
     return Board(
         path=str(path),
         form="sheets",
         maker=project.uses[0].file.maker,
-        parts=reader.parts(drawn),
-        nets=_nets(drawn),
+        parts=parts,
+        nets=nets,
         remarks=tuple(remarks),
-        sheet_files=tuple(dict.fromkeys(project.shown(use.file.path) for use in project.uses)),
+        sheet_files=tuple(dict.fromkeys(project.shown(project.uses[index].file.path) for index in project.in_page_order())),
     )
-
-
-def natural(text: str) -> list[tuple[int, int, str]]:
-    """Return a sort key that puts R2 before R10."""
-    return [(0, int(run), "") if run.isdigit() else (1, 0, run) for run in re.findall(r"\d+|\D+", text)]
-
-
-def _nets(drawn: list[DrawnNet]) -> tuple[Net, ...]:
-    nets = []
-    for net in drawn:
-        pins = {(used.reference, used.pin.number) for used in net.pins}
-        nets.append(Net(name=net.name, pins=tuple(sorted(pins))))
-    return tuple(sorted(nets, key=lambda net: net.name))
 
 
 class _Reader:
     def __init__(self, project: Project) -> None:
         self.project = project
+        self.remarks: list[str] = []
+        self.net_of: dict[tuple[str, str], tuple[str, PlacedPin, bool]] = {}
         self.geometry: dict[tuple[object, ...], list[Group]] = {}
         self.units: list[list[_Unit]] = [
             [
@@ -220,88 +217,148 @@ class _Reader:
         return resolve(text, lookup)
 
     def _value(self, unit: _Unit) -> str:
-        return unit.symbol.field("Value")
+        return unit.symbol.field("Value") if unit.instance.value is None else unit.instance.value
 
     def _footprint(self, unit: _Unit) -> str:
-        return unit.symbol.field("Footprint")
+        return unit.symbol.field("Footprint") if unit.instance.footprint is None else unit.instance.footprint
 
     def _shown_value(self, unit: _Unit) -> str:
         return self._shown(unit, self._value(unit))
 
     # ------------------------------------------------------------------------------------------------------ the parts
 
+    def nets(self, drawn: list[DrawnNet]) -> tuple[Net, ...]:
+        """Return all nets; a pin that is on several counts on the first."""
+        nets = [
+            Net(
+                name=net.name,
+                pins=tuple(
+                    sorted(
+                        {
+                            (used.reference, used.pin.number)
+                            for used in net.pins
+                            if self.net_of[used.reference, used.pin.number][0] == net.name
+                        }
+                    )
+                ),
+            )
+            for net in drawn
+        ]
+        return tuple(sorted(nets, key=lambda net: net.name))
+
     def parts(self, drawn: list[DrawnNet]) -> tuple[Part, ...]:
         """Return all parts with their pins."""
-        net_of: dict[tuple[str, str], tuple[str, PlacedPin, bool]] = {}
-        for net in sorted(drawn, key=lambda net: net.name):
-            stacked = net.crossed and _stacked(net)
-            for used in net.pins:
-                net_of.setdefault((used.reference, used.pin.number), (net.name, used.pin, stacked))
-        parts = []
         found: dict[str, list[_Unit]] = defaultdict(list)
         for index in self.project.in_page_order():
             for unit in self.units[index]:
-                use = self.project.uses[index]
-                power = unit.library is not None and unit.library.power
-                if (
-                    unit.symbol.on_board
-                    and use.on_board
-                    and not power
-                    and not unit.instance.reference.startswith("#")
-                ):
+                if self._is_part(unit):
                     found[unit.instance.reference].append(unit)
-        for reference, units in found.items():
-            parts.append(self._part(reference, units, net_of))
-        return tuple(sorted(parts, key=lambda part: natural(part.reference)))
+        if not found:
+            raise InputError(
+                "holds no parts", remedy="place symbols, or name the root sheet", file=self.project.root.name
+            )
+        doubled = {reference for reference, units in found.items() if self._doubled(units)}
+        twice: dict[str, None] = {}
+        for net in drawn:
+            for used in net.pins:
+                known = self.net_of.setdefault((used.reference, used.pin.number), (net.name, used.pin, net.unused))
+                if known[0] != net.name:
+                    if used.reference in doubled:
+                        raise InputError(
+                            f"has several parts called {used.reference}: "
+                            f"pin {used.pin.number} is on {known[0]!r} and on {net.name!r}",
+                            remedy="annotate the schematic",
+                            file=self.project.root.name,
+                        )
+                    twice[f"{used.reference}.{used.pin.number}"] = None
+        if doubled:
+            self.remarks.append(f"given to several parts that are alike: {_named(doubled)}; taken as one part each")
+        if twice:
+            self.remarks.append(f"pins on several nets: {_named(twice)}; taken as on the first")
+        parts = [self._part(reference, units) for reference, units in found.items()]
+        return tuple(sorted(parts, key=lambda part: natural_key(part.reference)))
 
-    def _part(
-        self, reference: str, units: list[_Unit], net_of: dict[tuple[str, str], tuple[str, PlacedPin, bool]]
-    ) -> Part:
+    def _doubled(self, units: list[_Unit]) -> bool:
+        """Whether parts of one unit on several sheets have one reference; refuse when they are not even alike."""
+        first = units[0]
+        if (first.library is not None and first.library.units > 1) or len({unit.use for unit in units}) == 1:
+            return False
+        if len({(self._shown_value(unit), unit.symbol.library_id) for unit in units}) > 1:
+            raise InputError(
+                f"has different parts of the same reference: {first.instance.reference}",
+                remedy="annotate the schematic",
+                file=self.project.root.name,
+            )
+        return True
+
+    def _is_part(self, unit: _Unit) -> bool:
+        use = self.project.uses[unit.use]
+        power = unit.library is not None and unit.library.power
+        return unit.symbol.on_board and use.on_board and not power and not unit.instance.reference.startswith("#")
+
+    def _part(self, reference: str, units: list[_Unit]) -> Part:
         first = units[0]
         library = first.library
-        by_unit = sorted(units, key=lambda unit: unit.instance.unit)
         several = library is not None and library.units > 1
-        told = by_unit if several else [first]
-        fields: dict[str, str] = {}
+        told = sorted(units, key=lambda unit: unit.instance.unit) if several else [first]
+        # Named in the order of the sheets, told by the lowest unit that says anything.
+        fields = {name: "" for unit in (units if several else told) for name, _ in unit.symbol.fields}
         for unit in told:
             for name, text in unit.symbol.fields:
-                if name not in _OWN_FIELDS and not fields.get(name):
-                    fields[name] = self._shown(unit, text)
+                fields[name] = fields[name] or self._shown(unit, text)
+        fields = {
+            name: text
+            for name, text in fields.items()
+            if name not in _OWN_FIELDS and not name.startswith(_DROPPED_FIELDS)
+        }
+        about = _first_text(self._shown(unit, unit.symbol.field("Description")) for unit in told)
+        fields["Description"] = about
+        box = self.project.uses[first.use].box
+        for name, text in box.fields[2:] if box is not None else ():
+            if name not in _OWN_FIELDS:
+                fields.setdefault(name, self._shown(first, text))
         pins: dict[str, Pin] = {}
-        if library is not None:
-            for _, _, pin in library.pins:
-                net, placed, stacked = net_of.get((reference, pin.number), ("", None, False))
-                name = placed.name if placed is not None else "" if pin.name == "~" else pin.name
-                kind = placed.kind if placed is not None else pin.kind
-                pins.setdefault(
-                    pin.number, Pin(part=reference, number=pin.number, name=name, kind=kind, net=net, unused=stacked)
-                )
+        for _, _, pin in library.pins if library is not None else ():
+            net, placed, unused = self.net_of.get((reference, pin.number), ("", None, False))
+            name = placed.name if placed is not None else "" if pin.name == "~" else pin.name
+            kind = placed.kind if placed is not None else pin.kind
+            pins.setdefault(
+                pin.number, Pin(part=reference, number=pin.number, name=name, kind=kind, net=net, unused=unused)
+            )
         library_name, _, symbol_name = first.symbol.library_id.rpartition(":")
+        if first.symbol.library_name:
+            # The sheet has its own version of the symbol, which belongs to no library.
+            library_name, symbol_name = "", first.symbol.library_name
         return Part(
             reference=reference,
-            value=self._told(told, lambda unit: self._shown_value(unit)) or "~",
+            value=_first_text(self._shown_value(unit) for unit in told) or "~",
             library=library_name,
             symbol=symbol_name,
-            description=_library_field(library, "Description", "ki_description"),
-            keywords=_library_field(library, "ki_keywords"),
-            footprint=self._told(told, lambda unit: self._shown(unit, self._footprint(unit))),
+            description=_library_description(library) or about,
+            keywords=library.field("ki_keywords") if library is not None else "",
+            footprint=_first_text(self._shown(unit, self._footprint(unit)) for unit in told),
             fields=tuple(fields.items()),
             fitted=first.symbol.fitted and self.project.uses[first.use].fitted,
-            not_fitted_why="",
             sheet=self.project.uses[first.use].names,
-            uuids=tuple(sorted(unit.symbol.uuid for unit in units)),
-            pins=tuple(sorted(pins.values(), key=lambda pin: natural(pin.number))),
+            # Like the exported netlist: the units on the sheet of the first one.
+            uuids=tuple(sorted({unit.symbol.uuid for unit in units if unit.use == first.use})),
+            pins=tuple(sorted(pins.values(), key=lambda pin: natural_key(pin.number))),
         )
 
-    @staticmethod
-    def _told(units, say) -> str:
-        return next((text for text in map(say, units) if text), "")
+
+def _named(names: Iterable[str]) -> str:
+    found = sorted(names, key=natural_key)
+    return ", ".join(found[:_MOST_NAMED]) + (f" and {len(found) - _MOST_NAMED} more" if len(found) > _MOST_NAMED else "")
 
 
-def _library_field(library: LibrarySymbol | None, *names: str) -> str:
+def _first_text(texts: Iterable[str]) -> str:
+    return next((text for text in texts if text), "")
+
+
+def _library_description(library: LibrarySymbol | None) -> str:
     if library is None:
         return ""
-    return next((library.field(name) for name in names if library.field(name)), "")
+    return library.field("Description") or library.field("ki_description").strip()
 
 
 def _several_names(groups: list[Group]) -> dict[tuple[int, str, bool], set[str]]:
@@ -311,8 +368,3 @@ def _several_names(groups: list[Group]) -> dict[tuple[int, str, bool], set[str]]
         for pin in group.pins:
             found[pin.symbol, pin.name, pin.kind == "no_connect"].add(pin.number)
     return found
-
-
-def _stacked(net: DrawnNet) -> bool:
-    """Whether all pins of a net are one pin drawn several times at one point."""
-    return len({(used.symbol, used.pin.at, used.pin.name) for used in net.pins}) == 1
