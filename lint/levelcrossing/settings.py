@@ -220,11 +220,12 @@ def _key_lines(text: str) -> dict[tuple[str, ...], int]:
             continue
         if header := _HEADER.match(line):
             table = _key_parts(header[2])
+            for length in range(1, len(table) + 1):
+                lines.setdefault(table[:length], number)
             if header[1] == "[[":
                 counts[table] = counts.get(table, -1) + 1
-                lines.setdefault(table, number)
                 table = (*table, str(counts[table]))
-            lines.setdefault(table, number)
+                lines.setdefault(table, number)
         elif assignment := _ASSIGNMENT.match(line):
             path = (*table, *_key_parts(assignment[1]))
             for length in range(len(table) + 1, len(path) + 1):
