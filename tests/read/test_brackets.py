@@ -59,6 +59,8 @@ def test_a_second_reader_sees_the_same_tree(path):
         "|",
         ",",
         "1_000",
+        "10\u00a0k",
+        "a\x0bb",
         "inf",
     ],
 )

@@ -32,7 +32,8 @@ OLD = """\
       (libsource (lib 74xx) (part 74HC86) (description "Quad XOR"))
       (sheetpath (names /power/) (tstamps /5F2A889B/))
       (tstamp 58103E50))
-    (comp (ref R1) (value NA/R0402) (libsource (lib Device) (part R) (description Resistor)) (sheetpath (names /) (tstamps /))
+    (comp (ref R1) (value NA/R0402) (libsource (lib Device) (part R) (description Resistor))
+      (sheetpath (names /) (tstamps /))
       (tstamp 5F2A0001))
     (comp (ref X-1) (value 01) (tstamp 5F2A0002)))
   (libparts
@@ -258,7 +259,8 @@ def test_what_the_net_says_of_a_pin_outranks_the_symbol():
     board = small(
         "(comp (ref U1) (value x) (libsource (lib l) (part S)))",
         "(net (name N) (node (ref U1) (pin 1) (pinfunction TX) (pintype output+no_connect)))",
-        "(libpart (lib l) (part S) (pins (pin (num 1) (name PA0) (type bidirectional)) (pin (num 2) (name PA1) (type input))))",
+        "(libpart (lib l) (part S) (pins (pin (num 1) (name PA0) (type bidirectional))"
+        " (pin (num 2) (name PA1) (type input))))",
     )
     first, second = part_of(board, "U1").pins
     assert (first.name, first.kind, first.unused, first.net) == ("TX", "output", True, "N")

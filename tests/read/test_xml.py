@@ -40,8 +40,8 @@ def test_both_forms_give_the_same_board(path):
 def test_two_nets_that_lost_their_difference_stay_apart():
     board = xml(
         "<export><components><comp ref='R1'/></components><nets>"
-        "<net code='1' name='/a/b'><node ref='R1' pin='1'/></net>"
-        "<net code='2' name='/a/b'><node ref='R1' pin='2'/></net></nets></export>"
+        "<net code='1' name='/a/b'><node ref='R1' pin='1' pintype='passive'/></net>"
+        "<net code='2' name='/a/b'><node ref='R1' pin='2' pintype='passive'/></net></nets></export>"
     )
     assert [(net.name, net.pins) for net in board.nets] == [("/a/b", (("R1", "1"),)), ("/a/b (net 2)", (("R1", "2"),))]
     assert board.remarks == ("two nets are called '/a/b': the second is called '/a/b (net 2)'",)
@@ -61,7 +61,8 @@ def test_layout_is_dropped_and_text_is_kept():
 
 def test_pin_types_of_older_files():
     board = xml(
-        "<export version='D'><components><comp ref='U1'><value>x</value><libsource lib='l' part='S'/></comp></components>"
+        "<export version='D'><components><comp ref='U1'><value>x</value>"
+        "<libsource lib='l' part='S'/></comp></components>"
         "<libparts><libpart lib='l' part='T'><aliases><alias>S</alias></aliases>"
         "<pins><pin num='01' name='~' type='BiDi'/></pins></libpart></libparts><nets/></export>"
     )
@@ -69,7 +70,8 @@ def test_pin_types_of_older_files():
 
 
 def test_a_declared_encoding_is_followed():
-    text = "<?xml version='1.0' encoding='ISO-8859-1'?><export><components><comp ref='R1'><value>Tür</value></comp></components></export>"
+    head = "<?xml version='1.0' encoding='ISO-8859-1'?>"
+    text = head + "<export><components><comp ref='R1'><value>Tür</value></comp></components></export>"
     assert read_xml("board.xml", text.encode("latin-1")).parts[0].value == "Tür"
 
 
@@ -111,7 +113,8 @@ def test_bad_xml_gets_one_line(text, line, what):
 def test_no_file_is_opened_for_an_external_entity(tmp_path):
     secret = tmp_path / "secret"
     secret.write_text("do not read")
-    text = f"<!DOCTYPE export [<!ENTITY x SYSTEM 'file://{secret}'>]>\n<export><components><comp ref='&x;'/></components></export>"
+    entity = f"<!DOCTYPE export [<!ENTITY x SYSTEM 'file://{secret}'>]>\n"
+    text = entity + "<export><components><comp ref='&x;'/></components></export>"
     with pytest.raises(InputError) as caught:
         xml(text)
     assert "do not read" not in str(caught.value)

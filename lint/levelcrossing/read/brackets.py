@@ -2,7 +2,7 @@
 
 A small reader of our own, because a Lisp reader takes ``58103E50`` for a number, ``'1k`` for a quotation, ``SIO[2]`` (a
 pin on published boards) for two lists, ``;`` for a comment and ``5"`` for an unfinished text, and falls over its own
-recursion on hostile input. This one keeps every token as text, does not recurse and knows where each bracket was opened.
+recursion on hostile input. This one keeps every token as text, does not recurse and knows where each bracket opened.
 """
 
 from __future__ import annotations
@@ -17,8 +17,9 @@ Tree: TypeAlias = "list[str | Tree]"
 DEEPEST = 100  # KiCad's own netlists nest eight deep
 MOST_TOKENS = 6_000_000  # bounds memory to about half a gigabyte; the largest real netlist seen has 1.5 million
 
-# A quoted text may hold escaped quotes and line ends; an unquoted token ends at white space or a bracket only.
-_TOKEN = re.compile(r'\s*(?:(\()|(\))|"([^"\\]*(?:\\.[^"\\]*)*)"|([^\s()"][^\s()]*)|(.))', re.DOTALL)
+# A quoted text may hold escaped quotes and line ends; an unquoted token ends at white space or a bracket only. White
+# space is what KiCad takes for it: a no-break space belongs to its token.
+_TOKEN = re.compile(r'[ \t\r\n]*(?:(\()|(\))|"([^"\\]*(?:\\.[^"\\]*)*)"|([^ \t\r\n()"][^ \t\r\n()]*)|(.))', re.DOTALL)
 _ESCAPED = re.compile(r"\\(.)", re.DOTALL)
 _GOES_ON = "goes on after the bracket that ends the netlist"
 _ESCAPES = {"n": "\n", "r": "\r", "t": "\t"}
