@@ -10,7 +10,7 @@ def make_part(value, symbol="", reference="U1", library="", pins=(), fields=()):
     """Make a part; each pin is "number", "number:name" or "number:name:kind"."""
     made = []
     for text in pins:
-        number, name, kind = (text.split(":") + ["", ""])[:3]
+        number, name, kind = [*text.split(":"), "", ""][:3]
         made.append(Pin(part=reference, number=number, name=name, kind=kind, net=f"net {number}"))
     return Part(
         reference=reference,
