@@ -126,7 +126,8 @@ def test_edit_1_a_rail_swapped(tmp_path: Path) -> None:
     assert lower + "GND" in GAUGE
     result, status = _compared(tmp_path, GAUGE, GAUGE.replace(lower + "GND", lower + "+5V"))
     change = _worse(result, "U2.2")
-    assert (change["before"], change["after"], change["counts"], status) == ("sound", "damage", True, 1)
+    assert (change["before"], change["counts"], status) == ("sound", True, 1)
+    assert change["after"] in ("damage", "malfunction")
     top = next(figure for figure in change["figures"] if figure["name"] == "voltage, greatest")
     assert top["before"] < 3.6 < top["after"]
 

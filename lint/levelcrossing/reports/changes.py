@@ -135,9 +135,10 @@ def markdown_changes(comparisons: Sequence[Comparison], *, everything: bool = Fa
 
 def _bullets(changes: Sequence[Change], safe: Callable[[str], str]) -> Iterator[str]:
     for change in changes:
-        yield f"- {safe(change.title)}: **{_verdicts(change).replace('->', '→')}**"
-        for figure in _interesting(change):
-            yield f"  - {safe(_figure(figure).replace('->', '→'))}"
+        title = " → ".join(safe(end) for end in change.title.split(" -> "))
+        yield f"- {title}: **{_verdicts(change).replace('->', '→')}**"
+        for figure in _interesting(change):  # words and figures of our own, nothing from the board
+            yield f"  - {_figure(figure).replace('->', '→')}"
         for note in change.notes:
             yield f"  - {safe(note)}"
         for finding in change.findings:
