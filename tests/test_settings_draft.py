@@ -50,7 +50,10 @@ def _pin(part: str, number: str, name: str, **more: object) -> PinModel:
 def _review(
     unknown: tuple[tuple[str, str], ...], not_judged: tuple[NotJudged, ...], *pairs: tuple[PinModel, PinModel]
 ) -> Review:
-    parts = tuple(Part(reference=name, value=f"value of {name}") for name in ("J2", "J10", "U3", "U4"))
+    parts = tuple(
+        Part(reference=name, value=f"value of {name}", library="Connector" if name[0] == "J" else "")
+        for name in ("J2", "J10", "U3", "U4")
+    )
     return Review(
         board=Board(path="gauge.net", form="netlist", parts=parts, nets=()),
         rails=Rails(by_net={}, unknown=unknown),

@@ -12,13 +12,12 @@ from dataclasses import replace
 from pathlib import Path
 
 from levelcrossing.errors import CommandError
-from levelcrossing.likeness import letters_of
 from levelcrossing.model import Basis, Part, PinModel, Review
+from levelcrossing.partkinds import is_connector
 from levelcrossing.reports.clean import visible
 from levelcrossing.settings import load_settings
 from levelcrossing.waive import toml_text
 
-_CONNECTORS = ("J", "P", "X", "CN", "CON", "K", "JP", "TB", "XS", "XP")
 _MOST_PINS = 8
 
 
@@ -111,8 +110,9 @@ def _rails(review: Review) -> Iterator[str]:
 def _far_ends(review: Review) -> Iterator[str]:
     """Yield one entry for each connector with signals whose other side is not known, or was only inferred."""
     open_pins: dict[str, list[str]] = {}
+    connectors = {part.reference for part in review.board.parts if is_connector(part)}
     for entry in review.coverage.not_judged:
-        if letters_of(entry.part) in _CONNECTORS:
+        if entry.part in connectors:
             open_pins.setdefault(entry.part, []).append(_pin_words(entry.pin, entry.name or entry.net))
     for crossing in review.crossings:
         for pin in (crossing.solved.crossing.driver, crossing.solved.crossing.receiver):
@@ -132,12 +132,13 @@ def _far_ends(review: Review) -> Iterator[str]:
 def _pins(review: Review) -> Iterator[str]:
     """Yield one entry for each part whose levels were only assumed, or that could not be judged."""
     found: dict[str, list[str]] = {}
+    connectors = {part.reference for part in review.board.parts if is_connector(part)}
     for crossing in review.crossings:
         for pin in (crossing.solved.crossing.driver, crossing.solved.crossing.receiver):
             if pin is not None and pin.role == "signal" and _assumed(pin):
                 found.setdefault(pin.part, []).append(_pin_words(pin.number, pin.name))
     for entry in review.coverage.not_judged:
-        if letters_of(entry.part) not in _CONNECTORS:
+        if entry.part not in connectors:
             found.setdefault(entry.part, []).append(f"{_pin_words(entry.pin, entry.name)} not judged: {entry.why}")
     if not found:
         yield "# Every part that takes part in a crossing is known."
