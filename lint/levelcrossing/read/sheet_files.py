@@ -13,6 +13,7 @@ import os
 import stat
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
@@ -32,7 +33,7 @@ NEWEST_VERSION = 20260399
 POWER_BY_VALUE_VERSION = 20230221
 """From this version on a power symbol names its net by its value, before by its pin (seen in exported netlists)."""
 
-LARGEST_FILE_BYTES = 256 * 1024 * 1024
+LARGEST_FILE_BYTES = 100_000_000
 """A larger file is refused: the largest real sheets have a hundredth of it."""
 
 DEEPEST_NESTING = 200
@@ -178,8 +179,9 @@ def read_text(path: Path, shown: str) -> str:
         if not stat.S_ISREG(before.st_mode):
             raise InputError("is no file", remedy="name a sheet, a project file or a project folder", file=shown)
         if before.st_size > LARGEST_FILE_BYTES:
+            most = LARGEST_FILE_BYTES // 1_000_000
             raise InputError(
-                f"has {before.st_size // 1_000_000} MB, more than the {LARGEST_FILE_BYTES // 1_000_000} MB that are read",
+                f"has {before.st_size // 1_000_000} MB, more than the {most} MB that are read",
                 remedy="is it really a KiCad sheet?",
                 file=shown,
             )
@@ -325,7 +327,7 @@ def _library_pin(node: Tree) -> LibraryPin:
 
 def _library_symbol(node: Tree) -> LibrarySymbol:
     power = _child(node, "power")
-    pins = []
+    pins: list[tuple[int, int, LibraryPin]] = []
     most = 1
     for body in _children(node, "symbol"):
         _, unit, style = _plain(body[1]).rsplit("_", 2)
@@ -358,7 +360,7 @@ def _symbol(node: Tree) -> SheetSymbol:
         chosen = _text(pin, "alternate")
         if chosen:
             alternates.append((_plain(pin[1]), chosen))
-    instances = []
+    instances: list[tuple[str, Instance]] = []
     for group in _children(node, "instances"):
         for project in _children(group, "project"):
             instances.extend((_plain(path[1]), _instance(path)) for path in _children(project, "path"))
@@ -386,7 +388,7 @@ def _box(node: Tree, index: int) -> SheetBox:
     named = dict(fields)
     # Sheets that KiCad 6 wrote in another language name the two differently; they always come first.
     texts = [text for _, text in fields[:2]] + ["", ""]
-    pages = []
+    pages: list[tuple[str, str]] = []
     for group in _children(node, "instances"):
         for project in _children(group, "project"):
             pages.extend((_plain(path[1]), _text(path, "page")) for path in _children(project, "path"))
@@ -407,7 +409,7 @@ def _box(node: Tree, index: int) -> SheetBox:
 
 def _lines(node: Tree) -> Iterator[Line]:
     points = [_point(item) for item in _children(_child(node, "pts") or [], "xy")]
-    for start, end in zip(points, points[1:], strict=False):
+    for start, end in pairwise(points):
         yield Line(start=start, end=end, kind=node[0])
 
 

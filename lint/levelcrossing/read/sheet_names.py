@@ -96,9 +96,8 @@ def bus_of(text: str, aliases: Mapping[str, tuple[str, ...]], depth: int = 0) ->
 
 def _vector(text: str) -> list[str] | None:
     match = _VECTOR.fullmatch(text)
-    if match is None or (match[4] and not set(match[4]) <= set("}+-PNpn")):
-        if match is None:
-            return None
+    if match is None:
+        return None
     low, high = sorted((int(match[2]), int(match[3])))
     return [f"{match[1]}{number}{match[4]}" for number in range(low, min(high, low + _LONGEST_VECTOR) + 1)]
 
@@ -151,9 +150,7 @@ def unit_letters(unit: int) -> str:
     return letters
 
 
-def pin_net_name(
-    *, reference: str, unit: str, number: str, name: str, several: bool, unused: bool
-) -> str:
+def pin_net_name(*, reference: str, unit: str, number: str, name: str, several: bool, unused: bool) -> str:
     """Return the name of a net that only pins name.
 
     Parameters

@@ -264,9 +264,7 @@ class Nets:
                     self.union.join(members[root][position], self._key(use, other.bus.members[member].name))
         return members
 
-    def _join_buses(
-        self, owns: dict[int, list[_Own]], above: int, below: int, members: dict[int, list[int]]
-    ) -> None:
+    def _join_buses(self, owns: dict[int, list[_Own]], above: int, below: int, members: dict[int, list[int]]) -> None:
         first, second = owns[above][0].bus, owns[below][0].bus
         if first is None or second is None:
             return

@@ -56,6 +56,7 @@ class Use:
         False when this sheet or one above is marked so.
     """
 
+    index: int
     file: SheetFile
     path: str
     names: str
@@ -98,9 +99,9 @@ class Project:
         found = self.settings.get("text_variables")
         return {str(key): str(text) for key, text in found.items()} if isinstance(found, dict) else {}
 
-    def in_page_order(self) -> list[int]:
+    def in_page_order(self) -> list[Use]:
         """Return the uses in order of their page numbers."""
-        return sorted(range(len(self.uses)), key=lambda index: (_page_key(self.uses[index].page), index))
+        return sorted(self.uses, key=lambda use: (_page_key(use.page), use.index))
 
     def instance(self, use: Use, symbol: SheetSymbol) -> Instance:
         """Return how a symbol is called on a use of its sheet."""
@@ -123,7 +124,7 @@ class Project:
             self._symbols[key] = _with_parents(file, name)
         return self._symbols[key]
 
-    # -------------------------------------------------------------------------------------------------- growing the tree
+    # ------------------------------------------------------------------------------------------------ growing the tree
 
     def _file(self, path: Path, asked_by: SheetFile | None) -> SheetFile:
         known = self.files.get(path)
@@ -153,6 +154,7 @@ class Project:
         file = self._file(self.root, None)
         self.uses.append(
             Use(
+                index=0,
                 file=file,
                 path=f"/{file.uuid}",
                 names="/",
@@ -186,6 +188,7 @@ class Project:
             use.children[position] = len(self.uses)
             self.uses.append(
                 Use(
+                    index=len(self.uses),
                     file=child,
                     path=below,
                     names=f"{use.names}{box.name}/",
@@ -222,9 +225,7 @@ class Project:
             index = self.uses[index].parent
 
 
-def _with_parents(
-    file: SheetFile, name: str
-) -> tuple[LibrarySymbol, tuple[tuple[int, int, LibraryPin], ...]] | None:
+def _with_parents(file: SheetFile, name: str) -> tuple[LibrarySymbol, tuple[tuple[int, int, LibraryPin], ...]] | None:
     symbol = file.library.get(name)
     if symbol is None:
         return None

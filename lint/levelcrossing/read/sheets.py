@@ -72,7 +72,7 @@ def read_sheets(path: str | Path) -> Board:
         parts=parts,
         nets=nets,
         remarks=tuple(remarks),
-        sheet_files=tuple(dict.fromkeys(project.shown(project.uses[index].file.path) for index in project.in_page_order())),
+        sheet_files=tuple(dict.fromkeys(project.shown(use.file.path) for use in project.in_page_order())),
     )
 
 
@@ -249,8 +249,8 @@ class _Reader:
     def parts(self, drawn: list[DrawnNet]) -> tuple[Part, ...]:
         """Return all parts with their pins."""
         found: dict[str, list[_Unit]] = defaultdict(list)
-        for index in self.project.in_page_order():
-            for unit in self.units[index]:
+        for use in self.project.in_page_order():
+            for unit in self.units[use.index]:
                 if self._is_part(unit):
                     found[unit.instance.reference].append(unit)
         if not found:
@@ -348,7 +348,8 @@ class _Reader:
 
 def _named(names: Iterable[str]) -> str:
     found = sorted(names, key=natural_key)
-    return ", ".join(found[:_MOST_NAMED]) + (f" and {len(found) - _MOST_NAMED} more" if len(found) > _MOST_NAMED else "")
+    rest = f" and {len(found) - _MOST_NAMED} more" if len(found) > _MOST_NAMED else ""
+    return ", ".join(found[:_MOST_NAMED]) + rest
 
 
 def _first_text(texts: Iterable[str]) -> str:
