@@ -42,12 +42,12 @@ class RailNames:
         if _AUTOMATIC.match(net_name) or self.looks_like_ground(net_name):
             return None
         name = last_component(net_name)
+        if self.looks_like_signal(name):
+            return None
         for row in self.ranges:
             if any(self._pattern(text).fullmatch(name) for text in row.patterns):
                 low, nominal, high = row.get("volts")
                 return Spread(low=low, nominal=nominal, high=high), row.provenance
-        if self.looks_like_signal(name):
-            return None
         for row in self.voltages:
             for text in row.patterns:
                 found = self._pattern(text).fullmatch(name)

@@ -13,6 +13,7 @@ from levelcrossing.trade_pins import (
     level,
     level_pair,
     matches,
+    names_of,
     output_points,
     pin_pattern,
     plain_name,
@@ -71,10 +72,17 @@ def _is_about(table: Row, row: Row, text: str) -> bool:
 
 
 def _implied(items: Sequence[Mapping[str, Any]], name: str) -> str | None:
-    for item in items:
-        if pin_pattern(item["names"]).fullmatch(name):
-            return str(item["direction"])
-    return None
+    """Return the direction that a name implies; of several in one name (``SDI/SDA``) only if they agree."""
+    whole, *pieces = names_of(name)
+    found = _direction(items, whole)
+    if found is None and pieces:
+        agreed = {direction for piece in pieces if (direction := _direction(items, piece)) is not None}
+        found = agreed.pop() if len(agreed) == 1 else None
+    return found
+
+
+def _direction(items: Sequence[Mapping[str, Any]], name: str) -> str | None:
+    return next((str(item["direction"]) for item in items if pin_pattern(item["names"]).fullmatch(name)), None)
 
 
 def applies(values: Mapping[str, Any], text: str) -> bool:
@@ -131,6 +139,8 @@ def _ceiling(values: Mapping[str, Any]) -> tuple[Level | None, Level | None, boo
         return None, off, None
     tolerant = values.get("tolerant")
     moves = "V" in most.text and not pieces
+    if pieces and off is None:
+        off = levels.fixed(most.at(0.0))
     if tolerant == "always":
         return most, off or (None if moves else most), False
     if tolerant == "powered":

@@ -60,7 +60,12 @@ class Row:
             try:
                 self._data = tomllib.loads(self.text)[self.table][0]
             except (tomllib.TOMLDecodeError, KeyError, IndexError) as fault:
-                raise self.refuse(f"is not TOML: {fault}") from fault
+                found = re.search(r"line (\d+)", str(fault))
+                raise TradeDataError(
+                    f"[[{self.table}]] is not TOML: {re.sub(r' [(]at line.*', '', str(fault))}",
+                    file=self.file,
+                    line=self.line + (int(found[1]) - 1 if found else 0),
+                ) from fault
         return self._data
 
     def get(self, key: str, default: Any = None) -> Any:

@@ -92,7 +92,9 @@ def test_control_pins_belong_to_the_supply_that_sets_their_threshold(pin, book, 
     assert facts.vmax.at(1.8) == 5.5  # TI: OE accepts up to 5.5 V
     enables = [control for control in book.part(part("SN74LVC8T245")).translator.controls if control.use == "enable"]
     assert [control.active for control in enables] == ["L"]
-    directions = [control for control in book.part(part("SN74LVC8T245")).translator.controls if control.use == "direction"]
+    directions = [
+        control for control in book.part(part("SN74LVC8T245")).translator.controls if control.use == "direction"
+    ]
     assert [control.meaning for control in directions] == ["a-to-b"]
 
 

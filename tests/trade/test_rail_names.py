@@ -62,7 +62,9 @@ def test_a_battery_is_a_range_and_never_a_point(book, name):
     assert spread.high >= 4.2
 
 
-@pytest.mark.parametrize("name", ["GND", "AGND", "/sheet/GNDD", "GNDPWR", "VSS", "VSSA", "0V", "Earth", "GNDREF", "DGND_1"])
+@pytest.mark.parametrize(
+    "name", ["GND", "AGND", "/sheet/GNDD", "GNDPWR", "VSS", "VSSA", "0V", "Earth", "GNDREF", "DGND_1"]
+)
 def test_ground_by_name(book, name):
     assert book.looks_like_ground(name)
 

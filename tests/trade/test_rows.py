@@ -55,7 +55,7 @@ def test_the_good_row_is_taken(tmp_path):
         ("['KP17']", "['(KP17)?']", "matches nothing at all"),
         ("['KP17']", "[]", "pattern"),
         ("match = ['KP17']\n", "", "lacks 'match'"),
-        ("vih_volts", "vhi_volts", "did you mean 'vih_volts'"),
+        ("vih_volts", "vih_vlts", "did you mean 'vih_volts'"),
         ('group = "sensor"', 'group = "sensors"', "one of"),
         ('role = "io"', 'rolle = "io"', "unknown key 'rolle'"),
         ('id = "kiln probe"\n', "", "has no id"),
@@ -64,7 +64,9 @@ def test_the_good_row_is_taken(tmp_path):
 )
 def test_a_wrong_row_is_refused_with_its_line(tmp_path, old, new, said):
     assert old in GOOD
-    fault = refused(tmp_path, GOOD + GOOD.replace("kiln probe", "second probe").replace(old.replace("kiln", "second"), new))
+    fault = refused(
+        tmp_path, GOOD + GOOD.replace("kiln probe", "second probe").replace(old.replace("kiln", "second"), new)
+    )
     assert said in str(fault)
     assert fault.line == 13
 

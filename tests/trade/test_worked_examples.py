@@ -15,9 +15,13 @@ def test_i2c_sink_currents_and_rise_times(book):
     bus = next(bus for bus in book.buses if bus.name == "i2c")
     modes = {mode.name: mode for mode in bus.modes}
     assert bus.open_drain and bus.both_directions
-    assert [modes[name].rise_max_s for name in ("standard", "fast", "fast-plus")] == pytest.approx([1000e-9, 300e-9, 120e-9])
+    assert [modes[name].rise_max_s for name in ("standard", "fast", "fast-plus")] == pytest.approx(
+        [1000e-9, 300e-9, 120e-9]
+    )
     assert [modes[name].sink_amps for name in ("standard", "fast", "fast-plus")] == pytest.approx([3e-3, 3e-3, 20e-3])
-    assert [modes[name].load_max_farads for name in ("standard", "fast", "fast-plus")] == pytest.approx([400e-12, 400e-12, 550e-12])
+    assert [modes[name].load_max_farads for name in ("standard", "fast", "fast-plus")] == pytest.approx(
+        [400e-12, 400e-12, 550e-12]
+    )
     # pull-up limits: (VDD - VOL)/IOL and tr/(0.8473 Cb); TI SLVA689 section 4 prints 966.667 ohm and 1.77 k
     assert (3.3 - 0.4) / modes["fast"].sink_amps == pytest.approx(966.667, abs=5e-4)
     assert modes["fast"].rise_max_s / (0.8473 * 200e-12) == pytest.approx(1770, abs=5)
@@ -42,7 +46,7 @@ def test_a_txs_against_both_pull_ups(book, part, pin):
     limit = pin("TXS0102", "A1").vil.at(1.8)
     assert limit == 0.15
     assert limit / ((1.8 - limit) / pull + (3.3 - limit) / pull) == pytest.approx(312.5, abs=0.5)
-    assert 0.15 / 0.51e-3 == pytest.approx(294, abs=0.5)
+    assert pytest.approx(294, abs=0.5) == 0.15 / 0.51e-3
 
 
 def test_data_rates_of_a_direction_controlled_translator(book, part):
@@ -174,7 +178,9 @@ def test_dropout_of_a_1117(book, part):
 
 def test_schottky_and_silicon_drops(book, part):
     # BAT54 (five makers): 0.32 V at most at 1 mA; 0.4 V + 0.32 V passes a TTL low of 0.8 V, 0.4 V + 0.7 V does not
-    schottky = {amps: most for amps, _, most in book.diode(part("BAT54", "D_Schottky", "D1", pins=("1:K", "2:A"))).forward}
+    schottky = {
+        amps: most for amps, _, most in book.diode(part("BAT54", "D_Schottky", "D1", pins=("1:K", "2:A"))).forward
+    }
     assert 0.4 + schottky[1e-3] == pytest.approx(0.72)
     silicon = {amps: typical for amps, typical, _ in book.diode(part("1N4148", "D", "D1", pins=("1:K", "2:A"))).forward}
     assert 0.4 + silicon[5e-3] == pytest.approx(1.1)
