@@ -4,7 +4,8 @@ NAMED = {  # common practice of rail names; those marked with a plus are symbols
     "+3V3": 3.3, "+1V8": 1.8, "+2V5": 2.5, "+1V0": 1.0, "+1V35": 1.35, "+2V8": 2.8, "-2V5": -2.5, "-3V3": -3.3,
     "+3.3V": 3.3, "+7.5V": 7.5, "3.3V": 3.3, "1.8V": 1.8, "+0.9V": 0.9, "1.25V": 1.25,
     "+5V": 5.0, "+12V": 12.0, "+24V": 24.0, "+48V": 48.0, "5V": 5.0, "-12V": -12.0, "-5V": -5.0,
-    "+5VA": 5.0, "+5VD": 5.0, "+5VP": 5.0, "+3.3VA": 3.3, "+3.3VADC": 3.3, "+3.3VDAC": 3.3, "+12VA": 12.0, "-12VA": -12.0,
+    "+5VA": 5.0, "+5VD": 5.0, "+5VP": 5.0, "+3.3VA": 3.3, "+3.3VADC": 3.3, "+3.3VDAC": 3.3,
+    "+12VA": 12.0, "-12VA": -12.0,
     "+5F": 5.0, "+12LF": 12.0,
     "P3V3": 3.3, "P5V": 5.0, "P1V8": 1.8, "P12V": 12.0, "P3V3_AUX": 3.3, "N5V": -5.0, "N12V": -12.0,
     "V3V3": 3.3, "V33": 3.3, "V3P3": 3.3, "V5": 5.0, "V5V0": 5.0, "V1P8": 1.8, "V18": 1.8, "V_3.3": 3.3,
@@ -20,12 +21,15 @@ NAMED = {  # common practice of rail names; those marked with a plus are symbols
 }  # fmt: skip
 SIGNALS = [
     "VDD_1V8_EN", "3V3_EN", "EN_5V", "5V_ENABLE", "3V3_PG", "PG_1V2", "5V_OK", "PWRGD_3V3", "VBAT_SENSE", "VIN_MON",
-    "VBUS_DET", "5V_ADC", "VBAT_DIV", "5V_TOL", "5V_SDA", "SDA_3V3", "TX_5V", "3V3_TX", "UART_TX_1V8", "FB_3V3", "VSENSE",
+    "VBUS_DET", "5V_ADC", "VBAT_DIV", "5V_TOL", "5V_SDA", "SDA_3V3", "TX_5V", "3V3_TX", "UART_TX_1V8",
+    "FB_3V3", "VSENSE",
     "VSEL", "1V8_3V3_SEL", "3V3_5V", "D33", "A18", "P33", "IO33", "5VPG", "5V_FB", "5V_SNS", "/Supply/FAN_PWM_5V",
 ]  # fmt: skip
 NOTHING = [
-    "VCC", "VDD", "VDDA", "VAA", "VS", "VD", "VDC", "VCCQ", "VDDIO", "VIO", "VCCIO", "VPP", "HT", "VIN", "V_IN", "RAW", "VMOT",
-    "VM", "VOUT", "AVCC", "AREF", "VREF", "VTT", "V12", "VDD12", "VCC12", "Net-(U6-VDD)", "Net-(C1-+3V3)", "HV", "LV", "VIOLET",
+    "VCC", "VDD", "VDDA", "VAA", "VS", "VD", "VDC", "VCCQ", "VDDIO", "VIO", "VCCIO", "VPP", "HT", "VIN",
+    "V_IN", "RAW", "VMOT",
+    "VM", "VOUT", "AVCC", "AREF", "VREF", "VTT", "V12", "VDD12", "VCC12", "Net-(U6-VDD)", "Net-(C1-+3V3)",
+    "HV", "LV", "VIOLET",
     "unconnected-(U1-3V3-Pad2)", "GND", "AGND", "VSS", "", "/", "SDA", "RESET", "LED1", "A3", "P1.0", "2V5_REF_SEL",
 ]  # fmt: skip
 

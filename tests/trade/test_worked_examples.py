@@ -41,7 +41,7 @@ def test_a_txb_with_pull_resistors(book, part):
 
 
 def test_a_txs_against_both_pull_ups(book, part, pin):
-    # TI TXS0102-Q1: VIL 0.15 V; 10 k on both sides: at most 294 ohm between 1.8 and 3.3 V, 181 ohm at 3.3 and 5 V (computed)
+    # TI TXS0102-Q1: VIL 0.15 V against 10 k on both sides: about 300 ohm between 1.8 and 3.3 V (computed)
     pull = book.part(part("TXS0102")).translator.pull_up_ohms
     limit = pin("TXS0102", "A1").vil.at(1.8)
     assert limit == 0.15
