@@ -356,3 +356,27 @@ def switch(
         "cds_farads": farads,
     }
     return Branch(kind="mosfet", label=label, nodes=(a, gate, b), values=values)
+
+
+# Voltages of the gate node of a gated path: on, off [V]. On is so high that the path's resistance hardly depends on its
+# own voltages (0.5 % at 5 V).
+GATE_ON_VOLTS, GATE_OFF_VOLTS = 1000.0, -50.0
+
+
+def gated(label: str, a: str, b: str, ohms: Value) -> Branch:
+    """Return a path of ``ohms`` [ohm] that a fixed node opens and closes, e.g. the output of an open-drain driver.
+
+    Its gate node is :func:`gate_of` of the label: hold it at ``GATE_ON_VOLTS`` or ``GATE_OFF_VOLTS``; a ramp between
+    them is a linear ramp of the conductance.
+    """
+    values: dict[str, Value] = {
+        "polarity": 1.0,
+        "threshold_volts": 0.0,
+        "gain": 1.0 / (GATE_ON_VOLTS * ohms),
+    }
+    return Branch(kind="mosfet", label=label, nodes=(a, gate_of(label), b), values=values)
+
+
+def gate_of(label: str) -> str:
+    """Return the name of the gate node of a :func:`gated` path."""
+    return f"gate of {label}"

@@ -166,6 +166,28 @@ class Network:
         """Return the network with other (or more) fixed voltages [V]."""
         return Network(branches=self.branches, fixed={**self.fixed, **volts})
 
+    def taking(self, members: npt.NDArray[np.intp]) -> Network:
+        """Return a network whose batch is made of some members, in the order given, repeats allowed."""
+
+        def pick(value: Value) -> Value:
+            return np.ravel(value)[members] if np.size(value) > 1 else float(np.ravel(value)[0])
+
+        fixed = {node: pick(volts) for node, volts in self.fixed.items()}
+        # Ground carries the size of the batch, should nothing else differ between the members.
+        fixed[GROUND] = np.broadcast_to(fixed[GROUND], members.shape).copy()
+        return Network(
+            branches=tuple(
+                Branch(
+                    kind=branch.kind,
+                    label=branch.label,
+                    nodes=branch.nodes,
+                    values={name: pick(value) for name, value in branch.values.items()},
+                )
+                for branch in self.branches
+            ),
+            fixed=fixed,
+        )
+
     def member(self, index: int) -> Network:
         """Return one member of the batch as a network of batch 1."""
 

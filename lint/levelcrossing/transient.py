@@ -17,12 +17,19 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from levelcrossing.arrays import Arrays, Flags, Index, lay_out
-from levelcrossing.network import Network, Value, Vector, stack
+from levelcrossing.arrays import Arrays, Flags, Index
+from levelcrossing.network import Network, Value, Vector
 from levelcrossing.solve import DcSolution, solve_dc, solve_linear
 
 # Error allowed in one step [V]; at a third of it edges and delays move by less than 0.2 %.
 STEP_ERROR_VOLTS = 1e-3
+# The error allowed in a junction's charge: its fraction is the allowed volts over the first figure [V], its floor what
+# they put onto the second [F].
+_CHARGE_VOLTS, _CHARGE_FARADS = 0.15, 10e-12
+# The first step after a corner is this part of the edge.
+_FIRST_PART = 50.0
+# A watched node moves by no more than this part of its swing per step, or this much [V].
+_STRIDE_PART, _STRIDE_VOLTS = 0.12, 5e-3
 # Newton's last correction within a step may be this large [V]: what remains is its square over the thermal voltage.
 _NEWTON_VOLTS = 2e-4
 _NEWTON_ITERATIONS = 9
@@ -31,13 +38,11 @@ _MOST_SWEEPS = 6000
 _SETTLED_PART, _SETTLED_VOLTS = 0.005, 2e-3
 # Length of a driver's edge unless stated [s]: what a 3.3 V CMOS output does into a light load (assumption).
 EDGE_S = 1e-9
-# From this part of each bit on, the received level must be valid.
-VALID_FROM = 0.75
 # Resistance beyond which a node does not set the pace of a circuit [ohm].
 _PACE_OHMS = 1e7
 
 
-# ------------------------------------------------------------------------------------------------------------- the march
+# ------------------------------------------------------------------------------------------------------------ the march
 
 
 @dataclass(slots=True, eq=False)
@@ -122,6 +127,7 @@ def _march(
     watch: Sequence[int],
     *,
     first_s: Vector,
+    stride: Vector,
     goal: Vector | None = None,
     reach: Vector | None = None,
     error_volts: float = STEP_ERROR_VOLTS,
@@ -141,6 +147,8 @@ def _march(
         Rows of nodes to record.
     first_s : ndarray, shape (batch,)
         First step after each corner [s].
+    stride : ndarray, shape (watched, batch)
+        How far a watched node may move in one step [V], so that its edges can be read between points.
     goal, reach : ndarray, shape (unknown, batch), optional
         A member stops in its last segment once every unknown is within ``reach`` of ``goal`` [V].
     error_volts : float
@@ -159,7 +167,7 @@ def _march(
     segment = np.zeros(batch, dtype=np.intp)
     known = np.ones(batch, dtype=np.intp)
     last = len(breaks) - 1
-    v0, v1, v2 = start.copy(), start[:n].copy(), start[:n].copy()
+    v0 = start.copy()
     t1, t2 = time - 1.0, time - 2.0
     # stored charge and its current, settled: no current flows into it
     n_caps = dyn.cap_f.shape[0] if dyn.arrays.cap_p.size else 0
@@ -169,10 +177,15 @@ def _march(
     if dyn.charged.size:
         charge[n_caps:] = dyn.transit * dyn.arrays.junctions(dyn.arrays.junction_volts(v0))[0][dyn.charged]
     flow = np.zeros((ports, batch))
+    # What the error is judged on: unknown voltages and the charges of junctions, which hardly show in voltages.
+    state = np.concatenate([v0[:n], charge[n_caps:]])
+    state1, state2 = state.copy(), state.copy()
 
     record_t, record_v = [time.copy()], [start[list(watch)]]
     record_ok, record_corner = [np.ones(batch, dtype=bool)], [np.ones(batch, dtype=bool)]
     columns = np.arange(batch)
+    rows = [row for row in watch if row < n]
+    charge_part, charge_floor = error_volts / _CHARGE_VOLTS, error_volts * _CHARGE_FARADS
 
     for _ in range(_MOST_SWEEPS):
         end = breaks[segment + 1, columns]
@@ -188,11 +201,11 @@ def _march(
         # prediction by divided differences over the points since the corner
         third, second = known >= 3, known >= 2
         h1 = now - t1
-        slope = (v0[:n] - v1) / (time - t1)
-        bend = np.where(third, (slope - (v1 - v2) / (t1 - t2)) / (time - t2), 0.0)
-        guess = v0[:n] + np.where(second, step, 0.0) * (slope + h1 * bend)
+        slope = (state - state1) / (time - t1)
+        bend = np.where(third, (slope - (state1 - state2) / (t1 - t2)) / (time - t2), 0.0)
+        guess = state + np.where(second, step, 0.0) * (slope + h1 * bend)
         v = np.empty_like(v0)
-        v[:n] = guess
+        v[:n] = guess[:n]
         v[n:] = low + share * (high - low)
 
         rate = np.where(third, 2.0, 1.0) / step
@@ -200,9 +213,12 @@ def _march(
         v, stored, settled = _solve_step(dyn, v, v0, rate, past, n_caps)
 
         # local error: trapezoidal -h³/12 v''', backward Euler h²/2 v'', from the miss of the prediction
-        miss = np.abs(v[:n] - guess).max(axis=0, initial=0.0)
+        reached = np.concatenate([v[:n], stored[n_caps:]])
+        miss = np.abs(reached - guess)
+        miss[:n] /= error_volts
+        miss[n:] /= charge_part * np.abs(reached[n:]) + charge_floor
         scale = np.where(third, 0.5 * step * step / (h1 * (now - t2)), np.where(second, step / h1, 0.0))
-        error = np.where(settled, miss * scale / error_volts, np.inf)
+        error = np.where(settled, miss.max(axis=0, initial=0.0) * scale, np.inf)
         grown = np.where(third, np.cbrt(1.0 / np.maximum(error, 1e-12)), np.sqrt(1.0 / np.maximum(error, 1e-12)))
         accepted = error <= 1.3
         factor = np.where(settled, np.clip(0.9 * grown, 0.2, 2.5), 0.15)
@@ -210,13 +226,16 @@ def _march(
         landed = accepted & lands
         flow = np.where(accepted, rate * stored - past, flow)
         charge = np.where(accepted, stored, charge)
-        v2, v1 = np.where(accepted, v1, v2), np.where(accepted, v0[:n], v1)
+        state2, state1 = np.where(accepted, state1, state2), np.where(accepted, state, state1)
+        state = np.where(accepted, reached, state)
         t2, t1 = np.where(accepted, t1, t2), np.where(accepted, time, t1)
         v0 = np.where(accepted, v, v0)
         time = np.where(accepted, now, time)
         known = np.where(landed, 1, np.where(accepted, np.minimum(known + 1, 3), known))
         segment = segment + landed
-        dt = np.where(landed, first_s, step * factor)
+        pace = (np.abs(state[rows] - state1[rows]) / stride).max(axis=0, initial=0.0)
+        steady = (time - t1) / np.maximum(pace, 1e-9)
+        dt = np.where(landed, first_s, np.where(accepted, np.minimum(step * factor, steady), step * factor))
 
         whole_t, whole_v = np.zeros(batch), np.zeros((len(watch), batch))
         whole_ok, whole_corner = np.zeros(batch, dtype=bool), np.zeros(batch, dtype=bool)
@@ -241,10 +260,10 @@ def _march(
             keep = np.flatnonzero(~stop)
             live, time, dt, segment, known = live[keep], time[keep], dt[keep], segment[keep], known[keep]
             t1, t2, first_s = t1[keep], t2[keep], first_s[keep]
-            v0, v1, v2 = v0[:, keep], v1[:, keep], v2[:, keep]
+            v0, state, state1, state2 = v0[:, keep], state[:, keep], state1[:, keep], state2[:, keep]
             charge, flow = charge[:, keep], flow[:, keep]
             breaks, levels = breaks[:, keep], levels[:, :, keep]
-            columns = np.arange(keep.size)
+            columns, stride = np.arange(keep.size), stride[:, keep]
             dyn = dyn.taken(keep)
     return _packed(record_t, record_v, record_ok, record_corner, complete)
 
@@ -282,20 +301,17 @@ def _solve_step(
                 wished = arrays.junction_volts(v)
                 after = arrays.limit(wished, limited)
                 settled &= np.abs(wished - limited).max(axis=0) < 10 * _NEWTON_VOLTS
-                miss = wished - limited
                 limited = after
             if settled.all():
                 break
     # What was stored is linear in the last correction; that keeps charge exactly conserved from step to step.
     stored[:n_caps] = dyn.cap_f[:n_caps] * (v[arrays.cap_p] - v[arrays.cap_q])
     if charge_rate is not None:
-        moved = -(arrays_change(arrays, change))
-        stored[n_caps:] += dyn.transit * siemens[dyn.charged] * moved[dyn.charged]
-    _ = miss if arrays.jun_a.size else None
+        stored[n_caps:] -= dyn.transit * siemens[dyn.charged] * _across(arrays, change)[dyn.charged]
     return v, stored, settled
 
 
-def arrays_change(arrays: Arrays, change: Vector) -> Vector:
+def _across(arrays: Arrays, change: Vector) -> Vector:
     """Return how a change of the unknown nodes [V] changes the junctions' voltages [V]."""
     whole = np.zeros((len(arrays.names), change.shape[1]))
     whole[: arrays.unknown] = change
@@ -458,15 +474,14 @@ class StepResponse:
         return volts.min(axis=0), volts.max(axis=0)
 
 
-def _stage(network: Network, arrays: Arrays, moved: Mapping[str, Value]) -> Vector:
+def stage(network: Network, arrays: Arrays, moved: Mapping[str, Value]) -> Vector:
     """Return fixed voltages [V], shape ``(fixed, batch)``, some of them moved."""
     held = {**network.fixed, **moved}
-    return np.array(
-        [np.broadcast_to(np.asarray(held[name], dtype=float), (network.batch,)) for name in arrays.names[arrays.unknown :]]
-    )
+    names = arrays.names[arrays.unknown :]
+    return np.array([np.broadcast_to(np.asarray(held[name], dtype=float), (network.batch,)) for name in names])
 
 
-def _pace_s(network: Network, *states: DcSolution) -> Vector:
+def pace_s(network: Network, *states: DcSolution) -> Vector:
     """Return an upper estimate of a circuit's slowest time constant [s], shape (batch,).
 
     Sum over nodes of resistance times the capacitance on it (the open-circuit time constants), at the slower of the
@@ -482,7 +497,8 @@ def _pace_s(network: Network, *states: DcSolution) -> Vector:
         ohms = np.minimum(np.broadcast_to(state._ohms, (arrays.unknown, network.batch)), _PACE_OHMS)
         slowest = np.maximum(slowest, (ohms * load[: arrays.unknown]).sum(axis=0))
     storage = np.broadcast_to(arrays.jun_tt, (arrays.jun_tt.shape[0], network.batch)).sum(axis=0)
-    return slowest + 10.0 * storage
+    total: Vector = slowest + 10.0 * storage
+    return total
 
 
 def step_response(
@@ -522,31 +538,80 @@ def step_response(
     final = solve_dc(network.holding(after), start)
     arrays, batch = first._arrays, network.batch
     n = arrays.unknown
-    span = np.full(batch, until_s) if until_s is not None else edge_s + 40.0 * np.maximum(_pace_s(network, first, final), edge_s)
+    if until_s is not None:
+        span = np.full(batch, until_s)
+    else:
+        span = edge_s + 40.0 * np.maximum(pace_s(network, first, final), edge_s)
     breaks = np.stack([np.zeros(batch), np.full(batch, edge_s), np.maximum(span, 1.01 * edge_s)])
-    low, high = _stage(network, arrays, before), _stage(network, arrays, after)
+    low, high = stage(network, arrays, before), stage(network, arrays, after)
     goal = final._state[:n]
     swing = np.abs(goal - first._state[:n])
     reach = np.maximum(_SETTLED_PART * swing, _SETTLED_VOLTS)
     # A node that hangs on leakage never arrives; nothing waits for it.
     reach[final._ohms > _PACE_OHMS * 10] = np.inf
-    rows = [arrays.names.index(node) for node in watch]
-    times, volts, corners, count, complete = _march(
-        _dynamics(arrays),
-        first._state,
+    waves = follow(
+        first,
         breaks,
         np.stack([low, high, high]),
-        rows,
-        first_s=np.full(batch, edge_s / 10.0),
+        watch,
+        swing=swing,
+        first_s=np.full(batch, edge_s / _FIRST_PART),
         goal=goal,
         reach=reach,
         error_volts=error_volts,
     )
-    waves = Waves(
+    return StepResponse(before=first, after=final, waves=waves, solved=first.solved & final.solved & waves.complete)
+
+
+def follow(
+    start: DcSolution,
+    breaks: Vector,
+    levels: Vector,
+    watch: Sequence[str],
+    *,
+    swing: Vector,
+    first_s: Vector,
+    goal: Vector | None = None,
+    reach: Vector | None = None,
+    error_volts: float = STEP_ERROR_VOLTS,
+) -> Waves:
+    """Follow a circuit from an operating point through piecewise linear waveforms of its fixed nodes.
+
+    Parameters
+    ----------
+    start : DcSolution
+    breaks : ndarray, shape (corners, batch)
+        Times of the waveforms' corners, first to last [s].
+    levels : ndarray, shape (corners, fixed, batch)
+        Fixed voltages there [V], in the order of the sorted names of fixed nodes.
+    watch : sequence of str
+    swing : ndarray, shape (unknown, batch)
+        How far each unknown node is expected to move [V].
+    first_s : ndarray, shape (batch,)
+        First step after each corner [s].
+    goal, reach : ndarray, shape (unknown, batch), optional
+        A member ends early once every unknown is this close to its goal [V].
+    error_volts : float
+        Local error allowed per step [V].
+    """
+    arrays = start._arrays
+    rows = [arrays.names.index(node) for node in watch]
+    times, volts, corners, count, complete = _march(
+        _dynamics(arrays),
+        start._state,
+        breaks,
+        levels,
+        rows,
+        first_s=first_s,
+        stride=np.maximum(_STRIDE_PART * swing[[row for row in rows if row < arrays.unknown]], _STRIDE_VOLTS),
+        goal=goal,
+        reach=reach,
+        error_volts=error_volts,
+    )
+    return Waves(
         times=times,
         volts={node: volts[k] for k, node in enumerate(watch)},
         corners=corners,
         count=count,
         complete=complete,
     )
-    return StepResponse(before=first, after=final, waves=waves, solved=first.solved & final.solved & complete)
