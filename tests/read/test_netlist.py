@@ -134,7 +134,7 @@ def test_old_form_part_without_a_symbol_has_the_pins_of_its_nets(old):
 def test_old_form_says_what_it_lacks(old):
     assert old.remarks == (
         "1 part (X-1) without a symbol in the file: only the pins that the nets name are known",
-        "the pin type 'wired' (1 times) is unknown and was taken as no type",
+        "the pin type 'wired' of 1 pin is unknown and was taken as no type",
     )
 
 

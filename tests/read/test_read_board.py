@@ -213,7 +213,7 @@ def test_a_netlist_cut_anywhere_names_a_line_of_the_file(share, tmp_path):
     assert "is cut off" in text or "ends within a quoted text" in text
 
 
-# ------------------------------------------------------------------------------------------------ what is no file at all
+# ----------------------------------------------------------------------------------------------- what is no file at all
 
 
 def test_a_missing_file(tmp_path):

@@ -15,11 +15,14 @@ from levelcrossing.errors import InputError
 Tree: TypeAlias = "list[str | Tree]"
 
 DEEPEST = 100  # KiCad's own netlists nest eight deep
-MOST_TOKENS = 6_000_000  # bounds memory to about half a gigabyte; the largest real netlist seen has 1.5 million
+MOST_TOKENS = 6_000_000  # keeps memory below a gigabyte; the largest real netlist seen has 1.5 million
 
 # A quoted text may hold escaped quotes and line ends; an unquoted token ends at white space or a bracket only. White
-# space is what KiCad takes for it: a no-break space belongs to its token.
-_TOKEN = re.compile(r'[ \t\r\n]*(?:(\()|(\))|"([^"\\]*(?:\\.[^"\\]*)*)"|([^ \t\r\n()"][^ \t\r\n()]*)|(.))', re.DOTALL)
+# space is what KiCad takes for it: a no-break space belongs to its token. The repetitions give nothing back, so that an
+# unfinished text of a hundred megabytes costs no more time and memory than a finished one.
+_TOKEN = re.compile(
+    r'[ \t\r\n]*(?:(\()|(\))|"([^"\\]*+(?:\\.[^"\\]*+)*+)"|([^ \t\r\n()"][^ \t\r\n()]*)|(.))', re.DOTALL
+)
 _ESCAPED = re.compile(r"\\(.)", re.DOTALL)
 _GOES_ON = "goes on after the bracket that ends the netlist"
 _ESCAPES = {"n": "\n", "r": "\r", "t": "\t"}

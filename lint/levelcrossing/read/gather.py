@@ -98,7 +98,9 @@ def gather(tree: Tree, file: str, form: str, remarks: tuple[str, ...] = ()) -> B
             f"{_named(got.symbolless, 'part')} without a symbol in the file: only the pins that the nets name are known"
         )
     for kind, count in sorted(got.strange_kinds.items()):
-        got.remarks.append(f"the pin type {kind!r} ({count} times) is unknown and was taken as no type")
+        got.remarks.append(
+            f"the pin type {kind!r} of {count} pin{'s' if count > 1 else ''} is unknown and was taken as no type"
+        )
     design = child(tree, "design")
     sheets = [text_of(child(sheet, "title_block"), "source") for sheet in children(design, "sheet")]
     sheets = sheets or [text_of(design, "source")]
