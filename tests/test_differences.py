@@ -180,3 +180,21 @@ def test_coverage_and_rails() -> None:
     assert comparison.rails == ("+5V: 5 V (4.75 to 5.25 V) -> voltage unknown", "V: new rail, 1 V")
     assert "U2.3 (no data)" in comparison.coverage[0]
     assert compare_sides(new, replace(new, label="again")).empty
+
+
+def test_one_cause_at_several_places_is_one_finding_whichever_stands_first() -> None:
+    floating = {"rule": "input-floating", "outcome": "marginal", "crossing": None, "fingerprint": ""}
+    old = side("old", findings=[finding(part="U1", pin="3", also=["U2.4", "U2.5"], **floating)])
+    new = side("new", findings=[finding(part="U2", pin="5", also=["U1.3", "U2.4"], **floating)])
+    assert compare_sides(old, new).empty
+    wider = side("new", findings=[finding(part="U2", pin="5", also=["U1.3", "U2.4", "U9.1"], **floating)])
+    comparison = compare_sides(old, wider, stop_at=Outcome.MARGINAL)
+    assert kinds(comparison) == [("worse", True)]
+    assert comparison.changes[0].notes == ("now also at U9.1",)
+    assert compare_sides(wider, old).empty
+    overlapping = side("new", findings=[finding(part="U9", pin="1", also=["U2.4"], **floating)])
+    assert kinds(compare_sides(old, overlapping)) == [("worse", False)]
+    assert kinds(compare_sides(old, side("new", findings=[finding(part="U9", pin="1", **floating)]))) == [
+        ("added", False),
+        ("removed", False),
+    ]

@@ -90,7 +90,7 @@ def test_a_faulty_board_fails_on_the_right_line_and_passes_with_a_waiver(reposit
     waive = ("waive", "gauge/gauge.kicad_sch", "--rule", "input-overvoltage", "--at", "U2.2")
     _run(repository, sys.executable, "-m", "levelcrossing", *waive, "--reason", "this gate is 5 V tolerant")
     again = _hook(repository, "gauge/echo.kicad_sch", "gauge/levelcrossing.toml")
-    assert "input-overvoltage" not in re.sub(r".*(accepted|waive).*", "", again.stdout)
+    assert again.returncode == 0, again.stdout + again.stderr
 
 
 def test_each_board_is_reviewed_once(repository: Path) -> None:

@@ -203,6 +203,7 @@ def _fault(content: Any) -> str:
             _texts(finding, ("rule", "text", "part", "pin", "net", "waived"))
             optional = {"fingerprint": "", "condition": "", "remedy": ""}
             _texts(optional | finding, tuple(optional))
+            _lists_text(finding.get("also", []))
             Outcome(finding["outcome"])
         for rail in content["rails"]:
             _texts(rail, ("net",))

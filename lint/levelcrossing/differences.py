@@ -6,19 +6,13 @@ themselves are at hand, parts and nets are matched by what they are, and renumbe
 
 from __future__ import annotations
 
-import math
 from collections.abc import Hashable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, fields
 from typing import Any
 
+from levelcrossing.figures import VOLTS_THAT_MATTER, Figure, differs, figures_of, worst_margin
 from levelcrossing.matching import match_nets, match_parts, match_rows
 from levelcrossing.model import Board, Outcome, PinSetting, Settings, Spread, Waiver
-
-VOLTS_THAT_MATTER = 0.002
-"""Voltages closer than this count as equal: the order of equal parts may move a solution by rounding only."""
-
-SHARE_THAT_MATTERS = 0.005
-"""The same for rates and currents, as a fraction."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -40,18 +34,6 @@ class Side:
     form: Mapping[str, Any]
     board: Board | None = None
     settings: Settings | None = None
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Figure:
-    """A figure before and after; ``unit`` is ``V``, ``A`` or ``bit/s``; ``limit`` is what it is held against after."""
-
-    name: str
-    before: float | None
-    after: float | None
-    unit: str
-    limit: float | None = None
-    limit_word: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -172,6 +154,7 @@ class _Comparing:
         self.new_findings: Sequence[Mapping[str, Any]] = new.form["findings"]
         self.row_pairs = match_rows(self.old_rows, self.new_rows, self._row_passes())
         self.finding_pairs = match_rows(self.old_findings, self.new_findings, self._finding_passes())
+        self._pair_overlapping()
         self.old_of_finding = {after: before for before, after in self.finding_pairs}
         self.by_new_waiver = {index for index in range(len(self.new_findings)) if self._newly_waived(index)}
 
@@ -219,12 +202,15 @@ class _Comparing:
         of_row = dict(self.row_pairs)
 
         def place(finding: Mapping[str, Any], by: _Names) -> tuple[Hashable, ...]:
-            net = None if finding["part"] else by.net(finding["net"])
-            return finding["rule"], by.part(finding["part"]), finding["pin"], net
+            # Which of several places of one cause stands first goes by their numbers.
+            return finding["rule"], frozenset(_places(finding, by))
 
         def row(finding: Mapping[str, Any], by: _Names) -> Hashable:
             index = finding.get("crossing")
             return index if by is same or index is None else of_row.get(index, "gone")
+
+        def head(finding: Mapping[str, Any], by: _Names) -> Hashable:
+            return finding["rule"], next(iter(_places(finding, by)))
 
         def mark(finding: Mapping[str, Any], by: _Names) -> Hashable | None:
             return (finding["rule"], finding["fingerprint"]) if finding.get("fingerprint") else None
@@ -234,13 +220,32 @@ class _Comparing:
 
         keys = [
             (lambda finding, by: (place(finding, by), row(finding, by)), False),
-            (lambda finding, by: place(finding, by), False),
+            (place, False),
             (mark, False),
+            (head, False),
             (rule_and_row, True),
         ]
         return [
             (lambda one, key=key: key(one, names), lambda one, key=key: key(one, same), alone) for key, alone in keys
         ]
+
+    def _pair_overlapping(self) -> None:
+        """Pair the findings left over that share a place: one cause may have gained or lost some of its places."""
+        left = {before for before, _ in self.finding_pairs}
+        right = {after for _, after in self.finding_pairs}
+        by_place: dict[tuple[str, str], int] = {}
+        for index, finding in enumerate(self.new_findings):
+            if index not in right:
+                for place in _places(finding, _Names()):
+                    by_place.setdefault((finding["rule"], place), index)
+        for before, finding in enumerate(self.old_findings):
+            if before in left:
+                continue
+            hits = [by_place.get((finding["rule"], place)) for place in _places(finding, self.names)]
+            after = next((hit for hit in hits if hit is not None and hit not in right), None)
+            if after is not None:
+                right.add(after)
+                self.finding_pairs.append((before, after))
 
     # -- waivers -----------------------------------------------------------------------------------------------------
 
@@ -307,7 +312,7 @@ class _Comparing:
                         title=crossing_title(row),
                         before=None,
                         after=row["verdict"],
-                        figures=tuple(_figures(None, row)),
+                        figures=tuple(figures_of(None, row)),
                         findings=self._findings(row),
                         counts=self._counts(row),
                     ),
@@ -327,14 +332,14 @@ class _Comparing:
         return any(self._stops(self.new_findings[index]["outcome"]) and not self._silenced(index) for index in indices)
 
     def _pair(self, before: Mapping[str, Any], after: Mapping[str, Any]) -> Change | None:
-        moved = tuple(one for one in _figures(before, after) if _differs(one.before, one.after, one.unit))
+        moved = tuple(one for one in figures_of(before, after) if differs(one.before, one.after, one.unit))
         old_verdict, new_verdict = before["verdict"], after["verdict"]
         kind = _kind(old_verdict, new_verdict)
         notes = []
         if kind == "same":
             if not moved or _hidden(before):
                 return None
-            fell = _worst_margin(after) - _worst_margin(before)
+            fell = worst_margin(after) - worst_margin(before)
             kind = "moved"
             if old_verdict not in ("sound", "unknown") and abs(fell) > VOLTS_THAT_MATTER:
                 kind = "worse" if fell < 0 else "better"
@@ -362,18 +367,20 @@ class _Comparing:
             if index in told:
                 continue
             kind, before = "added", None
+            notes: tuple[str, ...] = ()
             if index in paired_new:
                 old = self.old_findings[self.old_of_finding[index]]
                 before = old["outcome"]
                 kind = _kind(before, finding["outcome"])
                 freed = old.get("waived") is not None and finding.get("waived") is None
-                if freed:
-                    kind = "worse"
-                if kind == "same":
+                known = set(_places(old, self.names))
+                fresh = [place for place in _places(finding, _Names()) if place not in known]
+                if kind == "same" and not freed and not (fresh and finding.get("also")):
                     continue
+                if kind in ("same", "better") and (freed or fresh):
+                    kind = "worse"
                 notes = ("the waiver that accepted it is gone",) if freed else ()
-            else:
-                notes = ()
+                notes += (f"now also at {_listed(fresh, 8)}",) if fresh else ()
             yield Change(
                 kind=kind,
                 title=f"{finding['rule']} at {finding_place(finding)}",
@@ -426,7 +433,7 @@ class _Comparing:
             was = before.get(net)
             if was is None:
                 yield f"{net}: new rail, {_rail_volts(rail)}"
-            elif any(_differs(was[key], rail[key], "V") for key in ("low", "nominal", "high")):
+            elif any(differs(was[key], rail[key], "V") for key in ("low", "nominal", "high")):
                 yield f"{net}: {_rail_volts(was)} -> {_rail_volts(rail)}"
         for name, rail in sorted(before.items(), key=lambda item: item[1]["net"]):
             if name not in after:
@@ -462,6 +469,14 @@ def _end(end: Mapping[str, Any]) -> str:
     return shown + (f" on {rail}" if rail else "")
 
 
+def _places(finding: Mapping[str, Any], names: _Names) -> list[str]:
+    """Return all places of a finding as they are called in the new revision, the one it is told at first."""
+    if not finding["part"]:
+        return [f"net {names.net(finding['net'])}"]
+    head = f"{names.part(finding['part'])}" + (f".{finding['pin']}" if finding["pin"] else "")
+    return [head, *(names.place(place) for place in finding.get("also", ()))]
+
+
 def finding_place(finding: Mapping[str, Any]) -> str:
     """Return the narrowest place of a finding in the JSON form."""
     if finding["part"]:
@@ -494,60 +509,6 @@ def _kind(before: str, after: str) -> str:
 
 def _rank(change: Change) -> int:
     return Outcome(change.after or change.before or "sound").rank
-
-
-def _at(row: Mapping[str, Any] | None, *keys: str) -> float | None:
-    value: Any = row
-    for key in keys:
-        value = value.get(key) if isinstance(value, Mapping) else None
-    return float(value) if isinstance(value, int | float) and not isinstance(value, bool) else None
-
-
-def _most(row: Mapping[str, Any] | None, what: str) -> float | None:
-    """Return the greatest of a spread over all states."""
-    states = (row or {}).get("states") or {}
-    found = [_at(state, what, "max") for state in states.values() if state.get("solved", True)]
-    known = [value for value in found if value is not None]
-    return max(known) if known else None
-
-
-def _limit(row: Mapping[str, Any] | None, name: str, end: str) -> float | None:
-    worst = _at(row, "levels", f"{name}_range", end)
-    return worst if worst is not None else _at(row, "levels", name)
-
-
-def _measures(row: Mapping[str, Any] | None) -> Iterator[tuple[str, float | None, str, float | None, str]]:
-    highest = _most(row, "open_volts")
-    yield "high level, least", _at(row, "levels", "high", "min"), "V", _limit(row, "vih", "max"), "must reach"
-    yield "low level, greatest", _at(row, "levels", "low", "max"), "V", _limit(row, "vil", "min"), "must not exceed"
-    top = highest if highest is not None else _at(row, "levels", "high", "max")
-    yield "voltage, greatest", top, "V", _limit(row, "vmax", "min"), "rated for"
-    yield "clamp current, greatest", _most(row, "clamp_amps"), "A", None, ""
-    yield "usable rate", _at(row, "speed", "usable_bit_s"), "bit/s", _at(row, "speed", "needed_bit_s"), "needs"
-
-
-def _figures(before: Mapping[str, Any] | None, after: Mapping[str, Any]) -> Iterator[Figure]:
-    for (name, was, unit, _, _), (_, now, _, limit, word) in zip(_measures(before), _measures(after), strict=True):
-        if was is not None or now is not None:
-            yield Figure(name=name, before=was, after=now, unit=unit, limit=limit, limit_word=word)
-
-
-def _differs(before: float | None, after: float | None, unit: str) -> bool:
-    if before is None or after is None:
-        return before is not after
-    if unit == "V":
-        return abs(after - before) > VOLTS_THAT_MATTER
-    if unit == "A" and abs(after - before) < 1e-6:
-        return False
-    return abs(after - before) > SHARE_THAT_MATTERS * max(abs(before), abs(after))
-
-
-def _worst_margin(row: Mapping[str, Any]) -> float:
-    margins = []
-    for name, value, unit, limit, _ in _measures(row):
-        if value is not None and limit is not None and unit == "V":
-            margins.append(value - limit if name.startswith("high") else limit - value)
-    return min(margins, default=math.inf) if margins else 0.0
 
 
 def _rail_volts(rail: Mapping[str, Any]) -> str:

@@ -23,7 +23,7 @@ FORM = "1"
 """First part of every fingerprint; another number means that the way of computing it has changed."""
 
 _ROUNDS = 4
-_MOST_NETS = 60
+_MOST_NETS = 300
 _THROUGH = ("R", "C", "L", "D", "Q", "T", "FB", "F", "JP", "NT")
 """Reference letters of parts through which a circuit goes on to its next net."""
 
@@ -69,9 +69,13 @@ class _Fingerprints:
                 self._on_net.setdefault(net, []).append(part.reference)
 
     def of(self, finding: Finding) -> str:
-        """Return the fingerprint of one finding."""
-        solved = self._crossing(finding)
-        nets = self._circuit(self._seeds(finding, solved))
+        """Return the fingerprint of one finding.
+
+        Which of the places of one cause stands first goes by their numbers, so that all of them are taken alike.
+        """
+        places = sorted({(finding.part, finding.pin), *(_place(text) for text in finding.also)})
+        crossings = self._crossings_of(finding, set(places))
+        nets = self._circuit(self._seeds(finding, places, crossings))
         parts = sorted({reference for net in nets for reference in self._on_net.get(net, ())})
         marks = {reference: self._beyond(self._parts[reference], nets) for reference in parts}
         labels = graph_labels(
@@ -82,35 +86,54 @@ class _Fingerprints:
             known = self._parts.get(part)
             return labels.get(("part", part), part_label(known) if known else part), number
 
-        ends: tuple[object, ...] = ()
-        if solved is not None:
-            crossing = solved.crossing
+        def ends(crossing: Crossing) -> tuple[object, ...]:
             driver = crossing.driver
-            ends = (
-                pin(driver.part, driver.number) if driver else None,
+            return (
+                pin(driver.part, driver.number) if driver else (),
                 pin(crossing.receiver.part, crossing.receiver.number),
                 rail_label(self._rails, crossing.driver_rail),
                 rail_label(self._rails, crossing.receiver_rail),
             )
+
         return f"{FORM}:" + digest(
             finding.rule,
-            pin(finding.part, finding.pin) if finding.part else None,
-            self._net_label(finding.net, labels),
-            sorted(pin(*place.partition(".")[::2]) for place in finding.also),
-            ends,
+            sorted(pin(part, number) for part, number in places if part),
+            sorted({self._net_label(net, labels) for net in self._nets_at(finding, places)}),
+            sorted({ends(solved.crossing) for solved in crossings}),
             sorted(labels.values()),
         )
+
+    def _crossings_of(self, finding: Finding, places: set[tuple[str, str]]) -> list[SolvedCrossing]:
+        """Return the crossing of a finding; with several places, all crossings of its circuit that end there."""
+        head = self._crossing(finding)
+        if head is None or not finding.also:
+            return [head] if head is not None else []
+        return [
+            solved
+            for solved in self._crossings
+            if solved.crossing.island == head.crossing.island
+            and (solved.crossing.receiver.part, solved.crossing.receiver.number) in places
+        ]
+
+    def _nets_at(self, finding: Finding, places: list[tuple[str, str]]) -> set[str]:
+        at_pins = {
+            pin.net
+            for part, number in places
+            if part in self._parts
+            for pin in self._parts[part].pins
+            if pin.number == number
+        }
+        return at_pins if finding.also and at_pins else {finding.net}
 
     def _crossing(self, finding: Finding) -> SolvedCrossing | None:
         index = finding.crossing
         return self._crossings[index] if index is not None and 0 <= index < len(self._crossings) else None
 
-    def _seeds(self, finding: Finding, solved: SolvedCrossing | None) -> Iterator[str]:
+    def _seeds(self, finding: Finding, places: list[tuple[str, str]], crossings: list[SolvedCrossing]) -> Iterator[str]:
         yield finding.net
-        if finding.pin and (part := self._parts.get(finding.part)):
-            yield from (pin.net for pin in part.pins if pin.number == finding.pin)
-        if solved is not None:
-            crossing: Crossing = solved.crossing
+        yield from self._nets_at(finding, places)
+        for solved in crossings:
+            crossing = solved.crossing
             yield from (pin.net for pin in (crossing.driver, crossing.receiver, crossing.stage_driver) if pin)
             for element in solved.elements:
                 if element.part in crossing.link:
@@ -118,13 +141,16 @@ class _Fingerprints:
 
     def _circuit(self, seeds: Iterable[str]) -> set[str]:
         """Return the nets reached from some through small parts without passing a rail."""
+        first = {net for net in seeds if net in self._on_net and net not in self._rails.by_net}
         nets: set[str] = set()
-        waiting = sorted(set(seeds), reverse=True)
-        while waiting and len(nets) < _MOST_NETS:
+        waiting = sorted(first)
+        while waiting:
             net = waiting.pop()
             if not net or net in nets or net in self._rails.by_net or net not in self._on_net:
                 continue
             nets.add(net)
+            if len(nets) > _MOST_NETS:
+                return first  # the seeds do not depend on the order in which nets are visited
             for reference in self._on_net[net]:
                 part = self._parts[reference]
                 if len(part.pins) <= 3 and letters_of(reference) in _THROUGH:
@@ -224,11 +250,14 @@ def _covered(waiver: Waiver, findings: Sequence[Finding]) -> tuple[list[int], st
     same_rule = [index for index, finding in enumerate(findings) if finding.rule == waiver.rule]
     at_place = [index for index in same_rule if stands_at(findings[index], waiver.at)]
     if not waiver.fingerprint:
+        together = next((findings[index] for index in same_rule if waiver.at in findings[index].also), None)
+        if together is not None and not at_place:
+            return [], f"the finding there is told at {shown(place_of(together))}, name that"
         return at_place, "" if at_place else "matches no finding, remove it"
     if not waiver.fingerprint.startswith(f"{FORM}:"):
         return [], "its fingerprint is of another form, renew it with levelcrossing waive"
     same = [index for index in same_rule if findings[index].fingerprint == waiver.fingerprint]
-    if both := [index for index in same if index in at_place]:
+    if both := [index for index in same if index in at_place or waiver.at in findings[index].also]:
         return both, ""
     if len(same) == 1 and not at_place:
         finding = findings[same[0]]
@@ -247,6 +276,12 @@ def stands_at(finding: Finding, at: str) -> bool:
         return False
     pin = f"{finding.part}.{finding.pin}" if finding.part and finding.pin else ""
     return at in (pin, finding.part, finding.net)
+
+
+def _place(text: str) -> tuple[str, str]:
+    """Return part and pin of ``U1.3``; no pin for a part."""
+    part, _, number = text.partition(".")
+    return part, number
 
 
 def place_of(finding: Finding) -> str:

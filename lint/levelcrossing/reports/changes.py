@@ -7,7 +7,8 @@ from collections.abc import Callable, Iterator, Sequence
 from typing import Any
 
 from levelcrossing import __version__
-from levelcrossing.differences import Change, Comparison, Figure
+from levelcrossing.differences import Change, Comparison
+from levelcrossing.figures import Figure
 from levelcrossing.reports import clean
 from levelcrossing.reports.jsonform import number
 from levelcrossing.reports.phrases import NOTICE, count, quantity
