@@ -13,7 +13,7 @@ from levelcrossing.decks import Step, deck, safe_names
 from levelcrossing.network import Network
 
 
-def run_raw(decks: Sequence[str], commands: Sequence[str], *, timeout_s: float = 300.0) -> list[dict[str, np.ndarray]]:
+def run_raw(decks: Sequence[str], commands: Sequence[str], *, timeout_s: float = 60.0) -> list[dict[str, np.ndarray]]:
     """Run each deck's command in one process; return its vectors by lower-case name (empty when it failed)."""
     with tempfile.TemporaryDirectory() as folder:
         lines = ["* runner", ".control", "set filetype=binary", "set ngbehavior=0"]
@@ -65,6 +65,9 @@ def waves(
 ) -> list[tuple[Network, dict[str, np.ndarray]]]:
     """Return by case the vectors of a transient run."""
     decks = [deck(net, "step", member=member, step=step, tolerance=tolerance) for net, member, step in cases]
-    commands = [f"tran {step.until_s / points:.6g} {step.until_s:.6g} 0 {step.until_s / points:.6g}" for *_, step in cases]
+    commands = []
+    for *_, step in cases:
+        longest = step.until_s / points
+        commands.append(f"tran {longest:.6g} {step.until_s:.6g} 0 {longest:.6g}")
     raw = run_raw(decks, commands)
     return [(case[0], vectors) for case, vectors in zip(cases, raw, strict=True)]

@@ -117,7 +117,8 @@ def npn(s, **other):
 
 @cell
 def divider(r, k, s):
-    return [driver("a"), d.resistor("R1", "a", "x", 2e3 * r), d.resistor("R2", "x", "0", 3e3), load("x")], rails(k), "drv", "x", 0.0, 5.0
+    parts = [driver("a"), d.resistor("R1", "a", "x", 2e3 * r), d.resistor("R2", "x", "0", 3e3), load("x")]
+    return parts, rails(k), "drv", "x", 0.0, 5.0
 
 
 @cell
@@ -369,7 +370,8 @@ def mosfet_cell_without_low_pull_up(r, k, s):
 
 @cell
 def mosfet_cell_at_1v8(r, k, s):
-    parts = [driver("lo"), d.resistor("RH", "3V3", "hi", 10e3), load("hi"), load("lo"), d.resistor("RL", "1V8", "lo", 10e3 * r)]
+    parts = [driver("lo"), d.resistor("RH", "3V3", "hi", 10e3), d.resistor("RL", "1V8", "lo", 10e3 * r)]
+    parts += [load("hi"), load("lo")]
     parts.append(d.mosfet("Q1", "hi", "1V8", "lo", fet(s, threshold_volts=0.85 + 0.2 * s)))
     return parts, rails(k, **{"1V8": 1.8 * k}), "drv", "hi", 0.0, 1.8
 
@@ -390,7 +392,8 @@ def inverting_mosfet_stage(r, k, s):
 @cell
 def two_inverting_mosfet_stages(r, k, s):
     parts = [driver("g"), d.resistor("RD", "3V3", "m", 4.7e3 * r), d.resistor("RD2", "5V", "x", 2.2e3), load("x")]
-    return [*parts, d.mosfet("Q1", "m", "g", "0", fet(s)), d.mosfet("Q2", "x", "m", "0", fet(s))], rails(k), "drv", "x", 0.0, 3.3
+    parts += [d.mosfet("Q1", "m", "g", "0", fet(s)), d.mosfet("Q2", "x", "m", "0", fet(s))]
+    return parts, rails(k), "drv", "x", 0.0, 3.3
 
 
 @cell
@@ -425,12 +428,66 @@ def bus_switch(r, k, s):
 
 @cell
 def bus_switch_with_pull_up(r, k, s):
-    parts = [driver("a", 25.0), d.resistor("RP", "5V", "x", 1e3 * r), d.resistor("RP2", "3V3", "a", 2.2e3), load("x", 50e-12)]
+    parts = [driver("a", 25.0), d.resistor("RP", "5V", "x", 1e3 * r), d.resistor("RP2", "3V3", "a", 2.2e3)]
+    parts.append(load("x", 50e-12))
     parts.append(d.switch("U1.1", "a", "gate", "x", threshold_volts=0.7 + 0.1 * s, gain=0.06))
     return parts, rails(k, gate=3.9 * k), "drv", "x", 0.0, 3.3
 
 
 @cell
 def dead_low_rail_behind_a_mosfet_cell(r, k, s):
-    parts = [driver("hi", 1e3), d.resistor("RH", "5V", "hi", 10e3 * r), d.resistor("RL", "off", "lo", 10e3), load("hi"), load("lo")]
+    parts = [driver("hi", 1e3), d.resistor("RH", "5V", "hi", 10e3 * r), d.resistor("RL", "off", "lo", 10e3)]
+    parts += [load("hi"), load("lo")]
     return [*parts, d.mosfet("Q1", "hi", "off", "lo", fet(s))], rails(k, off=0.0), "drv", "hi", 0.0, 5.0
+
+
+# --------------------------------------------------------------------------------------------------------------- random
+
+
+def random_network(rng: np.random.Generator) -> Network:
+    """Return a circuit of 3 to 8 nodes with elements of every kind between nodes drawn at random.
+
+    Every node has a resistor towards a supply, directly or through others, so that it has a voltage at all.
+    """
+    count = int(rng.integers(3, 9))
+    nodes = [f"n{i}" for i in range(count)]
+    fixed: dict[str, Value] = {
+        "A": float(rng.choice([1.8, 3.3, 5.0, 12.0])),
+        "B": float(rng.uniform(-5, 5)),
+        "drv": float(rng.choice([0.0, 3.3, 5.0])),
+    }
+    every = [*nodes, *fixed, "0"]
+
+    def pick(number: int) -> list[str]:
+        return [str(node) for node in rng.choice(every, size=number, replace=False)]
+
+    parts: Parts = []
+    for i, node in enumerate(nodes):
+        parts.append(d.resistor(f"R{i}", node, str(rng.choice([*nodes[:i], *fixed, "0"])), 10 ** rng.uniform(1, 5.5)))
+    kinds = ["resistor", "current", "signal", "schottky", "clamp", "zener", "npn", "pnp", "nmos", "pmos", "switch"]
+    for i in range(int(rng.integers(2, 2 + count))):
+        kind, label = str(rng.choice(kinds)), f"X{i}"
+        if kind == "resistor":
+            parts.append(d.resistor(label, *pick(2), 10 ** rng.uniform(1, 6)))
+        elif kind == "current":
+            parts.append(d.current(label, *pick(2), 10 ** rng.uniform(-9, -4)))
+        elif kind in ("signal", "schottky", "clamp"):
+            parts.append(d.diode(label, *pick(2), {"signal": SIGNAL, "schottky": SCHOTTKY, "clamp": CLAMP}[kind]))
+        elif kind == "zener":
+            values = zener(float(rng.choice([2.4, 3.3, 5.1, 10.0])), rng.uniform(10, 90), rng.uniform(50, 500))
+            parts.append(d.diode(label, *pick(2), values))
+        elif kind in ("npn", "pnp"):
+            gains = {"beta_forward": 10 ** rng.uniform(1.3, 2.8), "beta_reverse": 10 ** rng.uniform(-1, 1.3)}
+            parts += d.bipolar(label, *pick(3), {**(NPN if kind == "npn" else PNP), **gains})
+        elif kind in ("nmos", "pmos"):
+            figures = {"threshold_volts": rng.uniform(0.5, 3), "gain": 10 ** rng.uniform(-2.5, 0)}
+            drain, gate, source = pick(3)
+            # Half an ohm in the source: a body diode straight across two supplies has no operating point.
+            parts.append(d.resistor(f"{label} source", source, f"{label} s", 0.5))
+            values = {**(N_FET if kind == "nmos" else P_FET), **figures}
+            parts.append(d.mosfet(label, drain, gate, f"{label} s", values))
+        else:
+            a, gate, b = pick(3)
+            threshold, gain = rng.uniform(0.4, 1.0), 10 ** rng.uniform(-2, 0)
+            parts.append(d.switch(label, a, gate, b, threshold_volts=threshold, gain=gain))
+    return Network(branches=tuple(parts), fixed=fixed)

@@ -179,7 +179,7 @@ class Arrays:
         """Return the conductance matrix [S], shape ``(unknown, unknown, batch)``."""
         flat = self.spread @ slopes
         flat += self.base
-        return flat.reshape(self.unknown, self.unknown, -1)
+        return flat.reshape(self.unknown, self.unknown, slopes.shape[1])
 
     def limit(self, new: Vector, old: Vector) -> Vector:
         """Return junction voltages [V] for the next linearisation: no step may outrun the exponential."""
@@ -442,7 +442,7 @@ def lay_out(network: Network) -> tuple[Arrays, tuple[frozenset[str], ...], Mappi
         cap_q=_column(plan.cap, 1),
         cap_f=_values(plan.cap, 2),
         into=into,
-        spread=np.ascontiguousarray(spread[:n, :n].reshape(n * n, -1)),
+        spread=np.ascontiguousarray(spread[:n, :n].reshape(n * n, spread.shape[2])),
         base=np.ascontiguousarray(base[:n, :n].reshape(n * n, width)),
     )
     return arrays, tuple(frozenset(plan.names[i] for i in group) for group in loose), plan.parts

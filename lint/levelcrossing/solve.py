@@ -2,8 +2,8 @@
 
 Rails and ideal drivers are fixed nodes and no unknowns. Arrays carry the batch on the last axis. Junction voltages are
 limited between iterations, nothing else is; whatever comes out is gated on its true Kirchhoff residual. Members that do
-not pass go through damped iteration, then steps of conductance to ground, then steps of the sources; what still fails
-is called unsolved.
+not pass go through damped iteration, steps of conductance to ground, steps of the sources and slow settling, in this
+order; what still fails is called unsolved.
 """
 
 from __future__ import annotations
@@ -19,11 +19,13 @@ from levelcrossing.arrays import Arrays, Flags, lay_out
 from levelcrossing.network import Branch, Network, Value, Vector
 
 # A node whose resistance to all fixed nodes exceeds this hangs on leakage alone [ohm].
-FLOATING_OHMS = 2e9
+FLOATING_OHMS = 2e8
 # Newton is done when the answer lies this close to the point of linearisation [V].
 _CLOSE_VOLTS = 1e-8
 # Kirchhoff's law holds when a node's currents cancel to this fraction of what flows through it, plus a floor [A].
 _RESIDUAL_FRACTION, _RESIDUAL_AMPS = 1e-6, 1e-12
+# A balance of larger currents than this is no answer: something bare lies across stiff supplies [A].
+_MOST_AMPS = 1e3
 _ITERATIONS = 60
 _LONGEST = 300
 # Below this many members per unknown a library call per member is faster than elimination across the batch.
@@ -93,18 +95,26 @@ def _residual(arrays: Arrays, volts: Vector, extra: Vector | float = 0.0) -> tup
     with np.errstate(all="ignore"):
         flows = arrays.evaluate(volts)[0]
         missed = np.abs(arrays.into[:n] @ flows + extra * volts[:n])
-        allowed = _RESIDUAL_AMPS + _RESIDUAL_FRACTION * (np.abs(arrays.into[:n]) @ np.abs(flows))
-        ratio = missed / allowed
+        through = np.abs(arrays.into[:n]) @ np.abs(flows)
+        ratio = missed / (_RESIDUAL_AMPS + _RESIDUAL_FRACTION * through)
+        ratio[through > _MOST_AMPS] = np.inf
     worst = np.where(np.isfinite(ratio), ratio, np.inf)
     return worst.max(axis=0, initial=0.0), missed.max(axis=0, initial=0.0)
 
 
 def _newton(
-    arrays: Arrays, volts: Vector, *, extra: float = 0.0, longest_step: float = math.inf, iterations: int = _ITERATIONS
+    arrays: Arrays,
+    volts: Vector,
+    *,
+    extra: float = 0.0,
+    anchor: Vector | None = None,
+    longest_step: float = math.inf,
+    iterations: int = _ITERATIONS,
 ) -> tuple[Vector, Flags]:
     """Iterate from ``volts`` (all nodes, fixed ones in place); return new voltages and which members converged.
 
-    ``extra`` is a conductance from every unknown node to ground [S], ``longest_step`` bounds a step of any node [V].
+    ``extra`` is a conductance [S] from every unknown node to ground, or to the voltages ``anchor`` [V];
+    ``longest_step`` bounds a step of any node [V].
     """
     n = arrays.unknown
     out = volts.copy()
@@ -121,7 +131,7 @@ def _newton(
             matrix = part.matrix(slopes) if slopes.shape[0] else _broad(part, v.shape[1])
             if extra:
                 matrix[diagonal, diagonal] += extra
-                right += extra * v[:n]
+                right += extra * (v[:n] if anchor is None else v[:n] - anchor[:, live])
             step = solve_linear(matrix, right)
             size = np.abs(step).max(axis=0, initial=0.0)
             if math.isfinite(longest_step):
@@ -173,7 +183,13 @@ def _rescue(arrays: Arrays, start: Vector) -> tuple[Vector, Flags, tuple[str, ..
     best = cold.copy()
     good = np.zeros(start.shape[1], dtype=bool)
     used: list[str] = []
-    for name, way in (("damped", _damped), ("conductance steps", _by_conductance), ("source steps", _by_sources)):
+    ways = (
+        ("damped", _damped),
+        ("conductance steps", _by_conductance),
+        ("source steps", _by_sources),
+        ("slow settling", _by_settling),
+    )
+    for name, way in ways:
         open_ = np.flatnonzero(~good)
         if not open_.size:
             break
@@ -213,6 +229,20 @@ def _by_sources(arrays: Arrays, volts: Vector) -> Vector:
 # ------------------------------------------------------------------------------------------------------------- solution
 
 
+def _by_settling(arrays: Arrays, volts: Vector) -> Vector:
+    """Let every node settle like a capacitor, in ever longer steps: leads a circuit with memory into a stable state."""
+    n = arrays.unknown
+    extra = 1.0
+    for _ in range(120):
+        moved, converged = _newton(arrays, volts, extra=extra, anchor=volts[:n].copy(), longest_step=0.5, iterations=60)
+        volts = np.where(converged & np.isfinite(moved).all(axis=0), moved, volts)
+        # One pace for all: a member that fails stays where it is while the steps shorten again.
+        extra = extra / 2.0 if converged.all() else extra * 3.0
+        if extra < 1e-12:
+            break
+    return _newton(arrays, volts, longest_step=0.3, iterations=_LONGEST)[0]
+
+
 @dataclass(frozen=True, kw_only=True, eq=False)
 class DcSolution:
     """The operating points of a batch.
@@ -248,7 +278,7 @@ class DcSolution:
         """Unknown nodes that hang on leakage alone in some member, each with flags by member.
 
         Either no conducting branch links the node to a fixed one, or all that do are off: the resistance that the node
-        sees at the operating point exceeds 2 gigohm.
+        sees at the operating point exceeds 200 megohm.
         """
         arrays, n = self._arrays, self._arrays.unknown
         outer = len(self.network.nodes)

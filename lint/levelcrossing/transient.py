@@ -89,7 +89,7 @@ def _dynamics(arrays: Arrays) -> _Dynamics:
         arrays=arrays,
         charged=charged,
         into=np.ascontiguousarray(np.hstack([arrays.into[:n], into[:n]])),
-        spread=np.ascontiguousarray(np.hstack([arrays.spread, spread.reshape(n * n, -1)])),
+        spread=np.ascontiguousarray(np.hstack([arrays.spread, spread.reshape(n * n, spread.shape[2])])),
         cap_f=arrays.cap_f,
         transit=arrays.jun_tt[charged] if charged.size else np.empty((0, 1)),
     )
