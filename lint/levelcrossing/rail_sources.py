@@ -1,0 +1,453 @@
+"""What gives a net its voltage by itself: settings, fields, regulators, names, connectors, cells.
+
+References
+----------
+Cells: CR2032 2.0-3.3 V (maker's discharge curves; common practice), Li-ion 3.0-4.2 V (charge and cut-off voltage,
+common practice). USB bus power 4.40-5.25 V: USB 2.0, section 7.2.2, as in the trade data of rail names.
+"""
+
+from __future__ import annotations
+
+import fnmatch
+import re
+from collections import defaultdict
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+
+from levelcrossing import partkinds, units
+from levelcrossing.diodepins import diode_pairs
+from levelcrossing.model import Basis, Evidence, Part, Pin, RegulatorFacts, Settings, Spread
+from levelcrossing.rail_links import Joints, across_coil
+from levelcrossing.rail_scene import Scene, plain_words
+from levelcrossing.symbolfields import settings_from_fields
+
+COIN_CELL = Spread(low=2.0, nominal=3.0, high=3.3)
+LITHIUM_CELL = Spread(low=3.0, nominal=3.7, high=4.2)
+ALKALINE_CELL = Spread(low=0.9, nominal=1.5, high=1.65)
+
+_COIN = re.compile(r"\b(CR|BR|ML|MS|VL)\d{3,4}|COIN|BUTTON.?CELL", re.IGNORECASE)
+_LITHIUM = re.compile(r"LI-?(ION|PO|POLY)|LITHIUM|18650|14500|21700|16340|LIPO|LIFEPO", re.IGNORECASE)
+_CHARGER = re.compile(r"^(TP405\d|TP4056|TP5100|BL405\d|LTC405\d|MCP738\d\d|BQ2[1-5]\d{3}|IP530\d|CN3\d{3}|MAX15[15]\d|STC4054|ME4054)", re.IGNORECASE)
+_BATTERY_PIN = re.compile(r"V?_?BATT?[+]?|BATT?_?\+|B\+", re.IGNORECASE)
+_GENERIC_SWITCH = r"SW\d?|LX\d?|PH(ASE)?|VSW"
+_GENERIC_FEEDBACK = r"V?FB\d?|ADJ|FEEDBACK|VSENSE|VOSNS"
+_MOST_STEPS = 8
+
+
+@dataclass(frozen=True, slots=True)
+class Divider:
+    """A feedback divider: the net at its top, both resistances [ohm], and the parts for the user."""
+
+    top_net: str
+    top: Spread
+    bottom: Spread
+    words: str
+
+
+@dataclass(frozen=True, slots=True)
+class Conversion:
+    """What a regulator does: its parts, input and output net, whether something can switch it off."""
+
+    part: str
+    source: str
+    output: str
+    switched: bool
+
+
+class Sources:
+    """The voltage of each net as far as it stands by itself.
+
+    Parameters
+    ----------
+    scene : Scene
+    joints : Joints
+
+    Attributes
+    ----------
+    evidence : dict
+        Net to its own evidence, unsorted.
+    conversions : list of Conversion
+    made_by : dict
+        Output net of a converter whose voltage cannot be told, to a sentence about it.
+    """
+
+    def __init__(self, scene: Scene, joints: Joints) -> None:
+        self.scene = scene
+        self.joints = joints
+        self.evidence: dict[str, list[Evidence]] = defaultdict(list)
+        self.ranged: set[tuple[str, str]] = set()
+        self.conversions: list[Conversion] = []
+        self.made_by: dict[str, str] = {}
+        self._from_settings()
+        for reference, facts in scene.regulators.items():
+            self._from_regulator(scene.parts[reference], facts)
+        self._from_names()
+        for reference, part in scene.parts.items():
+            kind = scene.kinds[reference]
+            if kind == "connector" or scene.active(reference):
+                self._from_pin_names(part)
+            if kind in ("battery", "connector") or _CHARGER.match(part.value):
+                self._from_battery(part)
+
+    def add(self, net: str, kind: str, volts: Spread, basis: Basis, text: str, *, ranged: bool = False) -> None:
+        """Note one piece of evidence; ``ranged`` when its range was stated and not assumed."""
+        if not net or net in self.scene.grounds:
+            return
+        found = Evidence(kind=kind, volts=volts, basis=basis, text=text)
+        if found not in self.evidence[net]:
+            self.evidence[net].append(found)
+            if ranged:
+                self.ranged.add((net, text))
+
+    # --------------------------------------------------------------------------------------------------------- declared
+
+    def _from_settings(self) -> None:
+        scene = self.scene
+        bare = Settings(rail_tolerance=scene.settings.rail_tolerance)
+        fields = settings_from_fields(scene.board, bare).rails
+        for pattern, volts in scene.settings.rails.items():
+            if fields.get(pattern) == volts:
+                continue
+            exact = pattern in scene.pins_on
+            for net in [pattern] if exact else sorted(scene.pins_on):
+                if exact or fnmatch.fnmatchcase(net, pattern):
+                    text = f"the settings declare {units.format_volts(volts.nominal)}"
+                    self.add(net, "settings", scene.tolerant(volts), Basis.DECLARED, text, ranged=True)
+        for net, volts in fields.items():
+            text = f"a field on the schematic declares {units.format_volts(volts.nominal)}"
+            self.add(net, "field", scene.tolerant(volts), Basis.DECLARED, text, ranged=True)
+
+    # ------------------------------------------------------------------------------------------------------- regulators
+
+    def _from_regulator(self, part: Part, facts: RegulatorFacts) -> None:
+        scene = self.scene
+        inputs = [pin.net for pin in scene.named_pins(part, facts.input_pins) if pin.net not in scene.grounds]
+        source = inputs[0] if inputs else ""
+        feedback = scene.named_pins(part, facts.feedback_pins) if facts.output is None else []
+        output = self._output(part, facts, set(inputs))
+        divider = self._divider(feedback[0].net, output, facts, set(inputs)) if feedback else None
+        if divider is not None:
+            output = output or divider.top_net
+        if not output or output in inputs:
+            return
+        switched = self._switched(part, facts, inputs)
+        self.conversions.append(Conversion(part.reference, source, output, switched))
+        title = scene.title(part.reference)
+        if facts.output is not None:
+            text = f"{title} is a {units.format_volts(facts.output.nominal)} regulator"
+            self.add(output, "regulator", scene.tolerant(facts.output), Basis.LIBRARY, text, ranged=True)
+        elif facts.reference is not None and divider is not None:
+            volts = feedback_volts(facts, divider.top, divider.bottom)
+            text = (
+                f"{title} regulates to {units.format_volts(volts.nominal)}: {divider.words}, "
+                f"reference {units.format_volts(facts.reference.nominal, 3)}"
+            )
+            self.add(output, "feedback", volts, Basis.LIBRARY, text, ranged=True)
+        elif facts.reference is not None and self._unity(part, facts, feedback, output):
+            text = f"{title} regulates to its reference of {units.format_volts(facts.reference.nominal, 3)}"
+            self.add(output, "feedback", facts.reference, Basis.LIBRARY, text, ranged=True)
+        else:
+            self.made_by.setdefault(output, f"{title} makes it; its feedback divider could not be read")
+
+    def _output(self, part: Part, facts: RegulatorFacts, inputs: set[str]) -> str:
+        """Return the net that a regulator makes: beyond the coil of its switch pin, or its output pin's; may be empty."""
+        scene = self.scene
+        switches = scene.named_pins(part, facts.switch_pins or _GENERIC_SWITCH)
+        switch_nets = {pin.net for pin in switches}
+        outputs = [
+            pin.net
+            for pin in scene.named_pins(part, facts.output_pins)
+            if pin.net not in scene.grounds and pin.net not in switch_nets
+        ]
+        groups = {self.joints.group(net) for net in inputs}
+        beyond: list[str] = []
+        for net in sorted(switch_nets):
+            beyond += [other for other in across_coil(scene, net) if self.joints.group(other) not in groups]
+            if not beyond:  # the coil comes from the input: a step-up, the diode leads on
+                beyond += _after_diode(scene, net)
+        if facts.through_inductor and beyond:
+            return beyond[0]
+        return outputs[0] if outputs else beyond[0] if beyond else ""
+
+    def _unity(self, part: Part, facts: RegulatorFacts, feedback: list[Pin], output: str) -> bool:
+        """Tell a regulator whose feedback pin stands on its output, or whose adjust pin is grounded."""
+        if facts.formula == "floating":
+            pins = feedback or self.scene.named_pins(part, facts.ground_pins)
+            return bool(pins) and all(pin.net in self.scene.grounds for pin in pins)
+        return bool(feedback) and self.joints.group(feedback[0].net) == self.joints.group(output)
+
+    def _switched(self, part: Part, facts: RegulatorFacts, inputs: list[str]) -> bool:
+        """Tell whether anything but its own input holds the enable pin of a regulator."""
+        own = {self.joints.group(net) for net in inputs}
+        for pin in self.scene.named_pins(part, facts.enable_pins):
+            if self.joints.group(pin.net) in own:
+                continue
+            others = [other for other in self.scene.pins_on[pin.net] if other.part != part.reference]
+            if any(self.scene.kinds[other.part] not in ("resistor", "capacitor", "link", "test-point") for other in others):
+                return True
+        return False
+
+    def _divider(self, node: str, output: str, facts: RegulatorFacts, inputs: set[str]) -> Divider | None:
+        """Read the resistors of a feedback node: those down to ground, those up to the output.
+
+        Capacitors beside them (feed-forward) do not matter at DC. A resistor to anything else (a margining input) is
+        left out.
+        """
+        ups: dict[str, list[_Branch]] = defaultdict(list)
+        downs: list[_Branch] = []
+        for branch in self._branches(node):
+            if branch.end in self.scene.grounds:
+                downs.append(branch)
+            else:
+                ups[self.joints.group(branch.end)].append(branch)
+        wanted = self.joints.group(output) if output else ""
+        if wanted not in ups:
+            held = {self.joints.group(net) for net in inputs}
+            others = [group for group in ups if group not in held and self.scene.keeps_company(ups[group][0].end)]
+            if wanted and (output or len(others) != 1):
+                # The output pin may stand before a ferrite or a sense resistor; the one top that is left is meant.
+                others = [group for group in others if self._near(group, wanted)]
+            if len(others) != 1:
+                return None
+            wanted = others[0]
+        top = ups[wanted]
+        if not top or not downs:
+            return None
+        words = f"{_named(top)} over {_named(downs)}"
+        return Divider(top[0].end, _parallel(top), _parallel(downs), words)
+
+    def _near(self, group: str, wanted: str) -> bool:
+        """Tell whether a small resistor leads from one group to another."""
+        for net in self.joints.nets(wanted):
+            for pin in self.scene.pins_on.get(net, ()):
+                part = self.scene.parts[pin.part]
+                for a, b in partkinds.element_pairs(part):
+                    other = b.net if a.net == net else a.net
+                    ohms = units.parse_resistance(part.value)
+                    if self.joints.group(other) == group and ohms is not None and ohms <= 10:
+                        return True
+        return False
+
+    def _branches(self, node: str) -> Iterator[_Branch]:
+        """Yield the resistor chains that leave a node, each up to the next net where more than two things meet."""
+        here = self.joints.group(node)
+        for net in self.joints.nets(here):
+            for pin in self.scene.pins_on.get(net, ()):
+                if self.scene.kinds[pin.part] != "resistor":
+                    continue
+                branch = self._chain(net, pin.part, here)
+                if branch is not None:
+                    yield branch
+
+    def _chain(self, net: str, reference: str, here: str) -> _Branch | None:
+        names: list[str] = []
+        total, spread = 0.0, 0.0
+        for _ in range(_MOST_STEPS):
+            part = self.scene.parts[reference]
+            ohms = units.parse_resistance(part.value)
+            pair = next((pair for pair in partkinds.element_pairs(part) if net in (pair[0].net, pair[1].net)), None)
+            if ohms is None or pair is None:
+                return None
+            net = pair[1].net if pair[0].net == net else pair[0].net
+            if not net or self.joints.group(net) == here:
+                return None
+            tolerance = units.resistor_tolerance(part.value) or self.scene.settings.resistor_tolerance
+            names.append(f"{reference} {units.format_si(ohms, 'Ω')}")
+            total, spread = total + ohms, spread + ohms * tolerance
+            onward = self._onward(net, reference)
+            if onward is None:
+                break
+            net, reference = onward
+        return _Branch(net, Spread(low=total - spread, nominal=total, high=total + spread), "+".join(names))
+
+    def _onward(self, net: str, behind: str) -> tuple[str, str] | None:
+        """Return the resistor that a chain goes on with, when nothing else meets there; None at its end."""
+        if net in self.scene.grounds or self.scene.keeps_company(net):
+            return None
+        group = self.joints.nets(self.joints.group(net))
+        others = [(n, pin) for n in group for pin in self.scene.pins_on.get(n, ()) if pin.part != behind]
+        others = [
+            (n, pin)
+            for n, pin in others
+            if self.scene.kinds[pin.part] not in ("capacitor", "test-point") and self.scene.kinds[pin.part] not in _JOINING
+        ]
+        if len(others) == 1 and self.scene.kinds[others[0][1].part] == "resistor":
+            return others[0][0], others[0][1].part
+        return None
+
+    # ------------------------------------------------------------------------------------------------- names, connectors
+
+    def _from_names(self) -> None:
+        scene = self.scene
+        for net in sorted(scene.pins_on):
+            if net in scene.grounds or scene.book.looks_like_signal(net):
+                continue
+            known = scene.book.rail_volts(net)
+            if known is None or not self._rail_like(net):
+                continue
+            volts, source = known
+            ranged = volts.low < volts.high
+            text = f"its name says {units.format_volts(volts.nominal)}"
+            if ranged:
+                text = f"it is named like {source.row}: {units.format_volts(volts.low)} to {units.format_volts(volts.high)}"
+            self.add(net, "name", scene.tolerant(volts), Basis.TRACED, text, ranged=ranged)
+
+    def _rail_like(self, net: str) -> bool:
+        """Tell whether a net named like a rail also keeps the company of one; ``5V_LED`` on a port pin does not."""
+        scene = self.scene
+        pins = scene.pins_on[net]
+        if net[0] in "+-" or scene.keeps_company(net) or any(scene.keeps_company(n) for n in self._beside(net)):
+            return True
+        if any(scene.kinds[pin.part] == "battery" for pin in pins):
+            return True
+        if next(scene.signal_pins(net), None) is not None:
+            return False
+        parts = {pin.part for pin in pins if scene.kinds[pin.part] not in ("test-point", "power-flag")}
+        plain = re.fullmatch(r"[A-Z]?\d{1,2}V\d{0,2}|\d{1,2}\.\d{1,2}V?|V(BUS|SYS|BAT)\w*", net.rpartition("/")[2], re.IGNORECASE)
+        return len(parts) > 3 or (plain is not None and len(parts) >= 1)
+
+    def _beside(self, net: str) -> tuple[str, ...]:
+        group = self.joints.group(net)
+        return self.joints.nets(group) if group in self.joints.members else ()
+
+    def _from_pin_names(self, part: Part) -> None:
+        """Take the voltage that a connector's pin, or a module's output pin, is named with."""
+        scene = self.scene
+        connector = scene.kinds[part.reference] == "connector"
+        facts = None if connector else scene.book.part(part)
+        for pin in part.pins:
+            if not pin.net or pin.unused or pin.net in scene.grounds:
+                continue
+            if not connector and scene.role(pin) != "out":
+                continue
+            if facts is not None and self._from_facts(part, pin, facts.supplies):
+                continue
+            word = next((word for word in plain_words(pin) if re.search(r"\dV|V\d|VBUS|VUSB|\d\.\d", word, re.IGNORECASE)), "")
+            if not word or scene.book.looks_like_signal(word) or re.match(r"[DAP]\d", word):
+                continue
+            known = scene.book.rail_volts(word)
+            if known is None or (connector and pin.kind in ("input", "bidirectional") and not scene.keeps_company(pin.net)):
+                continue
+            volts = known[0]
+            text = f"pin {pin.number} of {scene.title(part.reference)} is named {pin.name}"
+            self.add(pin.net, "connector", scene.tolerant(volts), Basis.TRACED, text, ranged=volts.low < volts.high)
+
+    def _from_facts(self, part: Part, pin: Pin, supplies: tuple[object, ...]) -> bool:
+        """Take the voltage that the trade data gives for an output pin of a module; tell whether it did."""
+        for supply in supplies:
+            low, high = getattr(supply, "low_volts", None), getattr(supply, "high_volts", None)
+            if getattr(supply, "role", "") != "out" or not low or not high or high > 1.35 * low:
+                continue
+            pattern = re.compile(str(getattr(supply, "pins", "")), re.IGNORECASE)
+            if any(pattern.fullmatch(word) for word in (pin.name, *plain_words(pin))):
+                volts = Spread(low=low, nominal=round((low + high) / 2, 3), high=high)
+                title = self.scene.title(part.reference)
+                text = f"{title} gives {units.format_volts(volts.nominal)} at its pin {pin.name or pin.number}"
+                self.add(pin.net, "connector", volts, Basis.LIBRARY, text, ranged=True)
+                return True
+        return False
+
+    def _from_battery(self, part: Part) -> None:
+        scene = self.scene
+        title = scene.title(part.reference)
+        live = [pin for pin in part.pins if pin.net and pin.net not in scene.grounds]
+        if _CHARGER.match(part.value):
+            for pin in live:
+                if any(_BATTERY_PIN.fullmatch(word) for word in plain_words(pin)):
+                    text = f"the charger {title} keeps a Li-ion cell on it, 3 to 4.2 V"
+                    self.add(pin.net, "battery", LITHIUM_CELL, Basis.TRACED, text, ranged=True)
+            return
+        words = f"{part.value} {part.symbol} {part.footprint.rpartition(':')[2]}"
+        cell = next((cell for pattern, cell in ((_COIN, COIN_CELL), (_LITHIUM, LITHIUM_CELL)) if pattern.search(words)), None)
+        positive = [pin for pin in live if pin.name.strip() in ("+", "Pos", "P", "PLUS", "") or "+" in pin.name or pin.number == "1"]
+        if scene.kinds[part.reference] == "connector":
+            if cell is None or not re.match(r"B(AT|T)", part.reference, re.IGNORECASE):
+                return
+        if cell is not None and positive and len(live) <= 2:
+            text = f"{title} is a cell of {cell.low:g} to {cell.high:g} V"
+            self.add(positive[0].net, "battery", cell, Basis.TRACED, text, ranged=True)
+
+    # --------------------------------------------------------------------------------------------------------------- use
+
+    def from_use(self, nets: tuple[str, ...]) -> Evidence | None:
+        """Return what the names of the supply pins on some joined nets agree on (``VDD33``), or None."""
+        found: list[tuple[Spread, str]] = []
+        for net in nets:
+            for pin in self.scene.supplies(net):
+                for word in plain_words(pin):
+                    known = self.scene.book.rail_volts(word) if re.search(r"\d", word) else None
+                    if known is not None and known[0].low == known[0].high and not self.scene.book.looks_like_signal(word):
+                        found.append((known[0], f"pin {pin.number} of {self.scene.title(pin.part)} is named {pin.name}"))
+        if not found or any(abs(volts.nominal - found[0][0].nominal) > 0.01 for volts, _ in found):
+            return None
+        volts = self.scene.tolerant(found[0][0])
+        return Evidence(kind="use", volts=volts, basis=Basis.ASSUMED, text=f"{found[0][1]}, nothing else tells")
+
+
+@dataclass(frozen=True, slots=True)
+class _Branch:
+    """A chain of resistors from a node: where it ends, its resistance [ohm], its name."""
+
+    end: str
+    ohms: Spread
+    words: str
+
+
+_JOINING = partkinds.LINK_KINDS
+
+
+def _named(branches: list[_Branch]) -> str:
+    return " ∥ ".join(branch.words for branch in branches)
+
+
+def _parallel(branches: list[_Branch]) -> Spread:
+    def of(values: list[float]) -> float:
+        return 0.0 if 0.0 in values else 1 / sum(1 / value for value in values)
+
+    return Spread(
+        low=of([branch.ohms.low for branch in branches]),
+        nominal=of([branch.ohms.nominal for branch in branches]),
+        high=of([branch.ohms.high for branch in branches]),
+    )
+
+
+def _after_diode(scene: Scene, net: str) -> list[str]:
+    found = []
+    for pin in scene.pins_on.get(net, ()):
+        if scene.kinds[pin.part] == "diode":
+            found += [cathode.net for anode, cathode in diode_pairs(scene.parts[pin.part]) if anode.net == net]
+    return [other for other in found if other and other not in scene.grounds]
+
+
+def feedback_volts(facts: RegulatorFacts, top: Spread, bottom: Spread) -> Spread:
+    """Return the output of an adjustable regulator from its feedback divider.
+
+    Parameters
+    ----------
+    facts : RegulatorFacts
+        With its reference voltage [V]. ``formula`` tells parts that hold the feedback pin at the reference above ground
+        from those that hold the reference between output and adjust pin (``floating``).
+    top, bottom : Spread
+        Resistance from the output to the feedback pin, and from there to ground [ohm].
+
+    Returns
+    -------
+    Spread
+        Output [V]: ``vref (1 + top / bottom)``; floating ``vref (1 + bottom / top) + iadj bottom``.
+
+    Examples
+    --------
+    With 0.8 V, 52.3 kohm over 10 kohm: 0.8 (1 + 5.23) = 4.984 V.
+    """
+    reference = facts.reference
+    assert reference is not None
+    floating = facts.formula == "floating"
+
+    def out(vref: float, upper: float, lower: float) -> float:
+        if floating:
+            return vref * (1 + lower / upper) + facts.adjust_amps * lower
+        return vref * (1 + upper / lower)
+
+    nominal = out(reference.nominal, top.nominal, bottom.nominal)
+    ends = [out(vref, a, b) for vref in (reference.low, reference.high) for a in (top.low, top.high) for b in (bottom.low, bottom.high)]
+    return replace(reference, low=min(ends), nominal=nominal, high=max(ends))

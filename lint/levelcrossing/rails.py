@@ -1,0 +1,395 @@
+"""From a board to its rails: which nets are held at a steady voltage, at which, and why that is believed.
+
+The way: what gives a net its voltage by itself (``rail_sources``) decides for the whole group of nets that are joined
+outright (``rail_links``); the strongest evidence wins, and evidence that contradicts it is told. Groups without any are
+then fed through resistors, diodes, switches and jumpers from groups that have one.
+"""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Iterator, Sequence
+from dataclasses import replace
+
+from levelcrossing import units
+from levelcrossing.model import Basis, Board, Evidence, Rail, RailRemark, Rails, Settings, Spread
+from levelcrossing.rail_links import Feed, Joints, find_feeds
+from levelcrossing.rail_scene import Scene
+from levelcrossing.rail_sources import Conversion, Sources
+from levelcrossing.tradebook import Tradebook
+
+STRENGTH = ("ground", "settings", "field", "regulator", "feedback", "name", "connector", "upstream", "diode", "battery", "use")
+"""Kinds of evidence, strongest first."""
+
+DISAGREE = 0.06
+"""Usual voltages further apart than this contradict each other [1]; real rails keep within 5 % of their name."""
+
+NEAR = 0.03
+"""Closer than this they never do, whatever their tolerances [1]: names are rounded."""
+
+_DECLARED = ("settings", "field")
+_ROUNDS = 12
+
+
+def trace_rails(board: Board, book: Tradebook, settings: Settings) -> Rails:
+    """Find the rails of a board.
+
+    Parameters
+    ----------
+    board : Board
+    book : Tradebook
+    settings : Settings
+
+    Returns
+    -------
+    Rails
+        Every net that is a rail with its evidence, supply nets without a voltage, and what is wrong with rails.
+    """
+    return _Tracing(Scene(board, book, settings)).rails()
+
+
+class _Tracing:
+    """One tracing: groups of joined nets, their voltages, and how those without one are fed."""
+
+    def __init__(self, scene: Scene) -> None:
+        self.scene = scene
+        self.joints = Joints(scene)
+        self.sources = Sources(scene, self.joints)
+        self.feeds = find_feeds(scene, self.joints)
+        self.groups: dict[str, tuple[str, ...]] = {}
+        for net in sorted(scene.pins_on):
+            if net not in scene.grounds:
+                group = self.joints.group(net)
+                self.groups[group] = self.joints.nets(group)
+        # Evidence of each group with the net that it belongs to, strongest first.
+        self.known: dict[str, list[tuple[str, Evidence]]] = {}
+        self.fed: dict[str, list[tuple[str, Evidence]]] = {}
+        self.origin: dict[str, tuple[str, ...]] = {}
+        self.remarks: list[RailRemark] = []
+
+    def rails(self) -> Rails:
+        """Do the whole work."""
+        for group, nets in self.groups.items():
+            found = [(net, item) for net in nets for item in self.sources.evidence.get(net, ())]
+            if found:
+                self.known[group] = self._ordered(found)
+        self._feed(("resistor", "filter", "switch", "diode"))
+        self._feed(("choice",))
+        self._feed(("resistor", "filter", "switch", "diode"))
+        self._take_use()
+        self._feed(("resistor", "filter", "switch", "diode", "choice"))
+        by_net = {net: rail for net, rail in self._grounds()}
+        for group, nets in self.groups.items():
+            by_net.update(self._rails_of(group, nets))
+        unknown = tuple(self._unknown(by_net))
+        self._regulator_remarks(by_net)
+        ordered = tuple(sorted(self.remarks, key=lambda remark: (remark.kind, units.natural_key(remark.net), remark.part)))
+        return Rails(by_net=dict(sorted(by_net.items())), unknown=unknown, remarks=ordered)
+
+    # -------------------------------------------------------------------------------------------------------- own voltage
+
+    def _ordered(self, found: Sequence[tuple[str, Evidence]]) -> list[tuple[str, Evidence]]:
+        """Sort evidence by strength; a stated range goes before a name that only states a point it contains."""
+
+        def key(entry: tuple[str, Evidence]) -> tuple[object, ...]:
+            net, item = entry
+            assumed = (net, item.text) not in self.sources.ranged
+            return STRENGTH.index(item.kind), assumed, units.natural_key(net), item.text
+
+        ordered = sorted(found, key=key)
+        first_net, first = ordered[0]
+        if first.kind == "name" and (first_net, first.text) not in self.sources.ranged and first.volts is not None:
+            for entry in ordered[1:]:
+                volts = entry[1].volts
+                stated = (entry[0], entry[1].text) in self.sources.ranged and entry[1].kind in ("name", "connector")
+                if stated and volts is not None and abs(volts.nominal - first.volts.nominal) <= NEAR * first.volts.nominal:
+                    return [entry, *(other for other in ordered if other is not entry)]
+        return ordered
+
+    def _volts(self, group: str) -> Spread | None:
+        for found in (self.known.get(group), self.fed.get(group)):
+            if found:
+                return found[0][1].volts
+        return None
+
+    def _take_use(self) -> None:
+        for group, nets in self.groups.items():
+            if self._volts(group) is None and self._supply_like(nets):
+                item = self.sources.from_use(nets)
+                if item is not None:
+                    self.known[group] = [(nets[0], item)]
+
+    # ------------------------------------------------------------------------------------------------------------ feeding
+
+    def _supply_like(self, nets: Sequence[str]) -> bool:
+        """Tell whether a group without a voltage may be a rail: it supplies something or is decoupled, and no signal."""
+        scene = self.scene
+        if any(scene.supplies(net) for net in nets):
+            return True
+        if any(scene.book.looks_like_signal(net) for net in nets):
+            return False
+        return any(scene.decoupled(net) for net in nets) and not any(next(scene.signal_pins(net), None) for net in nets)
+
+    def _feed(self, kinds: Sequence[str]) -> None:
+        """Give groups without a voltage that of the groups that feed them, round after round."""
+        into: dict[str, list[Feed]] = defaultdict(list)
+        for feed in self.feeds:
+            if feed.kind in kinds:
+                into[self.joints.group(feed.target)].append(feed)
+        for group in list(into):
+            if group in self.known or group not in self.groups or not self._supply_like(self.groups[group]):
+                del into[group]
+        for _ in range(_ROUNDS):
+            fresh: dict[str, tuple[Evidence, tuple[str, ...]]] = {}
+            for group, feeds in into.items():
+                found = self._combined(group, feeds)
+                if found is not None and (group not in self.fed or self.fed[group][0][1] != found[0]):
+                    fresh[group] = found
+            if not fresh:
+                return
+            for group, (item, sources) in fresh.items():
+                if group in self.fed and self.fed[group][0][1].kind == "upstream" and item.kind == "diode":
+                    continue
+                self.fed[group] = [(self.groups[group][0], item)]
+                self.origin[group] = sources
+
+    def _combined(self, group: str, feeds: Sequence[Feed]) -> tuple[Evidence, tuple[str, ...]] | None:
+        """Combine all feeds of a group: through a resistor there is one voltage, through diodes and choices any of them."""
+        ways: list[tuple[Feed, Spread]] = []
+        for feed in feeds:
+            source = self.joints.group(feed.source)
+            volts = self._volts(source)
+            if volts is None or volts.nominal <= 0.5 or group in self._ancestors(source):
+                continue
+            if feed.kind == "filter" and not self._filtered(self.groups[group]):
+                continue
+            less = Spread(
+                low=volts.low - feed.drop.high,
+                nominal=volts.nominal - feed.drop.nominal,
+                high=volts.high - feed.drop.low,
+            )
+            if less.nominal > 0.3:
+                ways.append((feed, less))
+        if not ways:
+            return None
+        ways.sort(key=lambda way: (-way[1].nominal, way[0].part, way[0].source))
+        low = min(volts.low for _, volts in ways)
+        high = max(volts.high for _, volts in ways)
+        volts = Spread(low=low, nominal=ways[0][1].nominal, high=high)
+        told = list(dict.fromkeys(f"{feed.source} {feed.words}" for feed, _ in ways))
+        diode = any(feed.kind == "diode" for feed, _ in ways)
+        text = "fed from " + ", or from ".join(told)
+        basis = Basis.ASSUMED if any(feed.kind == "choice" for feed, _ in ways) else Basis.TRACED
+        sources = tuple(sorted({self.joints.group(feed.source) for feed, _ in ways}))
+        return Evidence(kind="diode" if diode else "upstream", volts=volts, basis=basis, text=text), sources
+
+    def _ancestors(self, group: str) -> set[str]:
+        seen: set[str] = set()
+        waiting = [group]
+        while waiting:
+            here = waiting.pop()
+            if here not in seen:
+                seen.add(here)
+                waiting.extend(self.origin.get(here, ()))
+        return seen
+
+    def _filtered(self, nets: Sequence[str]) -> bool:
+        """Tell whether a group behind a larger resistor is a filtered supply: a capacitor, and supply pins only."""
+        scene = self.scene
+        return any(scene.decoupled(net) for net in nets) and not any(next(scene.signal_pins(net), None) for net in nets)
+
+    # ------------------------------------------------------------------------------------------------------------ deciding
+
+    def _grounds(self) -> Iterator[tuple[str, Rail]]:
+        scene = self.scene
+        size = {net: len(scene.pins_on[net]) for net in scene.grounds}
+        main = max(sorted(size), key=lambda net: size[net], default="")
+        for net, why in sorted(scene.grounds.items()):
+            members = self.joints.nets(self.joints.group(net))
+            domain = max(sorted(members), key=lambda member: size.get(member, 0))
+            text = f"{net} is a ground: {why}"
+            if main not in members:
+                text += f"; nothing joins it to {main}, so it was taken as a ground of its own at 0 V"
+            item = Evidence(kind="ground", volts=Spread.exactly(0.0), basis=Basis.TRACED, text=text)
+            yield net, Rail(net=net, volts=Spread.exactly(0.0), basis=Basis.TRACED, evidence=(item,), domain=domain, ground=True)
+
+    def _rails_of(self, group: str, nets: Sequence[str]) -> Iterator[tuple[str, Rail]]:
+        found = self.known.get(group) or self.fed.get(group) or []
+        if not found and not any(self.scene.supplies(net) or self.scene.supplies(net, "out") for net in nets):
+            return
+        domain = self._domain(group, nets, found)
+        disagreement = self._disagreement(found) if found else ""
+        for net in nets:
+            if not self._belongs(net, nets, found):
+                continue
+            evidence = tuple(self._as_seen(net, owner, item) for owner, item in found)
+            yield net, Rail(
+                net=net,
+                volts=evidence[0].volts if evidence else None,
+                basis=evidence[0].basis if evidence else Basis.ASSUMED,
+                evidence=evidence,
+                domain=domain,
+                disagreement=disagreement,
+                load_farads=self.scene.farads.get(net, 0.0),
+                fed_by=self._fed_by(group),
+            )
+
+    def _belongs(self, net: str, nets: Sequence[str], found: Sequence[tuple[str, Evidence]]) -> bool:
+        """Tell whether a net of a group is a rail itself; a mode pin strapped to a supply by 0 ohm is none."""
+        scene = self.scene
+        if len(nets) == 1 or any(owner == net for owner, _ in found) or scene.keeps_company(net):
+            return True
+        return next(scene.signal_pins(net), None) is None and not scene.book.looks_like_signal(net)
+
+    def _as_seen(self, net: str, owner: str, item: Evidence) -> Evidence:
+        if owner == net or self.joints.group(owner) != self.joints.group(net):
+            return item
+        way = self.joints.words(net, owner)
+        if not way.removeprefix("through ") or item.kind in ("upstream", "diode", "use"):
+            return item
+        return replace(item, kind="upstream", text=f"joined to {owner} {way}: {item.text}", basis=Basis.weakest(item.basis, Basis.TRACED))
+
+    def _domain(self, group: str, nets: Sequence[str], found: Sequence[tuple[str, Evidence]]) -> str:
+        """Return the net that feeds a group: where its source stands, else the one with most pins."""
+        sources = [owner for owner, item in found if item.kind in ("regulator", "feedback", "battery", "connector")]
+        if sources:
+            return sources[0]
+        small = [feed for feed in self.feeds if feed.kind in ("resistor", "filter") and self.joints.group(feed.target) == group]
+        origin = self.origin.get(group, ())
+        if group not in self.known and len(origin) == 1 and small:
+            above = origin[0]
+            return self._domain(above, self.groups[above], self.known.get(above) or self.fed.get(above) or [])
+        return max(nets, key=lambda net: (len(self.scene.pins_on[net]), [-ord(letter) for letter in net]))
+
+    def _fed_by(self, group: str) -> str:
+        made = [one for one in self.sources.conversions if self.joints.group(one.output) == group]
+        if len(made) == 1 and made[0].source and not made[0].switched:
+            return made[0].source
+        origin = self.origin.get(group, ())
+        if group not in self.known and len(origin) == 1:
+            kinds = {feed.kind for feed in self.feeds if self.joints.group(feed.target) == group}
+            if kinds <= {"diode", "resistor", "filter"}:
+                nets = self.groups[origin[0]]
+                return self._domain(origin[0], nets, self.known.get(origin[0]) or [])
+        return ""
+
+    def _disagreement(self, found: Sequence[tuple[str, Evidence]]) -> str:
+        """Return what contradicts the evidence that decided, and remark it once."""
+        owner, first = found[0]
+        if first.kind in _DECLARED or first.volts is None:
+            return ""
+        for other_net, other in found[1:]:
+            if other.volts is None or other.kind == "use" or not _contradict(first.volts, other.volts):
+                continue
+            says, against = units.format_volts_apart(first.volts.nominal, other.volts.nominal)
+            net = other_net if other.kind == "name" else owner
+            join = "" if other_net == owner else f" and is joined to {other_net} {self.joints.words(owner, other_net)}"
+            text = f"{owner}{join}: {says} because {first.text}, but {against} because {_about(other_net, owner, other.text)}."
+            remedy = (
+                f"Correct the part, the divider or the name; or declare the rail under [rails] in levelcrossing.toml: "
+                f'"{owner}" = "{first.volts.nominal:.3g}".'
+            )
+            part = next((one.part for one in self.sources.conversions if one.output == owner), "")
+            self.remarks.append(RailRemark(kind="conflict", net=net, part=part, text=text, remedy=remedy, basis=first.basis))
+            return text
+        return ""
+
+    # ------------------------------------------------------------------------------------------------------- what is wrong
+
+    def _unknown(self, by_net: dict[str, Rail]) -> Iterator[tuple[str, str]]:
+        """Yield the nets without a voltage that supply integrated circuits, one for each group."""
+        for group, nets in self.groups.items():
+            if any(by_net[net].volts is not None for net in nets if net in by_net) or not any(net in by_net for net in nets):
+                continue
+            supplied = [pin for net in nets for pin in self.scene.supplies(net) if self._matters(pin.part)]
+            if not supplied or self._made_inside(nets):
+                continue
+            net = max(nets, key=lambda net: (len(self.scene.pins_on[net]), [-ord(letter) for letter in net]))
+            hints = [f"supplies {self._listed([f'{pin.part} ({pin.name or pin.number})' for pin in supplied])}"]
+            hints += [self.sources.made_by[n] for n in nets if n in self.sources.made_by]
+            feeds = sorted({f"{feed.part} from {feed.source}" for feed in self.feeds if self.joints.group(feed.target) == group and not self._mutual(feed)})
+            hints += [f"may be fed through {self._listed(feeds)}"] if feeds else []
+            yield net, f'under [rails] in levelcrossing.toml: "{net}" = "..."  # volts or a range; it ' + "; ".join(hints)
+
+    def _mutual(self, feed: Feed) -> bool:
+        return feed.kind in ("filter",) or self._volts(self.joints.group(feed.source)) is None
+
+    def _matters(self, reference: str) -> bool:
+        return reference not in self.scene.regulators and self.scene.kinds[reference] != "regulator"
+
+    def _made_inside(self, nets: Sequence[str]) -> bool:
+        """Tell a supply that one part makes for itself: only its own pins and capacitors stand on the net."""
+        scene = self.scene
+        others = {pin.part for net in nets for pin in scene.pins_on[net]}
+        active = {part for part in others if scene.active(part)}
+        passive = {scene.kinds[part] for part in others - active}
+        return len(active) == 1 and passive <= {"capacitor", "test-point", "ferrite", "link"}
+
+    @staticmethod
+    def _listed(words: Sequence[str]) -> str:
+        unique = list(dict.fromkeys(words))
+        return ", ".join(unique[:4]) + (f" and {len(unique) - 4} more" if len(unique) > 4 else "")
+
+    def _regulator_remarks(self, by_net: dict[str, Rail]) -> None:
+        for one in self.sources.conversions:
+            source, made = by_net.get(one.source), by_net.get(one.output)
+            if source is None or source.volts is None or source.volts.nominal <= 0:
+                continue
+            self._input_remark(one, source, source.volts)
+            if made is not None and made.volts is not None and made.volts.nominal > 0:
+                self._dropout_remark(one, source.volts, made, made.volts)
+
+    def _input_remark(self, one: Conversion, source: Rail, volts: Spread) -> None:
+        facts = self.scene.regulators[one.part]
+        most = facts.input_max_volts
+        if most is None or not units.exceeds(volts.nominal, most):
+            return
+        gets, bears = units.format_volts_apart(volts.nominal, most)
+        text = f"{self.scene.title(one.part)} bears {bears} at its input; {source.net} gives it {gets}."
+        self.remarks.append(
+            RailRemark(
+                kind="input-range",
+                net=source.net,
+                part=one.part,
+                text=text,
+                remedy=f"Take a regulator rated for {units.format_volts(volts.high)} or more.",
+                basis=Basis.weakest(source.basis, Basis.LIBRARY),
+            )
+        )
+
+    def _dropout_remark(self, one: Conversion, volts: Spread, made: Rail, output: Spread) -> None:
+        facts = self.scene.regulators[one.part]
+        if facts.dropout_volts is None or facts.through_inductor or facts.isolated:
+            return
+        if self.scene.named_pins(self.scene.parts[one.part], facts.switch_pins):
+            return
+        room = volts.nominal - output.nominal
+        if units.at_least(room, facts.dropout_volts):
+            return
+        text = (
+            f"{self.scene.title(one.part)} needs {units.format_volts(facts.dropout_volts)} between input and output at full load; "
+            f"{one.source} at {units.format_volts(volts.nominal)} leaves {units.format_volts(room)} above {units.format_volts(output.nominal)}."
+        )
+        self.remarks.append(
+            RailRemark(
+                kind="dropout",
+                net=made.net,
+                part=one.part,
+                text=text,
+                remedy="Check the load against the dropout curve, feed it from a higher rail, or take a regulator with less dropout.",
+                basis=Basis.weakest(made.basis, Basis.LIBRARY),
+            )
+        )
+
+
+def _contradict(first: Spread, other: Spread) -> bool:
+    """Tell whether two voltages cannot be one: usual values apart, and one of the ranges does not hold the other's."""
+    most = max(abs(first.nominal), abs(other.nominal))
+    apart = abs(first.nominal - other.nominal) / most if most else 0.0
+    overlap = first.low <= other.high and other.low <= first.high
+    held = first.low <= other.nominal <= first.high or other.low <= first.nominal <= other.high
+    return (apart > DISAGREE and not held) or (apart > NEAR and not overlap)
+
+
+def _about(net: str, owner: str, text: str) -> str:
+    return text if net == owner else text.replace("its name", f"the name {net}")
