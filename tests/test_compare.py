@@ -3,8 +3,12 @@
 from __future__ import annotations
 
 import argparse
+import contextlib
+import copy
 import json
+import random
 import subprocess
+from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
@@ -13,8 +17,10 @@ from kiln_logger import BAD, finding, row, side
 from written_boards import box_path, netlist, renamed, sheet
 
 from levelcrossing.compare import add_arguments, run, saved_form, stop_level
+from levelcrossing.differences import Side, compare_sides
 from levelcrossing.errors import InputError
 from levelcrossing.model import Outcome, Settings
+from levelcrossing.reports.changes import json_changes, text_changes
 from levelcrossing.reports.jsonform import json_report
 from levelcrossing.review import review
 
@@ -69,6 +75,64 @@ def test_what_is_no_saved_review_is_one_line(tmp_path: Path, text: str) -> None:
     with pytest.raises(InputError) as caught:
         saved_form(str(file))
     assert "\n" not in str(caught.value)
+
+
+def test_altered_saved_reviews_are_refused_or_compared(tmp_path: Path) -> None:
+    """Anything may stand in a file that somebody saved; nothing of it may be more than one line of complaint."""
+    rails = [{"net": "+5V", "low": 4.75, "nominal": 5.0, "high": 5.25}]
+    whole = json.loads(json.dumps({**BAD.form, "rails": rails}))
+    file = tmp_path / "saved.json"
+    words: list[Any] = [
+        None,
+        3,
+        -1,
+        1e308,
+        True,
+        "",
+        "damage",
+        "\x1b[31m",
+        [],
+        [1],
+        [None],
+        {},
+        {"a": 1},
+        float("nan"),
+        10**30,
+    ]
+    chance = random.Random(20260601)
+    compared = refused = 0
+    for _ in range(1500):
+        altered = copy.deepcopy(whole)
+        for _ in range(chance.randint(1, 3)):
+            *way, last = chance.choice(list(_ways(whole)))
+            with contextlib.suppress(KeyError, IndexError, TypeError):
+                here: Any = altered
+                for step in way:
+                    here = here[step]
+                if chance.random() < 0.2:
+                    del here[last]
+                else:
+                    here[last] = chance.choice(words)
+        file.write_text(json.dumps(altered), encoding="utf-8")
+        try:
+            form = saved_form(str(file))
+        except InputError as error:
+            refused += 1
+            assert str(error).isprintable()
+            continue
+        compared += 1
+        for one, other in ((Side(label="a", form=form), BAD), (BAD, Side(label="b", form=form))):
+            comparison = compare_sides(one, other)
+            assert all(line.isprintable() for line in text_changes([comparison], everything=True).split("\n"))
+            json.loads(json_changes([comparison]))
+    assert min(compared, refused) > 300, "both happen"
+
+
+def _ways(value: Any, before: tuple[Any, ...] = ()) -> Iterator[tuple[Any, ...]]:
+    steps = value.items() if isinstance(value, dict) else enumerate(value) if isinstance(value, list) else ()
+    for step, inner in steps:
+        yield (*before, step)
+        yield from _ways(inner, (*before, step))
 
 
 # ------------------------------------------------------------------------------------------------ five edits of a board

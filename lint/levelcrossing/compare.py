@@ -168,7 +168,7 @@ def saved_form(path: str) -> dict[str, Any]:
         if os.path.getsize(path) > _MOST_SAVED_BYTES:
             raise InputError("is too large for a saved review", file=path)
         with open(path, encoding="utf-8-sig") as stream:
-            content = json.load(stream)
+            content = json.load(stream, parse_constant=_refused)
     except OSError as error:
         raise InputError(f"cannot be read: {error.strerror or error}", file=path) from None
     except (ValueError, RecursionError):
@@ -183,6 +183,10 @@ def saved_form(path: str) -> dict[str, Any]:
     return dict(content)
 
 
+def _refused(word: str) -> Any:
+    raise ValueError(word)
+
+
 def _fault(content: Any) -> str:
     """Return what a saved review lacks; empty when it has all that a comparison reads."""
     if not isinstance(content, dict):
@@ -194,31 +198,34 @@ def _fault(content: Any) -> str:
             for end in (row["from"], row["to"]):
                 _texts(end, ("part", "pin", "name", "net", "rail"))
             _lists_text(row["link"])
-            _texts(row["shifter"], ("kind",))
+            _texts(row["shifter"], ("kind",), none=False)
             Outcome(row["verdict"])
             numbers = range(len(content["findings"]))
-            if not all(index in numbers for index in row.get("findings", ())):
+            if not all(type(index) is int and index in numbers for index in row.get("findings", ())):
                 return "a crossing names a finding that is not there"
         for finding in content["findings"]:
-            _texts(finding, ("rule", "text", "part", "pin", "net", "waived"))
+            _texts(finding, ("part", "pin", "net", "waived"))
+            _texts(finding, ("rule", "text"), none=False)
             optional = {"fingerprint": "", "condition": "", "remedy": ""}
             _texts(optional | finding, tuple(optional))
             _lists_text(finding.get("also", []))
+            if type(finding.get("crossing")) not in (int, type(None)):
+                return "a finding names a crossing by something else than its number"
             Outcome(finding["outcome"])
         for rail in content["rails"]:
-            _texts(rail, ("net",))
-            for key in ("low", "nominal", "high"):
-                if rail[key] is not None:
-                    float(rail[key] + 0.0)
+            _texts(rail, ("net",), none=False)
+            volts = [rail[key] for key in ("low", "nominal", "high")]
+            if volts != [None] * 3 and not all(type(value) in (int, float) for value in volts):
+                return "a rail has no proper voltage"
         for pin in content["coverage"]["not_judged"]:
-            _texts(pin, ("part", "pin", "why"))
+            _texts(pin, ("part", "pin", "why"), none=False)
         int(content["coverage"]["judged"] + content["coverage"]["signal_pins"])
         return ""
     return "a key is missing or of the wrong kind"
 
 
-def _texts(table: dict[str, Any], keys: Sequence[str]) -> None:
-    if not all(table[key] is None or isinstance(table[key], str) for key in keys):
+def _texts(table: dict[str, Any], keys: Sequence[str], *, none: bool = True) -> None:
+    if not all(isinstance(table[key], str) or (none and table[key] is None) for key in keys):
         raise TypeError
 
 

@@ -30,13 +30,20 @@ def _at(row: Mapping[str, Any] | None, *keys: str) -> float | None:
     value: Any = row
     for key in keys:
         value = value.get(key) if isinstance(value, Mapping) else None
-    return float(value) if isinstance(value, int | float) and not isinstance(value, bool) else None
+    if type(value) not in (int, float) or abs(value) > 1e30:
+        return None
+    return float(value) if math.isfinite(value) else None
 
 
 def _most(row: Mapping[str, Any] | None, what: str) -> float | None:
     """Return the greatest of a spread over all states."""
-    states = (row or {}).get("states") or {}
-    found = [_at(state, what, "max") for state in states.values() if state.get("solved", True)]
+    states = (row or {}).get("states")
+    solved = [
+        state
+        for state in (states.values() if isinstance(states, Mapping) else ())
+        if isinstance(state, Mapping) and state.get("solved", True)
+    ]
+    found = [_at(state, what, "max") for state in solved]
     known = [value for value in found if value is not None]
     return max(known) if known else None
 

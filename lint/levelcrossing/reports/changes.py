@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from typing import Any
 
 from levelcrossing import __version__
@@ -184,7 +184,7 @@ def _form(comparison: Comparison) -> dict[str, Any]:
                     }
                     for figure in change.figures
                 ],
-                "findings": [dict(finding) for finding in change.findings],
+                "findings": [_finding(finding) for finding in change.findings],
                 "notes": list(change.notes),
             }
             for change in comparison.changes
@@ -195,3 +195,11 @@ def _form(comparison: Comparison) -> dict[str, Any]:
         "coverage": list(comparison.coverage),
         "remarks": list(comparison.remarks),
     }
+
+
+def _finding(finding: Mapping[str, Any]) -> dict[str, Any]:
+    words = ("rule", "outcome", "condition", "part", "pin", "net", "text", "remedy", "waived", "fingerprint")
+    at = finding.get("at")
+    known = isinstance(at, Mapping) and isinstance(at.get("file"), str) and isinstance(at.get("line"), int)
+    place = {"file": at["file"], "line": at["line"]} if isinstance(at, Mapping) and known else None
+    return {**{word: finding.get(word) for word in words}, "also": list(finding.get("also", ())), "at": place}
