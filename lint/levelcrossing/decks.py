@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Protocol
 
 from levelcrossing.network import GROUND, Branch, Network
@@ -29,12 +29,15 @@ class Step:
         Length of the analysis [s].
     edge_s : float
         Length of the linear ramp [s].
+    points : mapping from node to pairs of time and volts
+        Fixed nodes that follow a waveform of their own, linear between its points [s, V].
     """
 
     before: Mapping[str, float]
     after: Mapping[str, float]
     until_s: float
     edge_s: float = 1e-9
+    points: Mapping[str, tuple[tuple[float, float], ...]] = field(default_factory=dict)
 
 
 class _Lookup(Protocol):
@@ -195,7 +198,7 @@ def deck(
     lines += [f"*   {safe:<24} {_plain(node)}" for node, safe in names.nodes.items() if node != GROUND]
     lines += ["*", f".options temp=27 tnom=27 gmin=1e-12 abstol=1e-13 vntol=1e-8 chgtol=1e-18 reltol={tolerance:g}"]
     if step:
-        # The trapezoidal rule rings where a junction snaps off; two of its default error allowances resolve the edges.
+        # A seventh of the usual allowance for the error of a step: the edges are what we are after.
         lines.append(".options method=trap trtol=1")
     lines.append("* supplies and drivers")
     for node, volts in sorted(one.fixed.items()):
@@ -205,7 +208,9 @@ def deck(
         before = float(step.before.get(node, volts)) if step else float(volts)
         after = float(step.after.get(node, volts)) if step else float(volts)
         wave = ""
-        if step and before != after:
+        if step and node in step.points:
+            wave = f" PWL({' '.join(f'{_number(t)} {_number(v)}' for t, v in step.points[node])})"
+        elif step and before != after:
             wave = f" PWL(0 {_number(before)} {_number(step.edge_s)} {_number(after)})"
         lines.append(f"V{safe} {safe} 0 DC {_number(before)}{wave}")
     for branch in one.branches:

@@ -524,7 +524,7 @@ def step_response(
     edge_s : float
         Length of the ramp [s].
     until_s : float, optional
-        Give up after this time [s]; from the circuit's time constants when missing.
+        Give up after this time [s]; ten thousand time constants of the circuit when missing.
     error_volts : float
         Local error allowed per step [V].
     start : DcSolution, optional
@@ -541,7 +541,8 @@ def step_response(
     if until_s is not None:
         span = np.full(batch, until_s)
     else:
-        span = edge_s + 40.0 * np.maximum(pace_s(network, first, final), edge_s)
+        # Members end when they have settled; time constants at the ends say little of what lies between them.
+        span = edge_s + 1e4 * np.maximum(pace_s(network, first, final), edge_s)
     breaks = np.stack([np.zeros(batch), np.full(batch, edge_s), np.maximum(span, 1.01 * edge_s)])
     low, high = stage(network, arrays, before), stage(network, arrays, after)
     goal = final._state[:n]
