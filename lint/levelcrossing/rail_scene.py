@@ -1,4 +1,4 @@
-"""The board as the tracing of rails sees it: kinds of parts, what stands on each net, grounds, decoupling, supply pins."""
+"""The board as the tracing of rails sees it: kinds of parts, what stands on each net, grounds, supply pins."""
 
 from __future__ import annotations
 
@@ -8,7 +8,7 @@ from collections.abc import Iterator
 from functools import cached_property
 
 from levelcrossing import partkinds, units
-from levelcrossing.model import Board, Part, Pin, RegulatorFacts, Settings, Spread
+from levelcrossing.model import Board, ControlFacts, Part, Pin, RegulatorFacts, Settings, Spread
 from levelcrossing.pinnames import looks_like_supply, pin_words
 from levelcrossing.tradebook import Tradebook
 
@@ -19,12 +19,14 @@ _GROUND_PIN = re.compile(r"[A-Z0-9]{0,5}_?GND(_?[A-Z0-9.]+)?|VSS[A-Z0-9_.]*|GNDP
 _PAD_PIN = re.compile(r"EP(AD)?|PAD|EXP(OSED)?.?PAD|THERMAL.*|TAB|MP\d*|SH\d*|SHIELD|SHELL", re.IGNORECASE)
 # Pins that look like supply pins and are none: references, pumps, sense, switch nodes, thresholds (naming habits).
 _NO_SUPPLY = re.compile(
-    r"[AV]?REF.*|V?CAP.*|V?BST\d?|V?BOOT\d?|.*SENSE?.*|.*SNS.*|V?FB\d?|VCOMP?|VCP|VPUMP|SW\d?|LX\d?|PH(ASE)?\d?|EN\d?|PG.*|.*GOOD|"
-    r"V(OS|O?SET|TH|ADJ|TT?REF|SEL|OTP|COM)|VO?SNS.*|BYP.*|NR|SS",
+    r".*[AV]REF.*|REF\w*|V?CAP.*|V?BST\d?|V?BOOT\d?|.*SENSE?.*|.*SNS.*|V?FB\d?|VCOMP?|VCP|VPUMP|(.*_)?(SW|LX|PH|PHASE)\d?|"
+    r"(.*_)?EN\d?|PG.*|.*GOOD|V(OS|O?SET|TH|ADJ|TT?REF|SEL|OTP|COM)|BYP.*|NR|SS|(.*_)?(DET|MON|OK|VALID)|R?ZQ\d?|"
+    r"R?BIAS|REXT|[RI]SET|NC\d*|N/?C|DNU|RFU|V[PN]",
     re.IGNORECASE,
 )
-_OUTPUT_PIN = re.compile(r"V?_?OUT\d?|VO|.*_?OUT|V?REG_?OUT.*|VREG\d?", re.IGNORECASE)
-_SWITCH_PIN = re.compile(r"(SW|LX|PH|PHASE|SWN|VSW|L)\d?[A-Z]?", re.IGNORECASE)
+_OUTPUT_PIN = re.compile(r"V?_?OUT\d?|VO(_\w+)?|.*_?OUT|V?REG_?OUT.*|VREG\d?", re.IGNORECASE)
+_SWITCH_PIN = re.compile(r"(.*_)?(SW|LX|PH|PHASE|SWN|VSW|SWITCH)\d?[A-Z]?|L[12]?", re.IGNORECASE)
+_GROUND_WORD = re.compile(r"[A-Z]?GND\d?|VSS[AD]?", re.IGNORECASE)
 ACTIVE = ("ic", "regulator")
 
 
@@ -102,6 +104,8 @@ class Scene:
             return ""
         facts = self.book.part(self.parts[pin.part])
         if facts is not None:
+            if facts.translator is not None and self._reference_pin(pin, facts.translator.controls):
+                return ""
             direction = facts.pin(pin).direction
             if direction is not None:
                 return {"supply": "in", "supply-out": "out", "ground": "ground"}.get(direction, "")
@@ -119,8 +123,24 @@ class Scene:
             return "out"
         return "in"
 
+    @staticmethod
+    def _reference_pin(pin: Pin, controls: tuple[ControlFacts, ...]) -> bool:
+        """Tell the bias pin of a pass translator; a resistor of 200 kilohm feeds it, which makes no rail."""
+        return any(
+            control.use == "reference" and control.pins and re.fullmatch(control.pins, word, re.IGNORECASE)
+            for control in controls
+            for word in (pin.name, *plain_words(pin))
+        )
+
+    def converter(self, reference: str) -> bool:
+        """Tell whether a part makes supplies: a regulator known or named so, or one with a switch node."""
+        if reference in self.regulators or self.kinds[reference] == "regulator":
+            return True
+        part = self.parts[reference]
+        return self.active(reference) and len(part.pins) <= 60 and any(self.switching(pin.net) for pin in part.pins if pin.net)
+
     def named_pins(self, part: Part, pattern: str) -> list[Pin]:
-        """Return the connected pins of a part whose name matches a pattern as a whole, or one of its alternates does."""
+        """Return the connected pins of a part whose name, or one of its alternates, matches a pattern as a whole."""
         if not pattern:
             return []
         wanted = re.compile(pattern, re.IGNORECASE)
@@ -155,6 +175,8 @@ class Scene:
 
     def switching(self, net: str) -> bool:
         """Tell whether a net is the switch node of a converter: no rail, although coils lead to it."""
+        if self.decoupled(net):
+            return False
         for pin in self.pins_on.get(net, ()):
             if not self.active(pin.part):
                 continue
@@ -189,7 +211,7 @@ class Scene:
         for net in sorted(self.pins_on):
             if net in declared:
                 continue
-            if self.book.looks_like_ground(net) and not self.book.looks_like_signal(net):
+            if self._named_ground(net):
                 grounds[net] = "it is named like ground"
             elif self._grounded_pins(net):
                 grounds[net] = "ground pins stand on it"
@@ -204,8 +226,18 @@ class Scene:
                         queue.append(other)
         return grounds
 
+    def _named_ground(self, net: str) -> bool:
+        """Tell a ground by its name; ``GND_SENSE`` is none, ``PSADC_AGND`` is one when ground pins stand on it."""
+        if self.book.looks_like_signal(net):
+            return False
+        if self.book.looks_like_ground(net):
+            return True
+        words = re.split(r"[_\-. ]", net.rpartition("/")[2])
+        named = any(_GROUND_WORD.fullmatch(word) for word in words) and not net.startswith(("Net-(", "unconnected-("))
+        return named and self._like_ground(net)
+
     def _grounded_pins(self, net: str) -> bool:
-        """Tell a ground by its pins: two parts at least have a ground pin on it, and nothing there is fed or drives."""
+        """Tell a ground by its pins: those of two parts at least stand on it, and nothing there is fed or drives."""
         grounded: set[str] = set()
         for pin in self.pins_on[net]:
             if not self.active(pin.part):

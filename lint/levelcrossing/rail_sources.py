@@ -15,9 +15,8 @@ from collections.abc import Iterator
 from dataclasses import dataclass, replace
 
 from levelcrossing import partkinds, units
-from levelcrossing.diodepins import diode_pairs
-from levelcrossing.model import Basis, Evidence, Part, Pin, RegulatorFacts, Settings, Spread
-from levelcrossing.rail_links import Joints, across_coil
+from levelcrossing.model import Basis, Evidence, Part, Pin, Provenance, RegulatorFacts, Settings, Spread
+from levelcrossing.rail_links import Joints, across_coil, diode_ways
 from levelcrossing.rail_scene import Scene, plain_words
 from levelcrossing.symbolfields import settings_from_fields
 
@@ -27,7 +26,11 @@ ALKALINE_CELL = Spread(low=0.9, nominal=1.5, high=1.65)
 
 _COIN = re.compile(r"\b(CR|BR|ML|MS|VL)\d{3,4}|COIN|BUTTON.?CELL", re.IGNORECASE)
 _LITHIUM = re.compile(r"LI-?(ION|PO|POLY)|LITHIUM|18650|14500|21700|16340|LIPO|LIFEPO", re.IGNORECASE)
-_CHARGER = re.compile(r"^(TP405\d|TP4056|TP5100|BL405\d|LTC405\d|MCP738\d\d|BQ2[1-5]\d{3}|IP530\d|CN3\d{3}|MAX15[15]\d|STC4054|ME4054)", re.IGNORECASE)
+_CHARGER = re.compile(
+    r"^(TP405\d|TP5100|BL405\d|LTC405\d|MCP738\d\d|BQ2[1-5]\d{3}|IP530\d|CN3\d{3}|MAX15[15]\d|STC4054|ME4054)", re.IGNORECASE
+)
+_VOLTS_WORD = re.compile(r"\dV|V\d|VBUS|VUSB|\d\.\d", re.IGNORECASE)
+_BARE_POINT = re.compile(r"(?<!\d)\d_\d(?!\d)")
 _BATTERY_PIN = re.compile(r"V?_?BATT?[+]?|BATT?_?\+|B\+", re.IGNORECASE)
 _GENERIC_SWITCH = r"SW\d?|LX\d?|PH(ASE)?|VSW"
 _GENERIC_FEEDBACK = r"V?FB\d?|ADJ|FEEDBACK|VSENSE|VOSNS"
@@ -162,8 +165,9 @@ class Sources:
         groups = {self.joints.group(net) for net in inputs}
         beyond: list[str] = []
         for net in sorted(switch_nets):
-            beyond += [other for other in across_coil(scene, net) if self.joints.group(other) not in groups]
-            if not beyond:  # the coil comes from the input: a step-up, the diode leads on
+            coils = across_coil(scene, net)
+            beyond += [other for other in coils if self.joints.group(other) not in groups]
+            if coils and not beyond:  # the coil comes from the input: a step-up, the diode leads on
                 beyond += _after_diode(scene, net)
         if facts.through_inductor and beyond:
             return beyond[0]
@@ -280,9 +284,9 @@ class Sources:
     def _from_names(self) -> None:
         scene = self.scene
         for net in sorted(scene.pins_on):
-            if net in scene.grounds or scene.book.looks_like_signal(net):
+            if net in scene.grounds:
                 continue
-            known = scene.book.rail_volts(net)
+            known = self._named_volts(net)
             if known is None or not self._rail_like(net):
                 continue
             volts, source = known
@@ -291,6 +295,27 @@ class Sources:
             if ranged:
                 text = f"it is named like {source.row}: {units.format_volts(volts.low)} to {units.format_volts(volts.high)}"
             self.add(net, "name", scene.tolerant(volts), Basis.TRACED, text, ranged=ranged)
+
+    def _named_volts(self, net: str) -> tuple[Spread, Provenance] | None:
+        """Return the voltage that a net's name carries, doubtful names left out.
+
+        Notes
+        -----
+        ``5V_VIN`` is the input of the 5 V regulator. The underscore of ``VDD1_0`` is a point only on a net that reaches
+        further than one part. ``P3V3_CLK`` is a signal, unless several supply pins and a capacitor stand on it.
+        """
+        scene = self.scene
+        last = net.rpartition("/")[2]
+        if re.search(r"[_-]V?IN$", last, re.IGNORECASE) and not re.match(r"\+", last):
+            return None
+        if scene.book.looks_like_signal(net):
+            head = re.match(r"[+]?[A-Z]{0,4}\d{1,2}V\d{0,2}(?=_)", last, re.IGNORECASE)
+            supplied = {pin.part for pin in scene.supplies(net)}
+            return scene.book.rail_volts(head.group(0)) if head and len(supplied) >= 2 and scene.decoupled(net) else None
+        known = scene.book.rail_volts(net)
+        if known is not None and _BARE_POINT.search(last) and len({p.part for p in scene.pins_on[net] if scene.active(p.part)}) < 2:
+            return None
+        return known
 
     def _rail_like(self, net: str) -> bool:
         """Tell whether a net named like a rail also keeps the company of one; ``5V_LED`` on a port pin does not."""
@@ -315,6 +340,7 @@ class Sources:
         scene = self.scene
         connector = scene.kinds[part.reference] == "connector"
         facts = None if connector else scene.book.part(part)
+        told: dict[tuple[str, str], list[Pin]] = defaultdict(list)
         for pin in part.pins:
             if not pin.net or pin.unused or pin.net in scene.grounds:
                 continue
@@ -322,15 +348,20 @@ class Sources:
                 continue
             if facts is not None and self._from_facts(part, pin, facts.supplies):
                 continue
-            word = next((word for word in plain_words(pin) if re.search(r"\dV|V\d|VBUS|VUSB|\d\.\d", word, re.IGNORECASE)), "")
+            word = next((word for word in plain_words(pin) if _VOLTS_WORD.search(word)), "")
             if not word or scene.book.looks_like_signal(word) or re.match(r"[DAP]\d", word):
                 continue
+            signal = connector and pin.kind in ("input", "bidirectional") and not scene.keeps_company(pin.net)
+            if not signal and scene.book.rail_volts(word) is not None:
+                told[pin.net, word].append(pin)
+        for (net, word), pins in told.items():
             known = scene.book.rail_volts(word)
-            if known is None or (connector and pin.kind in ("input", "bidirectional") and not scene.keeps_company(pin.net)):
-                continue
+            assert known is not None
             volts = known[0]
-            text = f"pin {pin.number} of {scene.title(part.reference)} is named {pin.name}"
-            self.add(pin.net, "connector", scene.tolerant(volts), Basis.TRACED, text, ranged=volts.low < volts.high)
+            numbers = units_listed([pin.number for pin in pins])
+            text = f"pin{'s' if len(pins) > 1 else ''} {numbers} of {scene.title(part.reference)} "
+            text += f"{'are' if len(pins) > 1 else 'is'} named {pins[0].name}"
+            self.add(net, "connector", scene.tolerant(volts), Basis.TRACED, text, ranged=volts.low < volts.high)
 
     def _from_facts(self, part: Part, pin: Pin, supplies: tuple[object, ...]) -> bool:
         """Take the voltage that the trade data gives for an output pin of a module; tell whether it did."""
@@ -375,13 +406,24 @@ class Sources:
         for net in nets:
             for pin in self.scene.supplies(net):
                 for word in plain_words(pin):
-                    known = self.scene.book.rail_volts(word) if re.search(r"\d", word) else None
-                    if known is not None and known[0].low == known[0].high and not self.scene.book.looks_like_signal(word):
-                        found.append((known[0], f"pin {pin.number} of {self.scene.title(pin.part)} is named {pin.name}"))
+                    bus = re.fullmatch(r"V_?BUS|VUSB|USB_?VBUS", word, re.IGNORECASE)
+                    plain = re.search(r"\d", word) and not _BARE_POINT.search(word) and not re.search(r"_\d+_\d", word)
+                    if not (bus or plain) or self.scene.book.looks_like_signal(word):
+                        continue
+                    known = self.scene.book.rail_volts(word)
+                    if known is not None and (bus or known[0].low == known[0].high):
+                        title = self.scene.title(pin.part)
+                        found.append((known[0], f"pin {pin.number} of {title} is named {pin.name}"))
         if not found or any(abs(volts.nominal - found[0][0].nominal) > 0.01 for volts, _ in found):
             return None
         volts = self.scene.tolerant(found[0][0])
         return Evidence(kind="use", volts=volts, basis=Basis.ASSUMED, text=f"{found[0][1]}, nothing else tells")
+
+
+def units_listed(words: list[str], most: int = 6) -> str:
+    """Return words as a list for the user, in natural order, cut after ``most``."""
+    ordered = sorted(dict.fromkeys(words), key=units.natural_key)
+    return ", ".join(ordered[:most]) + (f" and {len(ordered) - most} more" if len(ordered) > most else "")
 
 
 @dataclass(frozen=True, slots=True)
@@ -415,7 +457,7 @@ def _after_diode(scene: Scene, net: str) -> list[str]:
     found = []
     for pin in scene.pins_on.get(net, ()):
         if scene.kinds[pin.part] == "diode":
-            found += [cathode.net for anode, cathode in diode_pairs(scene.parts[pin.part]) if anode.net == net]
+            found += [cathode.net for anode, cathode in diode_ways(scene.parts[pin.part]) if anode.net == net]
     return [other for other in found if other and other not in scene.grounds]
 
 

@@ -13,12 +13,24 @@ from dataclasses import replace
 
 from levelcrossing import units
 from levelcrossing.model import Basis, Board, Evidence, Rail, RailRemark, Rails, Settings, Spread
-from levelcrossing.rail_links import Feed, Joints, find_feeds
+from levelcrossing.rail_links import Feed, Joints, across_coil, find_feeds
 from levelcrossing.rail_scene import Scene
 from levelcrossing.rail_sources import Conversion, Sources
 from levelcrossing.tradebook import Tradebook
 
-STRENGTH = ("ground", "settings", "field", "regulator", "feedback", "name", "connector", "upstream", "diode", "battery", "use")
+STRENGTH = (
+    "ground",
+    "settings",
+    "field",
+    "regulator",
+    "feedback",
+    "name",
+    "connector",
+    "upstream",
+    "diode",
+    "battery",
+    "use",
+)
 """Kinds of evidence, strongest first."""
 
 DISAGREE = 0.06
@@ -89,7 +101,10 @@ class _Tracing:
     # -------------------------------------------------------------------------------------------------------- own voltage
 
     def _ordered(self, found: Sequence[tuple[str, Evidence]]) -> list[tuple[str, Evidence]]:
-        """Sort evidence by strength; a stated range goes before a name that only states a point it contains."""
+        """Sort evidence by strength; what states a range goes before a name that agrees and states less.
+
+        ``+5V`` on a USB connector is 4.4 to 5.25 V; ``VBAT`` on a coin cell is that cell's voltage.
+        """
 
         def key(entry: tuple[str, Evidence]) -> tuple[object, ...]:
             net, item = entry
@@ -98,12 +113,17 @@ class _Tracing:
 
         ordered = sorted(found, key=key)
         first_net, first = ordered[0]
-        if first.kind == "name" and (first_net, first.text) not in self.sources.ranged and first.volts is not None:
-            for entry in ordered[1:]:
-                volts = entry[1].volts
-                stated = (entry[0], entry[1].text) in self.sources.ranged and entry[1].kind in ("name", "connector")
-                if stated and volts is not None and abs(volts.nominal - first.volts.nominal) <= NEAR * first.volts.nominal:
-                    return [entry, *(other for other in ordered if other is not entry)]
+        if first.kind != "name" or first.volts is None:
+            return ordered
+        point = (first_net, first.text) not in self.sources.ranged
+        for entry in ordered[1:]:
+            volts = entry[1].volts
+            if volts is None or (entry[0], entry[1].text) not in self.sources.ranged:
+                continue
+            near = abs(volts.nominal - first.volts.nominal) <= NEAR * abs(first.volts.nominal)
+            cell = entry[1].kind == "battery" and first.volts.low <= volts.low and volts.high <= first.volts.high
+            if cell or (point and near and entry[1].kind in ("name", "connector")):
+                return [entry, *(other for other in ordered if other is not entry)]
         return ordered
 
     def _volts(self, group: str) -> Spread | None:
@@ -154,7 +174,7 @@ class _Tracing:
                 self.origin[group] = sources
 
     def _combined(self, group: str, feeds: Sequence[Feed]) -> tuple[Evidence, tuple[str, ...]] | None:
-        """Combine all feeds of a group: through a resistor there is one voltage, through diodes and choices any of them."""
+        """Combine all feeds of a group: any of them may hold it, so its range spans them all."""
         ways: list[tuple[Feed, Spread]] = []
         for feed in feeds:
             source = self.joints.group(feed.source)
@@ -163,11 +183,7 @@ class _Tracing:
                 continue
             if feed.kind == "filter" and not self._filtered(self.groups[group]):
                 continue
-            less = Spread(
-                low=volts.low - feed.drop.high,
-                nominal=volts.nominal - feed.drop.nominal,
-                high=volts.high - feed.drop.low,
-            )
+            less = _less(volts, feed.drop)
             if less.nominal > 0.3:
                 ways.append((feed, less))
         if not ways:
@@ -194,9 +210,25 @@ class _Tracing:
         return seen
 
     def _filtered(self, nets: Sequence[str]) -> bool:
-        """Tell whether a group behind a larger resistor is a filtered supply: a capacitor, and supply pins only."""
+        """Tell whether a group behind a larger resistor is a filtered supply: nothing but supply pins stand on it."""
         scene = self.scene
-        return any(scene.decoupled(net) for net in nets) and not any(next(scene.signal_pins(net), None) for net in nets)
+        return not any(next(scene.signal_pins(net), None) for net in nets)
+
+    def _also_fed(self, group: str) -> Iterator[tuple[str, Evidence]]:
+        """Yield what feeds a group that has only its name: worth knowing, though the name decides."""
+        known = self.known.get(group, ())
+        if not known or any(item.kind not in ("name", "use") for _, item in known):
+            return
+        for feed in self.feeds:
+            source = self.joints.group(feed.source)
+            volts = self._volts(source)
+            if self.joints.group(feed.target) != group or volts is None or volts.nominal <= 0.5 or feed.kind in ("filter", "choice"):
+                continue
+            strong = any(item.kind in ("regulator", "feedback", "connector", "battery") for _, item in self.known.get(source, ()))
+            if feed.kind == "diode" or strong:
+                kind = "diode" if feed.kind == "diode" else "upstream"
+                text = f"fed from {feed.source} {feed.words}"
+                yield feed.target, Evidence(kind=kind, volts=_less(volts, feed.drop), basis=Basis.TRACED, text=text)
 
     # ------------------------------------------------------------------------------------------------------------ deciding
 
@@ -215,14 +247,15 @@ class _Tracing:
 
     def _rails_of(self, group: str, nets: Sequence[str]) -> Iterator[tuple[str, Rail]]:
         found = self.known.get(group) or self.fed.get(group) or []
-        if not found and not any(self.scene.supplies(net) or self.scene.supplies(net, "out") for net in nets):
+        if not found and not self._powered_by(nets):
             return
         domain = self._domain(group, nets, found)
         disagreement = self._disagreement(found) if found else ""
+        found = [*found, *self._also_fed(group)]
         for net in nets:
             if not self._belongs(net, nets, found):
                 continue
-            evidence = tuple(self._as_seen(net, owner, item) for owner, item in found)
+            evidence = tuple(dict.fromkeys(self._as_seen(net, owner, item) for owner, item in found))
             yield net, Rail(
                 net=net,
                 volts=evidence[0].volts if evidence else None,
@@ -233,6 +266,24 @@ class _Tracing:
                 load_farads=self.scene.farads.get(net, 0.0),
                 fed_by=self._fed_by(group),
             )
+
+    def _powered_by(self, nets: Sequence[str]) -> bool:
+        """Tell whether a group without a voltage is a supply all the same; a bias pin on a pull-up alone is none."""
+        scene = self.scene
+        pins = [pin for net in nets for pin in scene.pins_on[net]]
+        if len(pins) < 2 or not any(scene.role(pin) in ("in", "out") for pin in pins):
+            return False
+        return self._sources_on(nets) or not any(scene.kinds[pin.part].startswith("resistor") for pin in pins)
+
+    def _sources_on(self, nets: Sequence[str]) -> bool:
+        """Tell whether anything on a group could feed it: a connector, a coil, a way from elsewhere, a second part."""
+        scene = self.scene
+        pins = [pin for net in nets for pin in scene.pins_on[net]]
+        if len({pin.part for pin in pins if scene.active(pin.part)}) > 1:
+            return True
+        if any(scene.kinds[pin.part] in ("connector", "inductor", "transistor", "diode", "battery", "switch") for pin in pins):
+            return True
+        return any(self.joints.group(feed.target) == self.joints.group(nets[0]) for feed in self.feeds)
 
     def _belongs(self, net: str, nets: Sequence[str], found: Sequence[tuple[str, Evidence]]) -> bool:
         """Tell whether a net of a group is a rail itself; a mode pin strapped to a supply by 0 ohm is none."""
@@ -302,28 +353,36 @@ class _Tracing:
             if any(by_net[net].volts is not None for net in nets if net in by_net) or not any(net in by_net for net in nets):
                 continue
             supplied = [pin for net in nets for pin in self.scene.supplies(net) if self._matters(pin.part)]
-            if not supplied or self._made_inside(nets):
+            if not supplied or not self._sources_on(nets):
                 continue
             net = max(nets, key=lambda net: (len(self.scene.pins_on[net]), [-ord(letter) for letter in net]))
             hints = [f"supplies {self._listed([f'{pin.part} ({pin.name or pin.number})' for pin in supplied])}"]
-            hints += [self.sources.made_by[n] for n in nets if n in self.sources.made_by]
-            feeds = sorted({f"{feed.part} from {feed.source}" for feed in self.feeds if self.joints.group(feed.target) == group and not self._mutual(feed)})
-            hints += [f"may be fed through {self._listed(feeds)}"] if feeds else []
+            hints += list(self._makers(nets))
             yield net, f'under [rails] in levelcrossing.toml: "{net}" = "..."  # volts or a range; it ' + "; ".join(hints)
 
-    def _mutual(self, feed: Feed) -> bool:
-        return feed.kind in ("filter",) or self._volts(self.joints.group(feed.source)) is None
+    def _makers(self, nets: Sequence[str]) -> Iterator[str]:
+        """Yield what makes or feeds a supply without a voltage, as far as it shows."""
+        scene = self.scene
+        told = [self.sources.made_by[net] for net in nets if net in self.sources.made_by]
+        if told:
+            yield told[0]
+            return
+        for net in nets:
+            for other in across_coil(scene, net):
+                makers = sorted({pin.part for pin in scene.pins_on[other] if scene.active(pin.part) and scene.switching(other)})
+                if makers:
+                    yield f"{scene.title(makers[0])} makes it, whose output the trade data does not tell"
+                    return
+            out = [pin for pin in scene.supplies(net, "out") if scene.converter(pin.part)]
+            if out:
+                yield f"{scene.title(out[0].part)} makes it at pin {out[0].name}, whose output the trade data does not tell"
+                return
+        feeds = sorted({f"{feed.part} from {feed.source}" for feed in self.feeds if feed.target in nets})
+        if feeds:
+            yield f"may be fed through {self._listed(feeds)}"
 
     def _matters(self, reference: str) -> bool:
-        return reference not in self.scene.regulators and self.scene.kinds[reference] != "regulator"
-
-    def _made_inside(self, nets: Sequence[str]) -> bool:
-        """Tell a supply that one part makes for itself: only its own pins and capacitors stand on the net."""
-        scene = self.scene
-        others = {pin.part for net in nets for pin in scene.pins_on[net]}
-        active = {part for part in others if scene.active(part)}
-        passive = {scene.kinds[part] for part in others - active}
-        return len(active) == 1 and passive <= {"capacitor", "test-point", "ferrite", "link"}
+        return not self.scene.converter(reference)
 
     @staticmethod
     def _listed(words: Sequence[str]) -> str:
@@ -389,6 +448,11 @@ def _contradict(first: Spread, other: Spread) -> bool:
     overlap = first.low <= other.high and other.low <= first.high
     held = first.low <= other.nominal <= first.high or other.low <= first.nominal <= other.high
     return (apart > DISAGREE and not held) or (apart > NEAR and not overlap)
+
+
+def _less(volts: Spread, drop: Spread) -> Spread:
+    """Return a voltage less a drop [V]."""
+    return Spread(low=volts.low - drop.high, nominal=volts.nominal - drop.nominal, high=volts.high - drop.low)
 
 
 def _about(net: str, owner: str, text: str) -> str:
