@@ -15,6 +15,7 @@ import numpy as np
 import numpy.typing as npt
 
 from levelcrossing.devices import THERMAL_VOLTS
+from levelcrossing.elimination import Elimination, plan_elimination
 from levelcrossing.network import GROUND, Branch, Network, Value, Vector, common_values
 
 Flags = npt.NDArray[np.bool_]
@@ -36,7 +37,9 @@ class Arrays:
     unknown : int
         How many of them are unknown.
     base : ndarray
-        Constant part of the conductance matrix, ``(unknown * unknown, batch or 1)``.
+        Constant part of the conductance matrix, ``(slots, batch or 1)``; slots as ``elimination`` has them.
+    elimination : Elimination
+        How systems with this matrix are solved.
     """
 
     names: tuple[str, ...]
@@ -75,6 +78,7 @@ class Arrays:
     into: Vector
     spread: Vector
     base: Vector
+    elimination: Elimination
 
     @property
     def linear(self) -> bool:
@@ -176,10 +180,10 @@ class Arrays:
         return flows, slopes, amps, siemens
 
     def matrix(self, slopes: Vector) -> Vector:
-        """Return the conductance matrix [S], shape ``(unknown, unknown, batch)``."""
-        flat = self.spread @ slopes
-        flat += self.base
-        return flat.reshape(self.unknown, self.unknown, slopes.shape[1])
+        """Return the entries of the conductance matrix [S], shape ``(slots, batch)``."""
+        entries = self.spread @ slopes
+        entries += self.base
+        return entries
 
     def limit(self, new: Vector, old: Vector) -> Vector:
         """Return junction voltages [V] for the next linearisation: no step may outrun the exponential."""
@@ -413,6 +417,7 @@ def lay_out(network: Network) -> tuple[Arrays, tuple[frozenset[str], ...], Mappi
         for p, q in ((d, s), (s, d)):
             base[p, p] += GMIN
             base[p, q] -= GMIN
+    elimination = plan_elimination((base[:n, :n] != 0).any(axis=2) | (spread[:n, :n] != 0).any(axis=2))
     isat, nvt = _values(plan.jun, 2), _values(plan.jun, 3)
     arrays = Arrays(
         names=plan.names,
@@ -442,7 +447,8 @@ def lay_out(network: Network) -> tuple[Arrays, tuple[frozenset[str], ...], Mappi
         cap_q=_column(plan.cap, 1),
         cap_f=_values(plan.cap, 2),
         into=into,
-        spread=np.ascontiguousarray(spread[:n, :n].reshape(n * n, spread.shape[2])),
-        base=np.ascontiguousarray(base[:n, :n].reshape(n * n, width)),
+        spread=np.ascontiguousarray(spread[:n, :n].reshape(n * n, spread.shape[2])[elimination.flat]),
+        base=np.ascontiguousarray(base[:n, :n].reshape(n * n, width)[elimination.flat]),
+        elimination=elimination,
     )
     return arrays, tuple(frozenset(plan.names[i] for i in group) for group in loose), plan.parts

@@ -28,62 +28,6 @@ _RESIDUAL_FRACTION, _RESIDUAL_AMPS = 1e-6, 1e-12
 _MOST_AMPS = 1e3
 _ITERATIONS = 60
 _LONGEST = 300
-# Below this many members per unknown a library call per member is faster than elimination across the batch.
-_ACROSS = 12
-
-
-# ------------------------------------------------------------------------------------------------------- linear algebra
-
-
-def solve_linear(matrix: Vector, right: Vector) -> Vector:
-    """Solve one linear system per member of the batch.
-
-    Parameters
-    ----------
-    matrix : ndarray, shape (n, n, batch)
-        Overwritten.
-    right : ndarray, shape (n, batch)
-        Overwritten.
-
-    Returns
-    -------
-    ndarray, shape (n, batch)
-        Not finite where a matrix is singular.
-
-    Notes
-    -----
-    Large batches are eliminated without pivoting: the diagonal of a conductance matrix dominates nearly always, the
-    caller checks every answer, and members that fail come back in a small batch, where rows are exchanged.
-    """
-    n, batch = right.shape
-    if n == 0:
-        return right
-    if batch < _ACROSS * n:
-        return _solve_each(matrix, right)
-    for k in range(n - 1):
-        factors = matrix[k + 1 :, k] / matrix[k, k]
-        matrix[k + 1 :, k + 1 :] -= factors[:, None] * matrix[k, k + 1 :]
-        right[k + 1 :] -= factors * right[k]
-    for k in range(n - 1, -1, -1):
-        right[k] /= matrix[k, k]
-        if k:
-            right[:k] -= matrix[:k, k] * right[k]
-    return right
-
-
-def _solve_each(matrix: Vector, right: Vector) -> Vector:
-    stacked = np.ascontiguousarray(np.moveaxis(matrix, 2, 0))
-    columns = np.ascontiguousarray(right.T)[:, :, None]
-    try:
-        return np.ascontiguousarray(np.linalg.solve(stacked, columns)[:, :, 0].T)
-    except np.linalg.LinAlgError:
-        out = np.full(right.shape, np.nan)
-        for member in range(right.shape[1]):
-            try:
-                out[:, member] = np.linalg.solve(stacked[member], columns[member, :, 0])
-            except np.linalg.LinAlgError:
-                continue
-        return out
 
 
 # --------------------------------------------------------------------------------------------------------------- Newton
@@ -123,16 +67,16 @@ def _newton(
     part, v = arrays, volts.copy()
     limited = part.junction_volts(v)
     limited = np.minimum(limited, part.jun_crit) if limited.size else limited
-    diagonal = np.arange(n)
+    diagonal = arrays.elimination.diagonal
     with np.errstate(all="ignore"):
         for _ in range(iterations):
             flows, slopes, _, _ = part.evaluate(v, limited)
             right = part.into[:n] @ flows
-            matrix = part.matrix(slopes) if slopes.shape[0] else _broad(part, v.shape[1])
+            matrix = part.matrix(slopes)
             if extra:
-                matrix[diagonal, diagonal] += extra
+                matrix[diagonal] += extra
                 right += extra * (v[:n] if anchor is None else v[:n] - anchor[:, live])
-            step = solve_linear(matrix, right)
+            step = part.elimination.solve(matrix, right)
             size = np.abs(step).max(axis=0, initial=0.0)
             if math.isfinite(longest_step):
                 step *= np.minimum(1.0, longest_step / np.maximum(size, 1e-300))
@@ -162,11 +106,6 @@ def _newton(
         out[:, live] = v
         done[live] = settled & ~lost
     return out, done
-
-
-def _broad(arrays: Arrays, batch: int) -> Vector:
-    n = arrays.unknown
-    return np.broadcast_to(arrays.base, (n * n, batch)).reshape(n, n, batch).copy()
 
 
 def _gated(arrays: Arrays, volts: Vector) -> Flags:
@@ -296,13 +235,13 @@ class DcSolution:
         batch = self._state.shape[1]
         with np.errstate(all="ignore"):
             _, slopes, _, _ = arrays.evaluate(self._state)
-            matrix = arrays.matrix(slopes) if slopes.shape[0] else _broad(arrays, batch)
+            matrix = arrays.matrix(slopes)
             eye = np.eye(n)
             # Only the outer nodes are asked about, one right-hand side each.
             out = np.empty((n, batch))
             for i in range(n):
                 right = np.repeat(eye[:, i : i + 1], batch, axis=1)
-                out[i] = solve_linear(matrix.copy(), right)[i]
+                out[i] = arrays.elimination.solve(matrix.copy(), right)[i]
         return np.where(np.isfinite(out) & (out > 0), out, np.inf)
 
     def node_ohms(self, node: str) -> Vector:
