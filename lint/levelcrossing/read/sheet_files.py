@@ -20,6 +20,7 @@ from typing import Any
 from kiutils.utils.sexpr import parse_sexp
 
 from levelcrossing.errors import InputError
+from levelcrossing.read.brackets import read_brackets
 
 STEPS_PER_MM = 10_000
 """Steps of 100 nm in a millimetre."""
@@ -218,6 +219,8 @@ def read_sheet_file(path: Path, shown: str) -> SheetFile:
         When it is no readable sheet.
     """
     text = read_text(path, shown)
+    if not text.strip():
+        raise InputError("is empty", remedy="save it with KiCad again", file=shown)
     head = text[:200].lstrip()
     if head.startswith("EESchema Schematic"):
         raise InputError(
@@ -241,6 +244,12 @@ def _tree(text: str, shown: str) -> Tree:
     try:
         tree = parse_sexp(text.replace("\\\\", stand_in) if stand_in else text)
     except (AssertionError, IndexError, AttributeError, NotImplementedError):
+        try:
+            read_brackets(text, shown)  # knows the line
+        except InputError as error:
+            raise InputError(
+                error.what, remedy="the file is truncated or damaged", file=shown, line=error.line
+            ) from None
         raise InputError(
             "has brackets that do not match", remedy="the file is truncated or damaged", file=shown
         ) from None
@@ -251,11 +260,6 @@ def _tree(text: str, shown: str) -> Tree:
 
 def _check_brackets(text: str, shown: str) -> None:
     """Refuse text whose nesting no sheet has, before anything is built from it."""
-    stripped = text.rstrip()
-    if not stripped.endswith(")"):
-        raise InputError(
-            "ends in the middle", remedy="the file is truncated", file=shown, line=stripped.count("\n") + 1
-        )
     if "(" * DEEPEST_NESTING in text:
         line = text.count("\n", 0, text.index("(" * DEEPEST_NESTING)) + 1
         raise InputError("is nested too deep", remedy="is it really a KiCad sheet?", file=shown, line=line)

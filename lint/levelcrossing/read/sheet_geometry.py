@@ -24,12 +24,15 @@ from levelcrossing.read.sheet_files import Label, LibraryPin, Line, Point, Sheet
 class PlacedPin:
     """A pin on a sheet.
 
-    ``symbol`` is the index of its symbol in the file; name and kind are those of the chosen alternate.
+    ``symbol`` is the index of its symbol in the file; ``name`` and ``kind`` are those of the chosen alternate. KiCad
+    names nets and exports types as the library draws the pin: ``drawn_name``, ``drawn_kind``.
     """
 
     symbol: int
     number: str
     name: str
+    drawn_name: str
+    drawn_kind: str
     kind: str
     hidden: bool
     at: Point
@@ -98,6 +101,8 @@ def placed_pin(index: int, symbol: SheetSymbol, pin: LibraryPin, chosen: dict[st
         symbol=index,
         number=pin.number,
         name="" if name == "~" else name,
+        drawn_name="" if pin.name == "~" else pin.name,
+        drawn_kind=pin.kind,
         kind=kind,
         hidden=pin.hidden,
         at=turned(symbol, pin.at),

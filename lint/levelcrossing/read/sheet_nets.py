@@ -208,11 +208,12 @@ class Nets:
 
     def _join_sheets(self, owns: dict[int, list[_Own]], sheet_of: list[int]) -> dict[int, list[tuple[int, int]]]:
         """Join through sheet pins and buses; return by set the bus members it is."""
-        bus_members = self._bus_members(owns, sheet_of)
         attached: dict[int, list[tuple[int, int]]] = defaultdict(list)
-        for bus, members in bus_members.items():
-            for position, member in enumerate(members):
-                attached[sheet_of[member] if member < len(sheet_of) else member].append((bus, position))
+
+        def attach(member: int, bus: int, position: int) -> None:
+            attached[sheet_of[member] if member < len(sheet_of) else member].append((bus, position))
+
+        bus_members = self._bus_members(owns, sheet_of, attach)
         for index, node in enumerate(self.nodes):
             for label, text in node.labels:
                 if label.kind != "sheet":
@@ -240,8 +241,13 @@ class Nets:
             }
         return self._hierarchical
 
-    def _bus_members(self, owns: dict[int, list[_Own]], sheet_of: list[int]) -> dict[int, list[int]]:
-        """Return by bus the sets of its members, the members of its other names joined to them."""
+    def _bus_members(
+        self, owns: dict[int, list[_Own]], sheet_of: list[int], attach: Callable[[int, int, int], None]
+    ) -> dict[int, list[int]]:
+        """Return by bus the sets of its members, the members of its other names joined to them.
+
+        ``attach`` is told every such set, its bus and its position on it.
+        """
         use_of = {sheet_of[index]: node.use for index, node in enumerate(self.nodes) if node.is_bus}
         members: dict[int, list[int]] = {}
         last_of = {owns[root][0].name: root for root in use_of if owns[root]}
@@ -257,11 +263,15 @@ class Nets:
                 members[root] = [self.union.add() for _ in first.members]
             else:
                 members[root] = [self._key(use, member.name) for member in first.members]
+            for position, found in enumerate(members[root]):
+                attach(found, root, position)
             for other in names[1:]:
                 if other.bus is None or other.strength == SHEET_PIN:
                     continue
                 for position, member in _matches(first, other.bus):
-                    self.union.join(members[root][position], self._key(use, other.bus.members[member].name))
+                    also = self._key(use, other.bus.members[member].name)
+                    self.union.join(members[root][position], also)
+                    attach(also, root, position)
         return members
 
     def _join_buses(self, owns: dict[int, list[_Own]], above: int, below: int, members: dict[int, list[int]]) -> None:
@@ -384,7 +394,7 @@ class Nets:
                     reference=used.reference,
                     unit=used.unit,
                     number=used.pin.number,
-                    name=used.pin.name,
+                    name=used.pin.drawn_name,
                     several=used.several,
                     unused=unused,
                 )

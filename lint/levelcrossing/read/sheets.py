@@ -21,7 +21,7 @@ from levelcrossing.read.sheet_nets import DrawnNet, Nets, SheetUse, UsedPin
 from levelcrossing.read.sheet_project import Project, Use, find_root
 from levelcrossing.units import natural_key
 
-_OWN_FIELDS = frozenset({"Reference", "Value", "Footprint", "Datasheet", "Description"})
+_OWN_FIELDS = frozenset({"Reference", "Value", "Footprint", "Datasheet"})
 _DROPPED_FIELDS = ("Sim.Enable", "Spice_")
 """Beginnings of the fields for simulation that KiCad itself replaces when it reads an older sheet."""
 
@@ -94,10 +94,6 @@ class _Reader:
             ]
             for index, use in enumerate(project.uses)
         ]
-        self.by_reference: dict[str, list[_Unit]] = defaultdict(list)
-        for units in self.units:
-            for unit in units:
-                self.by_reference[unit.instance.reference].append(unit)
 
     def _library(self, use: Use, symbol: SheetSymbol) -> LibrarySymbol | None:
         found = self.project.library(use.file, symbol)
@@ -165,10 +161,6 @@ class _Reader:
     # --------------------------------------------------------------------------------------------------- text variables
 
     def _sheet_variable(self, use: Use, name: str) -> str | None:
-        reference, colon, inner = name.partition(":")
-        if colon:
-            units = self.by_reference.get(reference)
-            return self._symbol_variable(units[0], inner) if units else None
         if use.box is not None:
             for field, text in use.box.fields:
                 if field == name:
@@ -301,18 +293,24 @@ class _Reader:
         library = first.library
         several = library is not None and library.units > 1
         told = sorted(units, key=lambda unit: unit.instance.unit) if several else [first]
-        # Named in the order of the sheets, told by the lowest unit that says anything.
+        # Named in the order of the sheets, told by the lowest unit that has the field.
         fields = {name: "" for unit in (units if several else told) for name, _ in unit.symbol.fields}
-        for unit in told:
+        for unit in reversed(told):
             for name, text in unit.symbol.fields:
-                fields[name] = fields[name] or self._shown(unit, text)
+                fields[name] = self._shown(unit, text)
+        # KiCad has had a field of its own for the description since 8: the fifth, exported last. A user's field of that
+        # name in an older sheet keeps its place, but KiCad exports the text of its own, which is empty there.
+        users_own = {name for name, _ in first.symbol.fields[len(_OWN_FIELDS) + 1 :]}
+        about = ""
+        if "Description" not in users_own:
+            about = _first_text(self._shown(unit, unit.symbol.field("Description")) for unit in told)
+            fields.pop("Description", None)
+        fields["Description"] = about
         fields = {
             name: text
             for name, text in fields.items()
             if name not in _OWN_FIELDS and not name.startswith(_DROPPED_FIELDS)
         }
-        about = _first_text(self._shown(unit, unit.symbol.field("Description")) for unit in told)
-        fields["Description"] = about
         box = self.project.uses[first.use].box
         for name, text in box.fields[2:] if box is not None else ():
             if name not in _OWN_FIELDS:
@@ -321,7 +319,7 @@ class _Reader:
         for _, _, pin in library.pins if library is not None else ():
             net, placed, unused = self.net_of.get((reference, pin.number), ("", None, False))
             name = placed.name if placed is not None else "" if pin.name == "~" else pin.name
-            kind = placed.kind if placed is not None else pin.kind
+            kind = placed.drawn_kind if placed is not None else pin.kind
             pins.setdefault(
                 pin.number, Pin(part=reference, number=pin.number, name=name, kind=kind, net=net, unused=unused)
             )

@@ -1,14 +1,16 @@
-"""Draws the small sheets of this folder: each shows one rule of connectivity.
+"""The pen that draws the small sheets of this folder (see cases.py).
 
 Coordinates are in grid steps of 2.54 mm. Identifiers are counted, so that drawing twice gives the same bytes.
 """
 
 from __future__ import annotations
 
+from itertools import pairwise
 from pathlib import Path
 
 GRID_MM = 2.54
 PASSIVE = "passive"
+FONT = "(effects (font (size 1.27 1.27)))"
 
 
 def _pin(kind: str, x: float, y: float, name: str, number: str, *, hide: bool = False, more: str = "") -> str:
@@ -34,9 +36,7 @@ LIBRARY = {
     "own:NP": _symbol("own:NP", "NP", {"1_1": [_pin("input", 0, 0, "IN", "7")]}),
     "own:NCP": _symbol("own:NCP", "NCP", {"1_1": [_pin("no_connect", 0, 0, "NC", "8")]}),
     "own:R": _symbol("own:R", "R", {"1_1": [_pin(PASSIVE, 0, 1, "~", "1"), _pin(PASSIVE, 0, -1, "~", "2")]}),
-    "own:L": _symbol(
-        "own:L", "L", {"1_1": [_pin(PASSIVE, 0, 1, "A", "1"), _pin(PASSIVE, 2, -1, "K", "2")]}
-    ),
+    "own:L": _symbol("own:L", "L", {"1_1": [_pin(PASSIVE, 0, 1, "A", "1"), _pin(PASSIVE, 2, -1, "K", "2")]}),
     "own:VCC": _symbol("own:VCC", "#PWR", {"1_1": [_pin("power_in", 0, 0, "VCC", "1", hide=True)]}, flags="(power)"),
     "own:LOC": _symbol(
         "own:LOC", "#PWR", {"1_1": [_pin("power_in", 0, 0, "LOC", "1", hide=True)]}, flags="(power local)"
@@ -72,18 +72,41 @@ LIBRARY = {
     "own:STACK": _symbol(
         "own:STACK",
         "U",
-        {"1_1": [_pin(PASSIVE, 0, 0, "S", "1"), _pin(PASSIVE, 0, 0, "S", "2", hide=True), _pin(PASSIVE, 3, 0, "S", "1")]},
+        {
+            "1_1": [
+                _pin(PASSIVE, 0, 0, "S", "1"),
+                _pin(PASSIVE, 0, 0, "S", "2", hide=True),
+                _pin(PASSIVE, 3, 0, "S", "1"),
+            ]
+        },
     ),
+    "own:BASE": _symbol("own:BASE", "Q", {"1_1": [_pin(PASSIVE, 0, 0, "B", "1"), _pin(PASSIVE, 3, 0, "E", "2")]}),
+    "own:TWICE": _symbol(
+        "own:TWICE",
+        "K",
+        {
+            "1_1": [_pin(PASSIVE, 0, 0, "P", "1"), _pin(PASSIVE, 3, 0, "Q", "2")],
+            "1_2": [_pin(PASSIVE, 0, 1, "P", "1"), _pin(PASSIVE, 3, 1, "Q", "2")],
+        },
+    ),
+    "own:DERIVED": '(symbol "own:DERIVED" (extends "BASE") (property "Reference" "Q" (at 0 0 0)) '
+    '(property "Value" "DERIVED" (at 0 0 0)))',
+    "TP_1": _symbol("TP_1", "TP", {"1_1": [_pin(PASSIVE, 2, 0, "1", "1")]}),
+    "own:TIE": _symbol("own:TIE", "NT", {"1_1": [_pin(PASSIVE, -1, 0, "1", "1"), _pin(PASSIVE, 1, 0, "2", "2")]}),
 }
+PARENTS = {"own:DERIVED": ("own:BASE",)}
 
 
 class Drawing:
     """One sheet under the pen."""
 
-    def __init__(self, name: str, *, root: str = "", version: int = 20250114, number: int = 1) -> None:
+    def __init__(self, name: str, *, version: int = 20250114, number: int = 1) -> None:
         self.name = name
         self.version = version
         self.number = number
+        self.root: Drawing = self
+        self.old_instances: list[str] = []
+        self.old_pages: list[str] = []
         self.items: list[str] = []
         self.used: list[str] = []
         self.count = 0
@@ -96,10 +119,14 @@ class Drawing:
         return f"00000000-0000-4000-8{self.number:03d}-{self.count:012d}"
 
     def _at(self, x: float, y: float) -> str:
-        return f"{(x + 10) * GRID_MM:.4f}".rstrip("0").rstrip(".") + " " + f"{(y + 10) * GRID_MM:.4f}".rstrip("0").rstrip(".")
+        return (
+            f"{(x + 10) * GRID_MM:.4f}".rstrip("0").rstrip(".")
+            + " "
+            + f"{(y + 10) * GRID_MM:.4f}".rstrip("0").rstrip(".")
+        )
 
     def wire(self, *points: tuple[float, float], kind: str = "wire") -> Drawing:
-        for start, end in zip(points, points[1:]):
+        for start, end in pairwise(points):
             self.items.append(
                 f"({kind} (pts (xy {self._at(*start)}) (xy {self._at(*end)})) "
                 f'(stroke (width 0) (type default)) (uuid "{self._next()}"))'
@@ -126,9 +153,7 @@ class Drawing:
 
     def label(self, text: str, x: float, y: float, kind: str = "label", shape: str = "input") -> Drawing:
         shaped = "" if kind == "label" else f"(shape {shape}) "
-        self.items.append(
-            f'({kind} "{text}" {shaped}(at {self._at(x, y)} 0) (effects (font (size 1.27 1.27))) (uuid "{self._next()}"))'
-        )
+        self.items.append(f'({kind} "{text}" {shaped}(at {self._at(x, y)} 0) {FONT} (uuid "{self._next()}"))')
         return self
 
     def glob(self, text: str, x: float, y: float) -> Drawing:
@@ -151,26 +176,44 @@ class Drawing:
         flags: str = "",
         fields: dict[str, str] | None = None,
         more: str = "",
+        lib_name: str = "",
+        units: list[int] | None = None,
     ) -> Drawing:
-        if library not in self.used:
-            self.used.append(library)
+        for name in (*PARENTS.get(lib_name or library, ()), lib_name or library):
+            if name not in self.used:
+                self.used.append(name)
         references = [reference] if isinstance(reference, str) else reference
         paths = self.paths or [self.path]
         instances = " ".join(
-            f'(path "{path}" (reference "{name}") (unit {unit}))' for path, name in zip(paths, references)
+            f'(path "{path}" (reference "{name}") (unit {number}))'
+            for path, name, number in zip(paths, references, units or [unit] * len(paths), strict=False)
         )
         turned = f" (mirror {mirror})" if mirror else ""
         extra = " ".join(f'(property "{key}" "{text}" (at 0 0 0))' for key, text in (fields or {}).items())
+        uuid = self._next()
+        if self.old:
+            # KiCad 6 keeps the references of all uses in the root sheet, with paths that leave the root out.
+            for path, name in zip(paths, references, strict=False):
+                below = "/" + path[1:].partition("/")[2]
+                self.root.old_instances.append(
+                    f'(path "{below.rstrip("/")}/{uuid}" (reference "{name}") (unit {unit}) '
+                    f'(value "{value or library.split(":")[-1]}") (footprint ""))'
+                )
+        ending = "" if self.old else f'(instances (project "" {instances}))'
+        plain = (
+            "(in_bom yes) (on_board yes)" if self.old else "(exclude_from_sim no) (in_bom yes) (on_board yes) (dnp no)"
+        )
+        named = f'(lib_name "{lib_name}") ' if lib_name else ""
         self.items.append(
-            f'(symbol (lib_id "{library}") (at {self._at(x, y)} {angle}){turned} (unit {unit}) '
-            f"{flags or '(exclude_from_sim no) (in_bom yes) (on_board yes) (dnp no)'} "
-            f'(uuid "{self._next()}") (property "Reference" "{references[0]}" (at 0 0 0)) '
+            f'(symbol {named}(lib_id "{library}") (at {self._at(x, y)} {angle}){turned} (unit {unit}) '
+            f"{flags or plain} "
+            f'(uuid "{uuid}") (property "Reference" "{references[0]}" (at 0 0 0)) '
             f'(property "Value" "{value or library.split(":")[-1]}" (at 0 0 0)) (property "Footprint" "" (at 0 0 0)) '
-            f'(property "Datasheet" "" (at 0 0 0)) {extra} {more} (instances (project "" {instances})))'
+            f'(property "Datasheet" "" (at 0 0 0)) {extra} {more} {ending})'
         )
         return self
 
-    def tp(self, *spots: tuple[str, float, float]) -> Drawing:
+    def tp(self, *spots: tuple[str | list[str], float, float]) -> Drawing:
         for reference, x, y in spots:
             self.part("own:TP", reference, x, y)
         return self
@@ -179,16 +222,24 @@ class Drawing:
         self, name: str, child: Drawing, x: float, y: float, pins: list[tuple[str, str, float, float]], file: str = ""
     ) -> Drawing:
         uuid = self._next()
+        child.root = self.root
+        if self.old:
+            self.root.old_pages.append(f'(path "/{uuid}" (page "{len(self.root.old_pages) + 2}"))')
+        page = len(child.paths) + child.number
         child.paths.extend(f"{path}/{uuid}" for path in (self.paths or [self.path]))
         drawn = " ".join(
-            f'(pin "{text}" {shape} (at {self._at(px, py)} 180) (effects (font (size 1.27 1.27))) (uuid "{self._next()}"))'
+            f'(pin "{text}" {shape} (at {self._at(px, py)} 180) {FONT} (uuid "{self._next()}"))'
             for text, shape, px, py in pins
         )
+        flags = "" if self.old else "(exclude_from_sim no) (in_bom yes) (on_board yes) (dnp no) "
+        names = ("Sheet name", "Sheet file") if self.old else ("Sheetname", "Sheetfile")
+        own = " ".join(f'(path "{path}" (page "{page + i}"))' for i, path in enumerate(self.paths or [self.path]))
+        pages = "" if self.old else f'(instances (project "" {own}))'
         self.items.append(
-            f"(sheet (at {self._at(x, y)}) (size 12.7 25.4) (exclude_from_sim no) (in_bom yes) (on_board yes) (dnp no) "
+            f"(sheet (at {self._at(x, y)}) (size 12.7 25.4) {flags}"
             f'(stroke (width 0) (type solid)) (fill (color 0 0 0 0)) (uuid "{uuid}") '
-            f'(property "Sheetname" "{name}" (at 0 0 0)) (property "Sheetfile" "{file or child.name + ".kicad_sch"}" (at 0 0 0)) '
-            f'{drawn} (instances (project "" (path "{self.path}" (page "{len(child.paths) + 1}")))))'
+            f'(property "{names[0]}" "{name}" (at 0 0 0)) '
+            f'(property "{names[1]}" "{file or child.name + ".kicad_sch"}" (at 0 0 0)) {drawn} {pages})'
         )
         return self
 
@@ -197,14 +248,26 @@ class Drawing:
         self.items.append(f'(bus_alias "{name}" (members {quoted}))')
         return self
 
-    def save(self, folder: Path) -> Path:
+    @property
+    def old(self) -> bool:
+        """Whether it is drawn as KiCad 6 does."""
+        return self.version < 20220000
+
+    def text(self) -> str:
         library = "\n    ".join(LIBRARY[name] for name in self.used)
+        if self.old:
+            library = library.replace(" (hide yes)", " hide")
         body = "\n  ".join(self.items)
-        file = folder / f"{self.name}.kicad_sch"
-        file.write_text(
-            f'(kicad_sch (version {self.version}) (generator "eeschema") (generator_version "9.0")\n'
-            f'  (uuid "{self.uuid}")\n  (paper "A4")\n  (lib_symbols\n    {library})\n  {body}\n'
-            f'  (sheet_instances (path "/" (page "1")))\n  (embedded_fonts no))\n',
-            encoding="utf-8",
+        maker = "(generator eeschema)" if self.old else '(generator "eeschema") (generator_version "9.0")'
+        ending = '(sheet_instances (path "/" (page "1"))' + " ".join(self.old_pages) + ")"
+        if self.old_instances:
+            ending += "\n  (symbol_instances\n    " + "\n    ".join(self.old_instances) + ")"
+        return (
+            f'(kicad_sch (version {self.version}) {maker}\n  (uuid "{self.uuid}")\n  (paper "A4")\n'
+            f"  (lib_symbols\n    {library})\n  {body}\n  {ending})\n"
         )
+
+    def save(self, folder: Path) -> Path:
+        file = folder / f"{self.name}.kicad_sch"
+        file.write_text(self.text(), encoding="utf-8")
         return file
