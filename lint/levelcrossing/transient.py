@@ -32,7 +32,7 @@ _FIRST_PART = 50.0
 # A watched node moves by no more than this part of its swing per step, or this much [V].
 _STRIDE_PART, _STRIDE_VOLTS = 0.12, 5e-3
 # Newton's last correction within a step may be this large [V]: what remains is its square over the thermal voltage.
-_NEWTON_VOLTS = 2e-4
+_NEWTON_VOLTS = 1e-3
 _NEWTON_ITERATIONS = 7
 _ENOUGH = 0.8
 _MOST_SWEEPS = 6000
@@ -51,13 +51,15 @@ _PACE_OHMS = 1e7
 class _Dynamics:
     """The arrays of a network with what stores charge.
 
-    ``into`` and ``spread`` are those of :class:`Arrays` with further columns: capacitors, then charged junctions.
+    ``into`` is that of :class:`Arrays` with further columns for capacitors, then charged junctions; ``spread`` with
+    further columns for charged junctions; ``cap_spread`` is the same for capacitors.
     """
 
     arrays: Arrays
     charged: Index
     into: Vector
     spread: Vector
+    cap_spread: Vector
     cap_f: Vector
     transit: Vector
     base: Vector
@@ -69,6 +71,7 @@ class _Dynamics:
             charged=self.charged,
             into=self.into,
             spread=self.spread,
+            cap_spread=self.cap_spread,
             cap_f=self.cap_f[:, keep] if self.cap_f.shape[1] > 1 else self.cap_f,
             transit=self.transit[:, keep] if self.transit.shape[1] > 1 else self.transit,
             base=self.base[:, keep] if self.base.shape[1] > 1 else self.base,
@@ -100,12 +103,15 @@ def _dynamics(arrays: Arrays) -> _Dynamics:
     resistive[known] = arrays.spread
     base = np.zeros((n * n, arrays.base.shape[1]))
     base[known] = arrays.base
-    whole = np.hstack([resistive, spread.reshape(n * n, len(ends))])
+    flat = spread.reshape(n * n, len(ends))
+    n_caps = arrays.cap_p.size
+    devices = np.hstack([resistive, flat[:, n_caps:]])
     return _Dynamics(
         arrays=arrays,
         charged=charged,
         into=np.ascontiguousarray(np.hstack([arrays.into[:n], into[:n]])),
-        spread=np.ascontiguousarray(whole[elimination.flat]),
+        spread=np.ascontiguousarray(devices[elimination.flat]),
+        cap_spread=np.ascontiguousarray(flat[elimination.flat][:, :n_caps]),
         cap_f=arrays.cap_f,
         transit=arrays.jun_tt[charged] if charged.size else np.empty((0, 1)),
         base=np.ascontiguousarray(base[elimination.flat]),
@@ -181,10 +187,11 @@ def _march(
     batch = start.shape[1]
     live = np.arange(batch)
     complete = np.zeros(batch, dtype=bool)
-    time, dt = breaks[0].copy(), first_s.copy()
+    time, dt = breaks[0].copy(), first_s.copy()  # every array below is a copy of its own: they are changed in place
     segment = np.zeros(batch, dtype=np.intp)
     known = np.ones(batch, dtype=np.intp)
     last = len(breaks) - 1
+    resting = bool((levels[last] == levels[last - 1]).all())
     v0 = start.copy()
     t1, t2 = time - 1.0, time - 2.0
     # stored charge and its current, settled: no current flows into it
@@ -212,9 +219,6 @@ def _march(
         step = np.where(dt >= 0.999 * rest, rest, np.where(dt > 0.6 * rest, 0.5 * rest, dt))
         lands = step == rest
         now = np.where(lands, end, time + step)
-        from_s = breaks[segment, columns]
-        share = (now - from_s) / (end - from_s)
-        low, high = levels[segment, :, columns].T, levels[segment + 1, :, columns].T
 
         # prediction by divided differences over the points since the corner
         third, second = known >= 3, known >= 2
@@ -224,7 +228,13 @@ def _march(
         guess = state + np.where(second, step, 0.0) * (slope + h1 * bend)
         v = np.empty_like(v0)
         v[:n] = guess[:n]
-        v[n:] = low + share * (high - low)
+        if resting and int(segment.min()) == last - 1:
+            v[n:] = levels[last]
+        else:
+            from_s = breaks[segment, columns]
+            share = (now - from_s) / (end - from_s)
+            low, high = levels[segment, :, columns].T, levels[segment + 1, :, columns].T
+            v[n:] = low + share * (high - low)
 
         rate = np.where(third, 2.0, 1.0) / step
         past = rate * charge + np.where(third, flow, 0.0)
@@ -242,27 +252,43 @@ def _march(
         factor = np.where(settled, np.clip(0.9 * grown, 0.2, 2.5), 0.3)
 
         landed = accepted & lands
-        flow = np.where(accepted, rate * stored - past, flow)
-        charge = np.where(accepted, stored, charge)
-        state2, state1 = np.where(accepted, state1, state2), np.where(accepted, state, state1)
-        state = np.where(accepted, reached, state)
-        t2, t1 = np.where(accepted, t1, t2), np.where(accepted, time, t1)
-        v0 = np.where(accepted, v, v0)
-        time = np.where(accepted, now, time)
+        if accepted.all():
+            flow, charge = rate * stored - past, stored
+            state2, state1, state, v0 = state1, state, reached, v
+            t2, t1, time = t1, time, now
+        else:
+            for kept, new in (
+                (flow, rate * stored - past),
+                (charge, stored),
+                (state2, state1),
+                (state1, state),
+                (state, reached),
+                (v0, v),
+                (t2, t1),
+                (t1, time),
+                (time, now),
+            ):
+                np.copyto(kept, new, where=accepted)
         known = np.where(landed, 1, np.where(accepted, np.minimum(known + 1, 3), known))
         segment = segment + landed
         pace = (np.abs(state[rows] - state1[rows]) / stride).max(axis=0, initial=0.0)
         steady = (time - t1) / np.maximum(pace, 1e-9)
         dt = np.where(landed, first_s, np.where(accepted, np.minimum(step * factor, steady), step * factor))
 
-        whole_t, whole_v = np.zeros(batch), np.zeros((len(watch), batch))
-        whole_ok, whole_corner = np.zeros(batch, dtype=bool), np.zeros(batch, dtype=bool)
-        whole_t[live], whole_v[:, live] = time, v0[list(watch)]
-        whole_ok[live], whole_corner[live] = accepted, landed
-        record_t.append(whole_t)
-        record_v.append(whole_v)
-        record_ok.append(whole_ok)
-        record_corner.append(whole_corner)
+        if live.size == batch:
+            record_t.append(time.copy())
+            record_v.append(v0[list(watch)])
+            record_ok.append(accepted)
+            record_corner.append(landed)
+        else:
+            whole_t, whole_v = np.zeros(batch), np.zeros((len(watch), batch))
+            whole_ok, whole_corner = np.zeros(batch, dtype=bool), np.zeros(batch, dtype=bool)
+            whole_t[live], whole_v[:, live] = time, v0[list(watch)]
+            whole_ok[live], whole_corner[live] = accepted, landed
+            record_t.append(whole_t)
+            record_v.append(whole_v)
+            record_ok.append(whole_ok)
+            record_corner.append(whole_corner)
 
         over = segment >= last
         if goal is not None and reach is not None:
@@ -296,19 +322,18 @@ def _solve_step(
     if limited.size:
         limited = arrays.limit(limited, arrays.junction_volts(before))
     stored = np.empty((n_caps + dyn.charged.size, batch))
-    cap_slope = rate * dyn.cap_f[:n_caps]
     charge_rate = rate * dyn.transit if dyn.charged.size else None
+    resting = dyn.base + dyn.cap_spread @ (rate * dyn.cap_f[:n_caps]) if n_caps else dyn.base
     with np.errstate(all="ignore"):
         for iteration in range(_NEWTON_ITERATIONS):
             flows, slopes, amps, siemens = arrays.evaluate(v, limited)
             np.multiply(dyn.cap_f[:n_caps], v[arrays.cap_p] - v[arrays.cap_q], out=stored[:n_caps])
-            dynamic = [slopes, np.broadcast_to(cap_slope, (n_caps, batch))]
             if charge_rate is not None:
                 np.multiply(dyn.transit, amps[dyn.charged], out=stored[n_caps:])
-                dynamic.append(charge_rate * siemens[dyn.charged])
+                slopes = np.concatenate([slopes, charge_rate * siemens[dyn.charged]])
             right = dyn.into @ np.concatenate([flows, rate * stored - past])
-            entries = dyn.spread @ np.concatenate(dynamic)
-            entries += dyn.base
+            entries = dyn.spread @ slopes
+            entries += resting
             change = dyn.elimination.solve(entries, right)
             v[:n] -= change
             size = np.abs(change).max(axis=0, initial=0.0)
@@ -318,7 +343,7 @@ def _solve_step(
             elif limited.size:
                 wished = arrays.junction_volts(v)
                 after = arrays.limit(wished, limited)
-                settled &= np.abs(wished - limited).max(axis=0) < 10 * _NEWTON_VOLTS
+                settled &= np.abs(wished - limited).max(axis=0) < 2 * _NEWTON_VOLTS
                 limited = after
             # Stragglers hold nobody up: they take a shorter step in the next round.
             if settled.all() or (iteration >= 3 and np.count_nonzero(settled) >= _ENOUGH * batch):
