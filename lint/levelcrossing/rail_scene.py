@@ -119,7 +119,7 @@ class Scene:
             return "out"
         if not looks_like_supply(pin):
             return ""
-        if pin.kind == "output" or (_OUTPUT_PIN.fullmatch(first) and pin.kind != "power_in"):
+        if pin.kind == "output" or _OUTPUT_PIN.fullmatch(first):
             return "out"
         return "in"
 
@@ -137,7 +137,8 @@ class Scene:
         if reference in self.regulators or self.kinds[reference] == "regulator":
             return True
         part = self.parts[reference]
-        return self.active(reference) and len(part.pins) <= 60 and any(self.switching(pin.net) for pin in part.pins if pin.net)
+        small = self.active(reference) and len(part.pins) <= 60
+        return small and any(self.switching(pin.net) for pin in part.pins if pin.net)
 
     def named_pins(self, part: Part, pattern: str) -> list[Pin]:
         """Return the connected pins of a part whose name, or one of its alternates, matches a pattern as a whole."""

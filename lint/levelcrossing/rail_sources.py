@@ -27,7 +27,8 @@ ALKALINE_CELL = Spread(low=0.9, nominal=1.5, high=1.65)
 _COIN = re.compile(r"\b(CR|BR|ML|MS|VL)\d{3,4}|COIN|BUTTON.?CELL", re.IGNORECASE)
 _LITHIUM = re.compile(r"LI-?(ION|PO|POLY)|LITHIUM|18650|14500|21700|16340|LIPO|LIFEPO", re.IGNORECASE)
 _CHARGER = re.compile(
-    r"^(TP405\d|TP5100|BL405\d|LTC405\d|MCP738\d\d|BQ2[1-5]\d{3}|IP530\d|CN3\d{3}|MAX15[15]\d|STC4054|ME4054)", re.IGNORECASE
+    r"^(TP405\d|TP5100|BL405\d|LTC405\d|MCP738\d\d|BQ2[1-5]\d{3}|IP530\d|CN3\d{3}|MAX15[15]\d|STC4054|ME4054)",
+    re.IGNORECASE,
 )
 _VOLTS_WORD = re.compile(r"\dV|V\d|VBUS|VUSB|\d\.\d", re.IGNORECASE)
 _BARE_POINT = re.compile(r"(?<!\d)\d_\d(?!\d)")
@@ -187,7 +188,9 @@ class Sources:
             if self.joints.group(pin.net) in own:
                 continue
             others = [other for other in self.scene.pins_on[pin.net] if other.part != part.reference]
-            if any(self.scene.kinds[other.part] not in ("resistor", "capacitor", "link", "test-point") for other in others):
+            if any(
+                self.scene.kinds[other.part] not in ("resistor", "capacitor", "link", "test-point") for other in others
+            ):
                 return True
         return False
 
@@ -273,7 +276,8 @@ class Sources:
         others = [
             (n, pin)
             for n, pin in others
-            if self.scene.kinds[pin.part] not in ("capacitor", "test-point") and self.scene.kinds[pin.part] not in _JOINING
+            if self.scene.kinds[pin.part] not in ("capacitor", "test-point")
+            and self.scene.kinds[pin.part] not in _JOINING
         ]
         if len(others) == 1 and self.scene.kinds[others[0][1].part] == "resistor":
             return others[0][0], others[0][1].part
@@ -311,9 +315,15 @@ class Sources:
         if scene.book.looks_like_signal(net):
             head = re.match(r"[+]?[A-Z]{0,4}\d{1,2}V\d{0,2}(?=_)", last, re.IGNORECASE)
             supplied = {pin.part for pin in scene.supplies(net)}
-            return scene.book.rail_volts(head.group(0)) if head and len(supplied) >= 2 and scene.decoupled(net) else None
+            return (
+                scene.book.rail_volts(head.group(0)) if head and len(supplied) >= 2 and scene.decoupled(net) else None
+            )
         known = scene.book.rail_volts(net)
-        if known is not None and _BARE_POINT.search(last) and len({p.part for p in scene.pins_on[net] if scene.active(p.part)}) < 2:
+        if (
+            known is not None
+            and _BARE_POINT.search(last)
+            and len({p.part for p in scene.pins_on[net] if scene.active(p.part)}) < 2
+        ):
             return None
         return known
 
@@ -328,7 +338,9 @@ class Sources:
         if next(scene.signal_pins(net), None) is not None:
             return False
         parts = {pin.part for pin in pins if scene.kinds[pin.part] not in ("test-point", "power-flag")}
-        plain = re.fullmatch(r"[A-Z]?\d{1,2}V\d{0,2}|\d{1,2}\.\d{1,2}V?|V(BUS|SYS|BAT)\w*", net.rpartition("/")[2], re.IGNORECASE)
+        plain = re.fullmatch(
+            r"[A-Z]?\d{1,2}V\d{0,2}|\d{1,2}\.\d{1,2}V?|V(BUS|SYS|BAT)\w*", net.rpartition("/")[2], re.IGNORECASE
+        )
         return len(parts) > 3 or (plain is not None and len(parts) >= 1)
 
     def _beside(self, net: str) -> tuple[str, ...]:
@@ -389,8 +401,14 @@ class Sources:
                     self.add(pin.net, "battery", LITHIUM_CELL, Basis.TRACED, text, ranged=True)
             return
         words = f"{part.value} {part.symbol} {part.footprint.rpartition(':')[2]}"
-        cell = next((cell for pattern, cell in ((_COIN, COIN_CELL), (_LITHIUM, LITHIUM_CELL)) if pattern.search(words)), None)
-        positive = [pin for pin in live if pin.name.strip() in ("+", "Pos", "P", "PLUS", "") or "+" in pin.name or pin.number == "1"]
+        cell = next(
+            (cell for pattern, cell in ((_COIN, COIN_CELL), (_LITHIUM, LITHIUM_CELL)) if pattern.search(words)), None
+        )
+        positive = [
+            pin
+            for pin in live
+            if pin.name.strip() in ("+", "Pos", "P", "PLUS", "") or "+" in pin.name or pin.number == "1"
+        ]
         if scene.kinds[part.reference] == "connector":
             if cell is None or not re.match(r"B(AT|T)", part.reference, re.IGNORECASE):
                 return
@@ -491,5 +509,10 @@ def feedback_volts(facts: RegulatorFacts, top: Spread, bottom: Spread) -> Spread
         return vref * (1 + upper / lower)
 
     nominal = out(reference.nominal, top.nominal, bottom.nominal)
-    ends = [out(vref, a, b) for vref in (reference.low, reference.high) for a in (top.low, top.high) for b in (bottom.low, bottom.high)]
+    ends = [
+        out(vref, a, b)
+        for vref in (reference.low, reference.high)
+        for a in (top.low, top.high)
+        for b in (bottom.low, bottom.high)
+    ]
     return replace(reference, low=min(ends), nominal=nominal, high=max(ends))

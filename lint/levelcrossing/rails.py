@@ -7,6 +7,7 @@ then fed through resistors, diodes, switches and jumpers from groups that have o
 
 from __future__ import annotations
 
+import re
 from collections import defaultdict
 from collections.abc import Iterator, Sequence
 from dataclasses import replace
@@ -40,6 +41,7 @@ NEAR = 0.03
 """Closer than this they never do, whatever their tolerances [1]: names are rounded."""
 
 _DECLARED = ("settings", "field")
+_AUTOMATIC = re.compile(r"Net-\(|N\$|unconnected-\(")
 _ROUNDS = 12
 
 
@@ -90,12 +92,14 @@ class _Tracing:
         self._feed(("resistor", "filter", "switch", "diode"))
         self._take_use()
         self._feed(("resistor", "filter", "switch", "diode", "choice"))
-        by_net = {net: rail for net, rail in self._grounds()}
+        by_net = dict(self._grounds())
         for group, nets in self.groups.items():
             by_net.update(self._rails_of(group, nets))
         unknown = tuple(self._unknown(by_net))
         self._regulator_remarks(by_net)
-        ordered = tuple(sorted(self.remarks, key=lambda remark: (remark.kind, units.natural_key(remark.net), remark.part)))
+        ordered = tuple(
+            sorted(self.remarks, key=lambda remark: (remark.kind, units.natural_key(remark.net), remark.part))
+        )
         return Rails(by_net=dict(sorted(by_net.items())), unknown=unknown, remarks=ordered)
 
     # -------------------------------------------------------------------------------------------------------- own voltage
@@ -192,12 +196,19 @@ class _Tracing:
         low = min(volts.low for _, volts in ways)
         high = max(volts.high for _, volts in ways)
         volts = Spread(low=low, nominal=ways[0][1].nominal, high=high)
-        told = list(dict.fromkeys(f"{feed.source} {feed.words}" for feed, _ in ways))
+        told = list(dict.fromkeys(f"{self._label(feed.source)} {feed.words}" for feed, _ in ways))
         diode = any(feed.kind == "diode" for feed, _ in ways)
         text = "fed from " + ", or from ".join(told)
         basis = Basis.ASSUMED if any(feed.kind == "choice" for feed, _ in ways) else Basis.TRACED
         sources = tuple(sorted({self.joints.group(feed.source) for feed, _ in ways}))
         return Evidence(kind="diode" if diode else "upstream", volts=volts, basis=basis, text=text), sources
+
+    def _label(self, net: str) -> str:
+        """Return a net's name for the user: that of a joined net when its own is automatic."""
+        if not _AUTOMATIC.match(net):
+            return net
+        named = [other for other in self.joints.nets(self.joints.group(net)) if not _AUTOMATIC.match(other)]
+        return named[0] if named else net
 
     def _ancestors(self, group: str) -> set[str]:
         seen: set[str] = set()
@@ -210,9 +221,10 @@ class _Tracing:
         return seen
 
     def _filtered(self, nets: Sequence[str]) -> bool:
-        """Tell whether a group behind a larger resistor is a filtered supply: nothing but supply pins stand on it."""
+        """Tell whether a group behind a larger resistor is a filtered supply: supply pins stand on it, and no signal."""
         scene = self.scene
-        return not any(next(scene.signal_pins(net), None) for net in nets)
+        supplied = any(scene.supplies(net) for net in nets)
+        return supplied and not any(next(scene.signal_pins(net), None) for net in nets)
 
     def _also_fed(self, group: str) -> Iterator[tuple[str, Evidence]]:
         """Yield what feeds a group that has only its name: worth knowing, though the name decides."""
@@ -222,12 +234,19 @@ class _Tracing:
         for feed in self.feeds:
             source = self.joints.group(feed.source)
             volts = self._volts(source)
-            if self.joints.group(feed.target) != group or volts is None or volts.nominal <= 0.5 or feed.kind in ("filter", "choice"):
+            if (
+                self.joints.group(feed.target) != group
+                or volts is None
+                or volts.nominal <= 0.5
+                or feed.kind in ("filter", "choice")
+            ):
                 continue
-            strong = any(item.kind in ("regulator", "feedback", "connector", "battery") for _, item in self.known.get(source, ()))
+            strong = any(
+                item.kind in ("regulator", "feedback", "connector", "battery") for _, item in self.known.get(source, ())
+            )
             if feed.kind == "diode" or strong:
                 kind = "diode" if feed.kind == "diode" else "upstream"
-                text = f"fed from {feed.source} {feed.words}"
+                text = f"fed from {self._label(feed.source)} {feed.words}"
                 yield feed.target, Evidence(kind=kind, volts=_less(volts, feed.drop), basis=Basis.TRACED, text=text)
 
     # ------------------------------------------------------------------------------------------------------------ deciding
@@ -243,7 +262,12 @@ class _Tracing:
             if main not in members:
                 text += f"; nothing joins it to {main}, so it was taken as a ground of its own at 0 V"
             item = Evidence(kind="ground", volts=Spread.exactly(0.0), basis=Basis.TRACED, text=text)
-            yield net, Rail(net=net, volts=Spread.exactly(0.0), basis=Basis.TRACED, evidence=(item,), domain=domain, ground=True)
+            yield (
+                net,
+                Rail(
+                    net=net, volts=Spread.exactly(0.0), basis=Basis.TRACED, evidence=(item,), domain=domain, ground=True
+                ),
+            )
 
     def _rails_of(self, group: str, nets: Sequence[str]) -> Iterator[tuple[str, Rail]]:
         found = self.known.get(group) or self.fed.get(group) or []
@@ -256,15 +280,18 @@ class _Tracing:
             if not self._belongs(net, nets, found):
                 continue
             evidence = tuple(dict.fromkeys(self._as_seen(net, owner, item) for owner, item in found))
-            yield net, Rail(
-                net=net,
-                volts=evidence[0].volts if evidence else None,
-                basis=evidence[0].basis if evidence else Basis.ASSUMED,
-                evidence=evidence,
-                domain=domain,
-                disagreement=disagreement,
-                load_farads=self.scene.farads.get(net, 0.0),
-                fed_by=self._fed_by(group),
+            yield (
+                net,
+                Rail(
+                    net=net,
+                    volts=evidence[0].volts if evidence else None,
+                    basis=evidence[0].basis if evidence else Basis.ASSUMED,
+                    evidence=evidence,
+                    domain=domain,
+                    disagreement=disagreement,
+                    load_farads=self.scene.farads.get(net, 0.0),
+                    fed_by=self._fed_by(group),
+                ),
             )
 
     def _powered_by(self, nets: Sequence[str]) -> bool:
@@ -281,7 +308,10 @@ class _Tracing:
         pins = [pin for net in nets for pin in scene.pins_on[net]]
         if len({pin.part for pin in pins if scene.active(pin.part)}) > 1:
             return True
-        if any(scene.kinds[pin.part] in ("connector", "inductor", "transistor", "diode", "battery", "switch") for pin in pins):
+        if any(
+            scene.kinds[pin.part] in ("connector", "inductor", "transistor", "diode", "battery", "switch")
+            for pin in pins
+        ):
             return True
         return any(self.joints.group(feed.target) == self.joints.group(nets[0]) for feed in self.feeds)
 
@@ -298,14 +328,23 @@ class _Tracing:
         way = self.joints.words(net, owner)
         if not way.removeprefix("through ") or item.kind in ("upstream", "diode", "use"):
             return item
-        return replace(item, kind="upstream", text=f"joined to {owner} {way}: {item.text}", basis=Basis.weakest(item.basis, Basis.TRACED))
+        return replace(
+            item,
+            kind="upstream",
+            text=f"joined to {owner} {way}: {item.text}",
+            basis=Basis.weakest(item.basis, Basis.TRACED),
+        )
 
     def _domain(self, group: str, nets: Sequence[str], found: Sequence[tuple[str, Evidence]]) -> str:
         """Return the net that feeds a group: where its source stands, else the one with most pins."""
         sources = [owner for owner, item in found if item.kind in ("regulator", "feedback", "battery", "connector")]
         if sources:
             return sources[0]
-        small = [feed for feed in self.feeds if feed.kind in ("resistor", "filter") and self.joints.group(feed.target) == group]
+        small = [
+            feed
+            for feed in self.feeds
+            if feed.kind in ("resistor", "filter") and self.joints.group(feed.target) == group
+        ]
         origin = self.origin.get(group, ())
         if group not in self.known and len(origin) == 1 and small:
             above = origin[0]
@@ -318,8 +357,9 @@ class _Tracing:
             return made[0].source
         origin = self.origin.get(group, ())
         if group not in self.known and len(origin) == 1:
-            kinds = {feed.kind for feed in self.feeds if self.joints.group(feed.target) == group}
-            if kinds <= {"diode", "resistor", "filter"}:
+            ways = [feed for feed in self.feeds if self.joints.group(feed.target) == group]
+            alone = {self.joints.group(feed.source) for feed in ways} == set(origin)
+            if alone and {feed.kind for feed in ways} <= {"diode", "resistor", "filter"}:
                 nets = self.groups[origin[0]]
                 return self._domain(origin[0], nets, self.known.get(origin[0]) or [])
         return ""
@@ -341,7 +381,9 @@ class _Tracing:
                 f'"{owner}" = "{first.volts.nominal:.3g}".'
             )
             part = next((one.part for one in self.sources.conversions if one.output == owner), "")
-            self.remarks.append(RailRemark(kind="conflict", net=net, part=part, text=text, remedy=remedy, basis=first.basis))
+            self.remarks.append(
+                RailRemark(kind="conflict", net=net, part=part, text=text, remedy=remedy, basis=first.basis)
+            )
             return text
         return ""
 
@@ -350,7 +392,9 @@ class _Tracing:
     def _unknown(self, by_net: dict[str, Rail]) -> Iterator[tuple[str, str]]:
         """Yield the nets without a voltage that supply integrated circuits, one for each group."""
         for group, nets in self.groups.items():
-            if any(by_net[net].volts is not None for net in nets if net in by_net) or not any(net in by_net for net in nets):
+            if any(by_net[net].volts is not None for net in nets if net in by_net) or not any(
+                net in by_net for net in nets
+            ):
                 continue
             supplied = [pin for net in nets for pin in self.scene.supplies(net) if self._matters(pin.part)]
             if not supplied or not self._sources_on(nets):
@@ -358,7 +402,10 @@ class _Tracing:
             net = max(nets, key=lambda net: (len(self.scene.pins_on[net]), [-ord(letter) for letter in net]))
             hints = [f"supplies {self._listed([f'{pin.part} ({pin.name or pin.number})' for pin in supplied])}"]
             hints += list(self._makers(nets))
-            yield net, f'under [rails] in levelcrossing.toml: "{net}" = "..."  # volts or a range; it ' + "; ".join(hints)
+            yield (
+                net,
+                f'under [rails] in levelcrossing.toml: "{net}" = "..."  # volts or a range; it ' + "; ".join(hints),
+            )
 
     def _makers(self, nets: Sequence[str]) -> Iterator[str]:
         """Yield what makes or feeds a supply without a voltage, as far as it shows."""
@@ -369,7 +416,9 @@ class _Tracing:
             return
         for net in nets:
             for other in across_coil(scene, net):
-                makers = sorted({pin.part for pin in scene.pins_on[other] if scene.active(pin.part) and scene.switching(other)})
+                makers = sorted(
+                    {pin.part for pin in scene.pins_on[other] if scene.active(pin.part) and scene.switching(other)}
+                )
                 if makers:
                     yield f"{scene.title(makers[0])} makes it, whose output the trade data does not tell"
                     return
