@@ -9,12 +9,12 @@ at the estimated rate, and where one fails the bit is lengthened until both pass
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 
 import numpy as np
 
 from levelcrossing.arrays import Flags
-from levelcrossing.network import Network, Value, Vector, stack
+from levelcrossing.network import Network, Value, Vector, slices, stack, topology
 from levelcrossing.solve import DcSolution, solve_dc
 from levelcrossing.transient import EDGE_S, STEP_ERROR_VOLTS, Waves, follow, last_invalid_s, stage, step_response
 
@@ -170,6 +170,73 @@ def timing(
         near_plateau=(np.abs(rests_high - vih) < 0.05) | (np.abs(rests_low - vil) < 0.05),
         solved=solved,
     )
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class TimingJob:
+    """One circuit to time; the fields are the arguments of :func:`timing`."""
+
+    network: Network
+    low: Mapping[str, Value]
+    high: Mapping[str, Value]
+    watch: str
+    vih_volts: Value
+    vil_volts: Value
+    edge_s: float = EDGE_S
+
+
+def timings(jobs: Sequence[TimingJob], *, confirm: bool = True) -> list[Timing]:
+    """Time many circuits; those of equal topology share a batch, which is what makes them fast.
+
+    Parameters
+    ----------
+    jobs : sequence of TimingJob
+    confirm : bool
+        Run the lone-bit patterns.
+
+    Returns
+    -------
+    list of Timing
+        In the order of the jobs.
+    """
+    groups: dict[object, list[tuple[int, Network, dict[str, str]]]] = {}
+    for position, job in enumerate(jobs):
+        plain, names = _sized(job.network).canonical()
+        new = {old: name for name, old in names.items()}
+        key = (topology(plain), tuple(sorted(new[node] for node in job.low)), new[job.watch], job.edge_s)
+        groups.setdefault(key, []).append((position, plain, new))
+    out: list[Timing | None] = [None] * len(jobs)
+    for members in groups.values():
+        several = [jobs[position] for position, _, _ in members]
+        sizes = [network.batch for _, network, _ in members]
+
+        def joined(values: Sequence[Value], sizes: Sequence[int] = sizes) -> Vector:
+            wide = [np.broadcast_to(np.asarray(v, dtype=float), (k,)) for v, k in zip(values, sizes, strict=True)]
+            return np.concatenate(wide)
+
+        def moved(
+            levels: Sequence[Mapping[str, Value]], members: Sequence[tuple[int, Network, dict[str, str]]] = members
+        ) -> dict[str, Value]:
+            first = members[0][2]
+            translated = [
+                {new[node]: v for node, v in level.items()} for level, (_, _, new) in zip(levels, members, strict=True)
+            ]
+            return {first[n]: joined([level[first[n]] for level in translated]) for n in levels[0]}
+
+        whole = stack([network for _, network, _ in members])
+        found = timing(
+            whole,
+            moved([job.low for job in several]),
+            moved([job.high for job in several]),
+            members[0][2][several[0].watch],
+            joined([job.vih_volts for job in several]),
+            joined([job.vil_volts for job in several]),
+            edge_s=several[0].edge_s,
+            confirm=confirm,
+        )
+        for (position, _, _), part in zip(members, slices([network for _, network, _ in members]), strict=True):
+            out[position] = Timing(**{item.name: getattr(found, item.name)[part] for item in fields(found)})
+    return [found for found in out if found is not None]
 
 
 def _sized(network: Network) -> Network:

@@ -1,9 +1,9 @@
 """Linear systems of one sparsity, a whole batch at a time.
 
-Conductance matrices of small circuits are nearly trees. The order of elimination and the entries that fill in are worked
-out once per topology; each operation then runs over the batch. Rows are not exchanged: the diagonal of a conductance
-matrix dominates nearly always, callers check every answer, and members that fail come back in a small batch, which a
-library routine solves with exchanges.
+Conductance matrices of small circuits are nearly trees. The order of elimination and the entries that fill in are
+worked out once per topology; each operation then runs over the batch. Rows are not exchanged: the diagonal of a
+conductance matrix dominates nearly always, callers check every answer, and members that fail come back in a small
+batch, which a library routine solves with exchanges.
 """
 
 from __future__ import annotations
