@@ -336,20 +336,31 @@ def _confirmed(
     def passing(members: Vector, lengths: Vector) -> Flags:
         """Return for each pair of member and bit length whether it passes."""
         index = members.astype(np.intp)
-        some = network.taking(index)
 
-        def pick(moved: Mapping[str, Value]) -> dict[str, Value]:
-            return {n: np.broadcast_to(np.asarray(v, dtype=float), bit.shape)[index] for n, v in moved.items()}
+        def pick(first: Mapping[str, Value], second: Mapping[str, Value]) -> dict[str, Value]:
+            def wide(value: Value) -> Vector:
+                return np.broadcast_to(np.asarray(value, dtype=float), bit.shape)[index]
 
-        good = np.ones(index.size, dtype=bool)
-        for pattern in LONE_BITS:
-            # The rest before the lone bit is a settled state: one bit of it stands for all.
-            short = pattern[3:]
-            waves = pattern_response(
-                some, pick(low), pick(high), short, lengths, (watch,), edge_s=edge_s, error_volts=error_volts
-            )
-            good &= received(waves, watch, short, lengths, vih[index], vil[index], inverting[index])
-        return good
+            return {node: np.concatenate([wide(first[node]), wide(second[node])]) for node in first}
+
+        # Both patterns run as one batch: the second is the first with the driver's levels exchanged. The rest before
+        # the lone bit is a settled state, one bit of it stands for all.
+        twice = np.tile(index, 2)
+        short, bit_s = LONE_BITS[0][3:], np.tile(lengths, 2)
+        waves = pattern_response(
+            network.taking(twice),
+            pick(low, high),
+            pick(high, low),
+            short,
+            bit_s,
+            (watch,),
+            edge_s=edge_s,
+            error_volts=error_volts,
+        )
+        exchanged = np.concatenate([inverting[index], ~inverting[index]])
+        good = received(waves, watch, short, bit_s, vih[twice], vil[twice], exchanged)
+        both: Flags = good[: index.size] & good[index.size :]
+        return both
 
     fine = passing(open_.astype(float), bit[open_])
     failing = open_[~fine]
