@@ -64,7 +64,7 @@ KINDS = {
     f"SW1 reset Switch:SW_Push {TWO}": "switch",
     f"Y1 8MHz Device:Crystal {TWO}": "crystal",
     "Q3 Q12MHz Devices:Crystal_GND | 1 - passive A | 2 - passive B | 3 - passive GND": "crystal",
-    "RN1 10k Device:R_Network03 | 1 common passive V | 2 R1 passive A | 3 R2 passive B | 4 R3 passive C": "resistor-pack",
+    "RN1 10k Device:R_Network02 | 1 common passive V | 2 R1 passive A | 3 R2 passive B": "resistor-pack",
     f"BT1 CR2032 Device:Battery_Cell {TWO}": "battery",
     "FLG01 PWR_FLAG power:PWR_FLAG | 1 pwr power_out +5V": "power-flag",
     "U1 AMS1117-3.3 Regulator_Linear:AMS1117-3.3 | 1 GND power_in G | 2 VO power_out B | 3 VI power_in A": "regulator",
@@ -74,7 +74,7 @@ KINDS = {
     "X1 25MHz Local:oscillator | 1 EN input A | 2 GND power_in G | 3 OUT output B | 4 VDD power_in V": "ic",
     # Five pins and a supply pin: an addressable LED reads and drives.
     "D7 WS2812B LED:WS2812B | 1 VDD power_in V | 2 DOUT output A | 3 VSS power_in G | 4 DIN input B": "ic",
-    "U4 74LVC1G00 74xGxx:74LVC1G00 | 1 - input A | 2 - input B | 3 GND power_in G | 4 - output C | 5 VCC power_in V": "ic",
+    "U4 74LVC1G00 74xGxx:74LVC1G00 | 1 - input A | 3 GND power_in G | 4 - output C | 5 VCC power_in V": "ic",
 }
 
 

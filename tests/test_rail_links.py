@@ -77,7 +77,7 @@ def test_pairs_of_diodes_without_pin_names_go_by_their_number(value: str, ways: 
 
 
 def test_power_multiplexer_feeds_from_both_inputs() -> None:
-    mux = "U3 TPS2113A Power:TPS2113A | 1 IN1 power_in A | 2 IN2 power_in B | 3 GND power_in GND | 7 OUT power_out C | 4 D0 input S"
+    mux = "U3 TPS2113A Local:TPS2113A | 1 IN1 power_in A | 2 IN2 power_in B | 3 GND - GND | 7 OUT power_out C"
     assert {(feed.source, feed.target) for feed in feeds_of(mux)} == {("A", "C"), ("B", "C")}
 
 

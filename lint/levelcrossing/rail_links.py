@@ -51,8 +51,8 @@ _WORDS = {
 class Feed:
     """A way by which one net may feed another: from where to where, by which part, with which drop [V].
 
-    ``kind`` is ``resistor``, ``diode``, ``switch`` (transistor or integrated circuit) or ``choice`` (a jumper, header or
-    mechanical switch that may be set this way).
+    ``kind`` is ``resistor``, ``filter`` (a larger one), ``diode``, ``switch`` (transistor or integrated circuit) or
+    ``choice`` (a jumper, header or mechanical switch that may be set this way).
     """
 
     source: str

@@ -19,7 +19,8 @@ _GROUND_PIN = re.compile(r"[A-Z0-9]{0,5}_?GND(_?[A-Z0-9.]+)?|VSS[A-Z0-9_.]*|GNDP
 _PAD_PIN = re.compile(r"EP(AD)?|PAD|EXP(OSED)?.?PAD|THERMAL.*|TAB|MP\d*|SH\d*|SHIELD|SHELL", re.IGNORECASE)
 # Pins that look like supply pins and are none: references, pumps, sense, switch nodes, thresholds (naming habits).
 _NO_SUPPLY = re.compile(
-    r".*[AV]REF.*|REF\w*|V?CAP.*|V?BST\d?|V?BOOT\d?|.*SENSE?.*|.*SNS.*|V?FB\d?|VCOMP?|VCP|VPUMP|(.*_)?(SW|LX|PH|PHASE)\d?|"
+    r".*[AV]REF.*|REF\w*|V?CAP.*|V?BST\d?|V?BOOT\d?|.*SENSE?.*|.*SNS.*|V?FB\d?|VCOMP?|VCP|VPUMP|"
+    r"(.*_)?(SW|LX|PH|PHASE)\d?|"
     r"(.*_)?EN\d?|PG.*|.*GOOD|V(OS|O?SET|TH|ADJ|TT?REF|SEL|OTP|COM)|BYP.*|NR|SS|(.*_)?(DET|MON|OK|VALID)|R?ZQ\d?|"
     r"R?BIAS|REXT|[RI]SET|NC\d*|N/?C|DNU|RFU|V[PN]",
     re.IGNORECASE,
@@ -254,7 +255,7 @@ class Scene:
         roles = {self.role(pin) for pin in self.pins_on[net] if self.active(pin.part)}
         return "ground" in roles and not roles & {"in", "out"} and self.book.rail_volts(net) is None
 
-    # -------------------------------------------------------------------------------------------------------------- more
+    # ----------------------------------------------------------------------------------------------------------- more
 
     def tolerant(self, volts: Spread) -> Spread:
         """Give a voltage that states no tolerance the one of the settings."""

@@ -11,11 +11,11 @@ from __future__ import annotations
 import fnmatch
 import re
 from collections import defaultdict
-from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
-from levelcrossing import partkinds, units
+from levelcrossing import units
 from levelcrossing.model import Basis, Evidence, Part, Pin, Provenance, RegulatorFacts, Settings, Spread
+from levelcrossing.rail_dividers import feedback_volts, read_divider
 from levelcrossing.rail_links import Joints, across_coil, diode_ways
 from levelcrossing.rail_scene import Scene, plain_words
 from levelcrossing.symbolfields import settings_from_fields
@@ -34,18 +34,6 @@ _VOLTS_WORD = re.compile(r"\dV|V\d|VBUS|VUSB|\d\.\d", re.IGNORECASE)
 _BARE_POINT = re.compile(r"(?<!\d)\d_\d(?!\d)")
 _BATTERY_PIN = re.compile(r"V?_?BATT?[+]?|BATT?_?\+|B\+", re.IGNORECASE)
 _GENERIC_SWITCH = r"SW\d?|LX\d?|PH(ASE)?|VSW"
-_GENERIC_FEEDBACK = r"V?FB\d?|ADJ|FEEDBACK|VSENSE|VOSNS"
-_MOST_STEPS = 8
-
-
-@dataclass(frozen=True, slots=True)
-class Divider:
-    """A feedback divider: the net at its top, both resistances [ohm], and the parts for the user."""
-
-    top_net: str
-    top: Spread
-    bottom: Spread
-    words: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -129,7 +117,7 @@ class Sources:
         source = inputs[0] if inputs else ""
         feedback = scene.named_pins(part, facts.feedback_pins) if facts.output is None else []
         output = self._output(part, facts, set(inputs))
-        divider = self._divider(feedback[0].net, output, facts, set(inputs)) if feedback else None
+        divider = read_divider(scene, self.joints, feedback[0].net, output, set(inputs)) if feedback else None
         if divider is not None:
             output = output or divider.top_net
         if not output or output in inputs:
@@ -154,7 +142,7 @@ class Sources:
             self.made_by.setdefault(output, f"{title} makes it; its feedback divider could not be read")
 
     def _output(self, part: Part, facts: RegulatorFacts, inputs: set[str]) -> str:
-        """Return the net that a regulator makes: beyond the coil of its switch pin, or its output pin's; may be empty."""
+        """Return the net that a regulator makes, beyond its coil or at its output pin; empty when neither tells."""
         scene = self.scene
         switches = scene.named_pins(part, facts.switch_pins or _GENERIC_SWITCH)
         switch_nets = {pin.net for pin in switches}
@@ -194,96 +182,7 @@ class Sources:
                 return True
         return False
 
-    def _divider(self, node: str, output: str, facts: RegulatorFacts, inputs: set[str]) -> Divider | None:
-        """Read the resistors of a feedback node: those down to ground, those up to the output.
-
-        Capacitors beside them (feed-forward) do not matter at DC. A resistor to anything else (a margining input) is
-        left out.
-        """
-        ups: dict[str, list[_Branch]] = defaultdict(list)
-        downs: list[_Branch] = []
-        for branch in self._branches(node):
-            if branch.end in self.scene.grounds:
-                downs.append(branch)
-            else:
-                ups[self.joints.group(branch.end)].append(branch)
-        wanted = self.joints.group(output) if output else ""
-        if wanted not in ups:
-            held = {self.joints.group(net) for net in inputs}
-            others = [group for group in ups if group not in held and self.scene.keeps_company(ups[group][0].end)]
-            if wanted and (output or len(others) != 1):
-                # The output pin may stand before a ferrite or a sense resistor; the one top that is left is meant.
-                others = [group for group in others if self._near(group, wanted)]
-            if len(others) != 1:
-                return None
-            wanted = others[0]
-        top = ups[wanted]
-        if not top or not downs:
-            return None
-        words = f"{_named(top)} over {_named(downs)}"
-        return Divider(top[0].end, _parallel(top), _parallel(downs), words)
-
-    def _near(self, group: str, wanted: str) -> bool:
-        """Tell whether a small resistor leads from one group to another."""
-        for net in self.joints.nets(wanted):
-            for pin in self.scene.pins_on.get(net, ()):
-                part = self.scene.parts[pin.part]
-                for a, b in partkinds.element_pairs(part):
-                    other = b.net if a.net == net else a.net
-                    ohms = units.parse_resistance(part.value)
-                    if self.joints.group(other) == group and ohms is not None and ohms <= 10:
-                        return True
-        return False
-
-    def _branches(self, node: str) -> Iterator[_Branch]:
-        """Yield the resistor chains that leave a node, each up to the next net where more than two things meet."""
-        here = self.joints.group(node)
-        for net in self.joints.nets(here):
-            for pin in self.scene.pins_on.get(net, ()):
-                if self.scene.kinds[pin.part] != "resistor":
-                    continue
-                branch = self._chain(net, pin.part, here)
-                if branch is not None:
-                    yield branch
-
-    def _chain(self, net: str, reference: str, here: str) -> _Branch | None:
-        names: list[str] = []
-        total, spread = 0.0, 0.0
-        for _ in range(_MOST_STEPS):
-            part = self.scene.parts[reference]
-            ohms = units.parse_resistance(part.value)
-            pair = next((pair for pair in partkinds.element_pairs(part) if net in (pair[0].net, pair[1].net)), None)
-            if ohms is None or pair is None:
-                return None
-            net = pair[1].net if pair[0].net == net else pair[0].net
-            if not net or self.joints.group(net) == here:
-                return None
-            tolerance = units.resistor_tolerance(part.value) or self.scene.settings.resistor_tolerance
-            names.append(f"{reference} {units.format_si(ohms, 'Ω')}")
-            total, spread = total + ohms, spread + ohms * tolerance
-            onward = self._onward(net, reference)
-            if onward is None:
-                break
-            net, reference = onward
-        return _Branch(net, Spread(low=total - spread, nominal=total, high=total + spread), "+".join(names))
-
-    def _onward(self, net: str, behind: str) -> tuple[str, str] | None:
-        """Return the resistor that a chain goes on with, when nothing else meets there; None at its end."""
-        if net in self.scene.grounds or self.scene.keeps_company(net):
-            return None
-        group = self.joints.nets(self.joints.group(net))
-        others = [(n, pin) for n in group for pin in self.scene.pins_on.get(n, ()) if pin.part != behind]
-        others = [
-            (n, pin)
-            for n, pin in others
-            if self.scene.kinds[pin.part] not in ("capacitor", "test-point")
-            and self.scene.kinds[pin.part] not in _JOINING
-        ]
-        if len(others) == 1 and self.scene.kinds[others[0][1].part] == "resistor":
-            return others[0][0], others[0][1].part
-        return None
-
-    # ------------------------------------------------------------------------------------------------- names, connectors
+    # ---------------------------------------------------------------------------------------------- names, connectors
 
     def _from_names(self) -> None:
         scene = self.scene
@@ -297,7 +196,8 @@ class Sources:
             ranged = volts.low < volts.high
             text = f"its name says {units.format_volts(volts.nominal)}"
             if ranged:
-                text = f"it is named like {source.row}: {units.format_volts(volts.low)} to {units.format_volts(volts.high)}"
+                ends = f"{units.format_volts(volts.low)} to {units.format_volts(volts.high)}"
+                text = f"it is named like {source.row}: {ends}"
             self.add(net, "name", scene.tolerant(volts), Basis.TRACED, text, ranged=ranged)
 
     def _named_volts(self, net: str) -> tuple[Spread, Provenance] | None:
@@ -310,22 +210,15 @@ class Sources:
         """
         scene = self.scene
         last = net.rpartition("/")[2]
-        if re.search(r"[_-]V?IN$", last, re.IGNORECASE) and not re.match(r"\+", last):
+        if re.search(r"[_-]VIN$", last, re.IGNORECASE):
             return None
         if scene.book.looks_like_signal(net):
             head = re.match(r"[+]?[A-Z]{0,4}\d{1,2}V\d{0,2}(?=_)", last, re.IGNORECASE)
             supplied = {pin.part for pin in scene.supplies(net)}
-            return (
-                scene.book.rail_volts(head.group(0)) if head and len(supplied) >= 2 and scene.decoupled(net) else None
-            )
-        known = scene.book.rail_volts(net)
-        if (
-            known is not None
-            and _BARE_POINT.search(last)
-            and len({p.part for p in scene.pins_on[net] if scene.active(p.part)}) < 2
-        ):
-            return None
-        return known
+            clear = head is not None and len(supplied) >= 2 and scene.decoupled(net)
+            return scene.book.rail_volts(head.group(0)) if head is not None and clear else None
+        alone = len({pin.part for pin in scene.pins_on[net] if scene.active(pin.part)}) < 2
+        return None if alone and _BARE_POINT.search(last) else scene.book.rail_volts(net)
 
     def _rail_like(self, net: str) -> bool:
         """Tell whether a net named like a rail also keeps the company of one; ``5V_LED`` on a port pin does not."""
@@ -409,14 +302,14 @@ class Sources:
             for pin in live
             if pin.name.strip() in ("+", "Pos", "P", "PLUS", "") or "+" in pin.name or pin.number == "1"
         ]
-        if scene.kinds[part.reference] == "connector":
-            if cell is None or not re.match(r"B(AT|T)", part.reference, re.IGNORECASE):
-                return
+        header = scene.kinds[part.reference] == "connector"
+        if header and not re.match(r"B(AT|T)", part.reference, re.IGNORECASE):
+            return
         if cell is not None and positive and len(live) <= 2:
             text = f"{title} is a cell of {cell.low:g} to {cell.high:g} V"
             self.add(positive[0].net, "battery", cell, Basis.TRACED, text, ranged=True)
 
-    # --------------------------------------------------------------------------------------------------------------- use
+    # ----------------------------------------------------------------------------------------------------------- use
 
     def from_use(self, nets: tuple[str, ...]) -> Evidence | None:
         """Return what the names of the supply pins on some joined nets agree on (``VDD33``), or None."""
@@ -444,75 +337,9 @@ def units_listed(words: list[str], most: int = 6) -> str:
     return ", ".join(ordered[:most]) + (f" and {len(ordered) - most} more" if len(ordered) > most else "")
 
 
-@dataclass(frozen=True, slots=True)
-class _Branch:
-    """A chain of resistors from a node: where it ends, its resistance [ohm], its name."""
-
-    end: str
-    ohms: Spread
-    words: str
-
-
-_JOINING = partkinds.LINK_KINDS
-
-
-def _named(branches: list[_Branch]) -> str:
-    return " ∥ ".join(branch.words for branch in branches)
-
-
-def _parallel(branches: list[_Branch]) -> Spread:
-    def of(values: list[float]) -> float:
-        return 0.0 if 0.0 in values else 1 / sum(1 / value for value in values)
-
-    return Spread(
-        low=of([branch.ohms.low for branch in branches]),
-        nominal=of([branch.ohms.nominal for branch in branches]),
-        high=of([branch.ohms.high for branch in branches]),
-    )
-
-
 def _after_diode(scene: Scene, net: str) -> list[str]:
     found = []
     for pin in scene.pins_on.get(net, ()):
         if scene.kinds[pin.part] == "diode":
             found += [cathode.net for anode, cathode in diode_ways(scene.parts[pin.part]) if anode.net == net]
     return [other for other in found if other and other not in scene.grounds]
-
-
-def feedback_volts(facts: RegulatorFacts, top: Spread, bottom: Spread) -> Spread:
-    """Return the output of an adjustable regulator from its feedback divider.
-
-    Parameters
-    ----------
-    facts : RegulatorFacts
-        With its reference voltage [V]. ``formula`` tells parts that hold the feedback pin at the reference above ground
-        from those that hold the reference between output and adjust pin (``floating``).
-    top, bottom : Spread
-        Resistance from the output to the feedback pin, and from there to ground [ohm].
-
-    Returns
-    -------
-    Spread
-        Output [V]: ``vref (1 + top / bottom)``; floating ``vref (1 + bottom / top) + iadj bottom``.
-
-    Examples
-    --------
-    With 0.8 V, 52.3 kohm over 10 kohm: 0.8 (1 + 5.23) = 4.984 V.
-    """
-    reference = facts.reference
-    assert reference is not None
-    floating = facts.formula == "floating"
-
-    def out(vref: float, upper: float, lower: float) -> float:
-        if floating:
-            return vref * (1 + lower / upper) + facts.adjust_amps * lower
-        return vref * (1 + upper / lower)
-
-    nominal = out(reference.nominal, top.nominal, bottom.nominal)
-    ends = [
-        out(vref, a, b)
-        for vref in (reference.low, reference.high)
-        for a in (top.low, top.high)
-        for b in (bottom.low, bottom.high)
-    ]
-    return replace(reference, low=min(ends), nominal=nominal, high=max(ends))

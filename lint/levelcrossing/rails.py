@@ -14,9 +14,10 @@ from dataclasses import replace
 
 from levelcrossing import units
 from levelcrossing.model import Basis, Board, Evidence, Rail, RailRemark, Rails, Settings, Spread
+from levelcrossing.rail_limits import regulator_remarks
 from levelcrossing.rail_links import Feed, Joints, across_coil, find_feeds
 from levelcrossing.rail_scene import Scene
-from levelcrossing.rail_sources import Conversion, Sources
+from levelcrossing.rail_sources import Sources
 from levelcrossing.tradebook import Tradebook
 
 STRENGTH = (
@@ -96,13 +97,13 @@ class _Tracing:
         for group, nets in self.groups.items():
             by_net.update(self._rails_of(group, nets))
         unknown = tuple(self._unknown(by_net))
-        self._regulator_remarks(by_net)
+        self.remarks += regulator_remarks(self.scene, self.sources.conversions, by_net)
         ordered = tuple(
             sorted(self.remarks, key=lambda remark: (remark.kind, units.natural_key(remark.net), remark.part))
         )
         return Rails(by_net=dict(sorted(by_net.items())), unknown=unknown, remarks=ordered)
 
-    # -------------------------------------------------------------------------------------------------------- own voltage
+    # ------------------------------------------------------------------------------------------------------ own voltage
 
     def _ordered(self, found: Sequence[tuple[str, Evidence]]) -> list[tuple[str, Evidence]]:
         """Sort evidence by strength; what states a range goes before a name that agrees and states less.
@@ -143,10 +144,10 @@ class _Tracing:
                 if item is not None:
                     self.known[group] = [(nets[0], item)]
 
-    # ------------------------------------------------------------------------------------------------------------ feeding
+    # ---------------------------------------------------------------------------------------------------------- feeding
 
     def _supply_like(self, nets: Sequence[str]) -> bool:
-        """Tell whether a group without a voltage may be a rail: it supplies something or is decoupled, and no signal."""
+        """Tell whether a group without a voltage may be a rail: it supplies a part, or is decoupled and no signal."""
         scene = self.scene
         if any(scene.supplies(net) for net in nets):
             return True
@@ -221,7 +222,7 @@ class _Tracing:
         return seen
 
     def _filtered(self, nets: Sequence[str]) -> bool:
-        """Tell whether a group behind a larger resistor is a filtered supply: supply pins stand on it, and no signal."""
+        """Tell whether a group behind a larger resistor is a filtered supply: it supplies a part and is no signal."""
         scene = self.scene
         supplied = any(scene.supplies(net) for net in nets)
         return supplied and not any(next(scene.signal_pins(net), None) for net in nets)
@@ -249,7 +250,7 @@ class _Tracing:
                 text = f"fed from {self._label(feed.source)} {feed.words}"
                 yield feed.target, Evidence(kind=kind, volts=_less(volts, feed.drop), basis=Basis.TRACED, text=text)
 
-    # ------------------------------------------------------------------------------------------------------------ deciding
+    # --------------------------------------------------------------------------------------------------------- deciding
 
     def _grounds(self) -> Iterator[tuple[str, Rail]]:
         scene = self.scene
@@ -375,7 +376,8 @@ class _Tracing:
             says, against = units.format_volts_apart(first.volts.nominal, other.volts.nominal)
             net = other_net if other.kind == "name" else owner
             join = "" if other_net == owner else f" and is joined to {other_net} {self.joints.words(owner, other_net)}"
-            text = f"{owner}{join}: {says} because {first.text}, but {against} because {_about(other_net, owner, other.text)}."
+            reason = _about(other_net, owner, other.text)
+            text = f"{owner}{join}: {says} because {first.text}, but {against} because {reason}."
             remedy = (
                 f"Correct the part, the divider or the name; or declare the rail under [rails] in levelcrossing.toml: "
                 f'"{owner}" = "{first.volts.nominal:.3g}".'
@@ -387,11 +389,11 @@ class _Tracing:
             return text
         return ""
 
-    # ------------------------------------------------------------------------------------------------------- what is wrong
+    # ---------------------------------------------------------------------------------------------------- what is wrong
 
     def _unknown(self, by_net: dict[str, Rail]) -> Iterator[tuple[str, str]]:
         """Yield the nets without a voltage that supply integrated circuits, one for each group."""
-        for group, nets in self.groups.items():
+        for nets in self.groups.values():
             if any(by_net[net].volts is not None for net in nets if net in by_net) or not any(
                 net in by_net for net in nets
             ):
@@ -424,7 +426,8 @@ class _Tracing:
                     return
             out = [pin for pin in scene.supplies(net, "out") if scene.converter(pin.part)]
             if out:
-                yield f"{scene.title(out[0].part)} makes it at pin {out[0].name}, whose output the trade data does not tell"
+                title = f"{scene.title(out[0].part)} makes it at pin {out[0].name}"
+                yield f"{title}, whose output the trade data does not tell"
                 return
         feeds = sorted({f"{feed.part} from {feed.source}" for feed in self.feeds if feed.target in nets})
         if feeds:
@@ -437,57 +440,6 @@ class _Tracing:
     def _listed(words: Sequence[str]) -> str:
         unique = list(dict.fromkeys(words))
         return ", ".join(unique[:4]) + (f" and {len(unique) - 4} more" if len(unique) > 4 else "")
-
-    def _regulator_remarks(self, by_net: dict[str, Rail]) -> None:
-        for one in self.sources.conversions:
-            source, made = by_net.get(one.source), by_net.get(one.output)
-            if source is None or source.volts is None or source.volts.nominal <= 0:
-                continue
-            self._input_remark(one, source, source.volts)
-            if made is not None and made.volts is not None and made.volts.nominal > 0:
-                self._dropout_remark(one, source.volts, made, made.volts)
-
-    def _input_remark(self, one: Conversion, source: Rail, volts: Spread) -> None:
-        facts = self.scene.regulators[one.part]
-        most = facts.input_max_volts
-        if most is None or not units.exceeds(volts.nominal, most):
-            return
-        gets, bears = units.format_volts_apart(volts.nominal, most)
-        text = f"{self.scene.title(one.part)} bears {bears} at its input; {source.net} gives it {gets}."
-        self.remarks.append(
-            RailRemark(
-                kind="input-range",
-                net=source.net,
-                part=one.part,
-                text=text,
-                remedy=f"Take a regulator rated for {units.format_volts(volts.high)} or more.",
-                basis=Basis.weakest(source.basis, Basis.LIBRARY),
-            )
-        )
-
-    def _dropout_remark(self, one: Conversion, volts: Spread, made: Rail, output: Spread) -> None:
-        facts = self.scene.regulators[one.part]
-        if facts.dropout_volts is None or facts.through_inductor or facts.isolated:
-            return
-        if self.scene.named_pins(self.scene.parts[one.part], facts.switch_pins):
-            return
-        room = volts.nominal - output.nominal
-        if units.at_least(room, facts.dropout_volts):
-            return
-        text = (
-            f"{self.scene.title(one.part)} needs {units.format_volts(facts.dropout_volts)} between input and output at full load; "
-            f"{one.source} at {units.format_volts(volts.nominal)} leaves {units.format_volts(room)} above {units.format_volts(output.nominal)}."
-        )
-        self.remarks.append(
-            RailRemark(
-                kind="dropout",
-                net=made.net,
-                part=one.part,
-                text=text,
-                remedy="Check the load against the dropout curve, feed it from a higher rail, or take a regulator with less dropout.",
-                basis=Basis.weakest(made.basis, Basis.LIBRARY),
-            )
-        )
 
 
 def _contradict(first: Spread, other: Spread) -> bool:
