@@ -26,6 +26,7 @@ from levelcrossing.model import (
     Settings,
     Spread,
 )
+from levelcrossing.pinnames import looks_like_supply, pin_words
 from levelcrossing.tradebook import Tradebook
 
 # Output resistance taken for a CMOS output of which nothing is known [ohm]: 4 mA at 0.4 V gives 100 ohm at worst
@@ -35,11 +36,6 @@ UNKNOWN_OUTPUT_OHMS = Spread(low=15.0, nominal=40.0, high=120.0)
 UNKNOWN_INPUT_FARADS = Spread(low=3e-12, nominal=10e-12, high=15e-12)
 UNKNOWN_LEAKAGE_AMPS = 1e-6
 
-SUPPLY_NAME = re.compile(
-    r"(?:[AD]|IO|USB|ADC|PLL|RF|PS|CORE|OSC|RTC)?_?V?(?:VCC|VDD|VEE|VSS|VBAT|VIN|VBUS|VIO|VLOGIC|VREG|VSYS|VPP|VMOT|VM|VCORE|VUSB)"
-    r"(?:[_A-Z0-9.+()/{}-]*)|V\+|V-|\+?\d+V\d*.*|\d+[.]\d+V.*|3V3.*|GND.*|.*GND|AGND|PGND|EP|EPAD|PAD|THERMAL.*|VS|VCC.*|VDD.*|VL|VS\+|VS-",
-    re.IGNORECASE,
-)
 # Supply pins that set the logic levels, tried in this order (naming habits across makers; common practice).
 IO_SUPPLY_NAMES = (
     re.compile(r"(VCC|VDD|V)_?\(?I/?O\)?\d*([_ ].*)?|IO_?(VDD|VCC).*|OVDD.*|VLOGIC|VDDPST|NVCC.*|VDDQ.*|VCCO([_ ].*)?|VL(CC)?|VDDI", re.I),
@@ -60,29 +56,6 @@ ANALOG_NAME = re.compile(
 OPEN_DRAIN_NAME = re.compile(r".*(PGOOD|PWRGD|POK|PG$|^PG|ALERT|ALERTB|INT[B#N]?\d?$|IRQ|FAULT|FLT|nINT|OVCUR|OC$|CHRG|STDBY|STAT\d?$|STATUS|RDY/BSY).*", re.I)
 READ_NAME = re.compile(r"(SDI|DIN|SI|MOSI|SCK|SCLK|CLK|CS|CSN|CSB|NCS|SS|EN|ENA|ENABLE|OE|CE|WE|RD|WR|RST|RESET|NRST|MR|SHDN|WP|HOLD|DIR|SEL|STBY|MCLK|LRCK|BCK|BCLK)", re.I)
 DRIVE_NAME = re.compile(r"(SDO|DOUT|SO|MISO|RO|DRDY|BUSY|CLKOUT|Q\d*|RXD_OUT)", re.I)
-
-
-def pin_words(name: str) -> tuple[str, ...]:
-    """Split a pin name into its alternates, without overbars: ``~{RESET}/PC6`` gives ``RESET`` and ``PC6``.
-
-    Parameters
-    ----------
-    name : str
-        Name as written in the symbol.
-
-    Returns
-    -------
-    tuple of str
-    """
-    plain = re.sub(r"~\{([^}]*)\}|~", lambda match: match.group(1) or "", name).replace("{slash}", "/")
-    return tuple(word.strip() for word in re.split(r"[/\s]|(?<=\w)\((?=\w)", plain) if word.strip())
-
-
-def looks_like_supply(pin: Pin) -> bool:
-    """Tell from type and name whether a pin is a supply pin (types lie; a supply name on a rail is believed)."""
-    words = pin_words(pin.name.replace("_{", "").replace("}", ""))
-    named = bool(words) and SUPPLY_NAME.fullmatch(words[0]) is not None
-    return named or (pin.kind in ("power_in", "power_out") and not (words and re.match(r"(EN|SW|FB|PG)", words[0], re.I)))
 
 
 @lru_cache(maxsize=256)
