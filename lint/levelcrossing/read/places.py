@@ -26,7 +26,7 @@ _UUID = re.compile(r'\(uuid\s+"?([^\s")]+)"?\s*\)')
 _REFERENCE = re.compile(rf'(?:\(reference\s+|\(property\s+"Reference"\s+){_TEXT}')
 _VALUE = re.compile(rf'\(property\s+"Value"\s+{_TEXT}')
 _LABEL = re.compile(rf"\((global_label|hierarchical_label|label)\s+{_TEXT}")
-_OLD_INSTANCE = re.compile(rf'\(path\s+"[^"]*/([^"/]+)"\s+\(reference\s+{_TEXT}')
+_OLD_INSTANCE = re.compile(rf'\(path\s+"[^"]*/([^"/]+)"\s+\(reference\s+{_TEXT}\)\s*\(unit\s+(\d+)')
 _BOX = re.compile(r"\(sheet\s+\(at\b")
 _PROPERTY = re.compile(rf"\(property\s+{_TEXT}\s+{_TEXT}")
 _UNIT = re.compile(r"\(unit\s+(\d+)\)")
@@ -34,6 +34,8 @@ _LIBRARY_NAME = re.compile(rf"\(lib_name\s+{_TEXT}")
 _LIBRARY_ID = re.compile(rf"\(lib_id\s+{_TEXT}")
 _UNIT_BODY = re.compile(r'\(symbol\s+"(?:[^"\\]|\\.)*_(\d+)_\d+"')
 _BRACKET = re.compile(r'"(?:[^"\\]|\\.)*"|[()]')
+_ENOUGH_PARTS = 20
+"""So many parts of a netlist are looked for on sheets that lie beside it."""
 
 
 def _unescaped(text: str) -> str:
@@ -61,10 +63,22 @@ class _Block:
     start: int
     end: int
 
-    @property
-    def unit(self) -> int:
-        found = _UNIT.search(self.sheet.text, self.start, self.end)
+    def unit(self, reference: str, old_units: dict[tuple[str, str], int]) -> int:
+        """Return which unit it is where it is called by a reference."""
+        text = self.sheet.text
+        own = re.compile(rf'\(reference\s+"{_written(reference)}"\)\s*\(unit\s+(\d+)\)').search(
+            text, self.start, self.end
+        )
+        uuid = _UUID.search(text, self.start, self.end)
+        if own is None and uuid is not None and (reference, uuid[1]) in old_units:
+            return old_units[reference, uuid[1]]
+        found = own or _UNIT.search(text, self.start, self.end)
         return int(found[1]) if found else 1
+
+
+def _written(text: str) -> str:
+    """Return a pattern for text between quotes."""
+    return re.escape(text.replace("\\", "\\\\").replace('"', '\\"'))
 
 
 class _Text:
@@ -147,8 +161,7 @@ class _Text:
         if library is None:
             return None
         end = _end_of_block(self.text, library.start())
-        written = re.escape(number.replace("\\", "\\\\").replace('"', '\\"'))
-        pin = re.compile(rf'\(number\s+"{written}"').search(self.text, library.start(), end)
+        pin = re.compile(rf'\(number\s+"{_written(number)}"').search(self.text, library.start(), end)
         if pin is None:
             return None
         unit = None
@@ -169,7 +182,7 @@ class Places:
     board: Board
     _sheets: list[_Text] | None = None
     _own: _Text | None = None
-    _old: dict[str, list[str]] | None = None
+    _old: dict[tuple[str, str], int] | None = None
     _parts: dict[str, Part] | None = None
     _nets: dict[str, Net] | None = None
     _paths: dict[str, list[_Text]] | None = None
@@ -210,7 +223,14 @@ class Places:
                 path = Path(os.path.normpath(folder / name))
                 if path.suffix == ".kicad_sch" and path.is_file():
                     self._sheets.append(_Text(path, path.as_posix()))
+            if self.board.form != "sheets" and not self._belong(self._sheets):
+                self._sheets = []
         return self._sheets
+
+    def _belong(self, sheets: list[_Text]) -> bool:
+        """Whether sheets beside a netlist are those it was exported from: one of its symbols is on them."""
+        uuids = [uuid for part in self.board.parts[:_ENOUGH_PARTS] for uuid in part.uuids]
+        return any(uuid in sheet.text for sheet in sheets for uuid in uuids)
 
     def _netlist(self) -> _Text | None:
         if self.board.form == "sheets":
@@ -239,9 +259,10 @@ class Places:
         for sheet in self.sheets():
             for uuid in part.uuids if part is not None else ():
                 take(sheet, sheet.uuids.get(uuid))
-        for uuid in self._old_uuids().get(reference, ()):
-            for sheet in self.sheets():
-                take(sheet, sheet.uuids.get(uuid))
+        for called, uuid in self._old_units():
+            if called == reference:
+                for sheet in self.sheets():
+                    take(sheet, sheet.uuids.get(uuid))
         # Units on other sheets, which a netlist does not list; a netlist that is older than the sheets may call them
         # otherwise, so the reference alone counts only beside a symbol that the identifiers confirm, or without any.
         if blocks or part is None or not part.uuids:
@@ -249,17 +270,20 @@ class Places:
                 for offset in sheet.references.get(reference, ()):
                     take(sheet, offset)
         order = {sheet.shown: index for index, sheet in enumerate(self.sheets())}
-        return sorted(blocks.values(), key=lambda block: (block.unit, order[block.sheet.shown], block.start))
+        old = self._old_units()
+        return sorted(
+            blocks.values(), key=lambda block: (block.unit(reference, old), order[block.sheet.shown], block.start)
+        )
 
-    def _old_uuids(self) -> dict[str, list[str]]:
-        """Return by reference the identifiers that KiCad 6 lists in the root sheet."""
+    def _old_units(self) -> dict[tuple[str, str], int]:
+        """Return by reference and identifier the units that KiCad 6 lists in the root sheet."""
         if self._old is None:
             self._old = {}
-            for sheet in self.sheets():
+            for sheet in self.sheets()[:1]:
                 start = sheet.text.rfind("(symbol_instances")
                 if start >= 0:
                     for match in _OLD_INSTANCE.finditer(sheet.text, start):
-                        self._old.setdefault(_unescaped(match[2]), []).append(match[1])
+                        self._old[_unescaped(match[2]), match[1]] = int(match[3])
         return self._old
 
     def _part_place(self, reference: str) -> Place | None:
@@ -270,12 +294,11 @@ class Places:
 
     def _pin_place(self, reference: str, number: str) -> Place | None:
         blocks = self._blocks(reference)
-        written = re.escape(number.replace("\\", "\\\\").replace('"', '\\"'))
-        pin = re.compile(rf'\(pin\s+"{written}"')
+        pin = re.compile(rf'\(pin\s+"{_written(number)}"')
         holding: list[_Block] = []
         for block in blocks:
             unit = block.sheet.unit_of_pin(block, number) if len(blocks) > 1 else None
-            if unit in (None, 0, block.unit):
+            if unit in (None, 0, block.unit(reference, self._old_units())):
                 holding.append(block)
         for block in holding or blocks:
             found = pin.search(block.sheet.text, block.start, block.end)
@@ -353,8 +376,7 @@ def _in_netlist(own: _Text, *patterns: str) -> Place | None:
 
 def _forms(text: str) -> str:
     """Return a pattern for text as netlists write it: quoted, or bare in the older form."""
-    quoted = re.escape(text.replace("\\", "\\\\").replace('"', '\\"'))
-    return rf'(?:"{quoted}"|{re.escape(text)})'
+    return rf'(?:"{_written(text)}"|{re.escape(text)})'
 
 
 def _attribute(text: str) -> str:

@@ -319,8 +319,9 @@ def _fields(node: Tree) -> tuple[tuple[str, str], ...]:
 
 
 def _library_pin(node: Tree) -> LibraryPin:
+    number = _text(node, "number")
     return LibraryPin(
-        number=_text(node, "number"),
+        number="" if number == "~" else number,
         name=_text(node, "name"),
         kind=str(node[1]),
         at=_point(_child(node, "at")),

@@ -229,7 +229,7 @@ class _Reader:
                         {
                             (used.reference, used.pin.number)
                             for used in net.pins
-                            if self.net_of[used.reference, used.pin.number][0] == net.name
+                            if used.pin.number and self.net_of[used.reference, used.pin.number][0] == net.name
                         }
                     )
                 ),
@@ -253,6 +253,8 @@ class _Reader:
         twice: dict[str, None] = {}
         for net in drawn:
             for used in net.pins:
+                if not used.pin.number:
+                    continue  # a hole or the like: on a net, but nothing can name it
                 known = self.net_of.setdefault((used.reference, used.pin.number), (net.name, used.pin, net.unused))
                 if known[0] != net.name:
                     if used.reference in doubled:
@@ -357,7 +359,7 @@ def _first_text(texts: Iterable[str]) -> str:
 def _library_description(library: LibrarySymbol | None) -> str:
     if library is None:
         return ""
-    return library.field("Description") or library.field("ki_description").strip()
+    return (library.field("Description") or library.field("ki_description")).strip()
 
 
 def _several_names(groups: list[Group]) -> dict[tuple[int, str, bool], set[str]]:

@@ -5,11 +5,13 @@ Coordinates are in grid steps of 2.54 mm. Identifiers are counted, so that drawi
 
 from __future__ import annotations
 
+import re
 from itertools import pairwise
 from pathlib import Path
 
 GRID_MM = 2.54
 PASSIVE = "passive"
+NUMBER = re.compile(r'\(number "([^"]*)"')
 FONT = "(effects (font (size 1.27 1.27)))"
 
 
@@ -204,6 +206,11 @@ class Drawing:
             "(in_bom yes) (on_board yes)" if self.old else "(exclude_from_sim no) (in_bom yes) (on_board yes) (dnp no)"
         )
         named = f'(lib_name "{lib_name}") ' if lib_name else ""
+        if "(pin" not in more:
+            # As KiCad does: each symbol lists the pins of its unit.
+            bodies = re.findall(r'\(symbol "[^"]*_(\d+)_\d+" (.*?)(?=\(symbol "|$)', LIBRARY[lib_name or library])
+            numbers = [found for body, pins in bodies if int(body) in (0, unit) for found in NUMBER.findall(pins)]
+            more += " ".join(f'(pin "{number}" (uuid "{self._next()}"))' for number in dict.fromkeys(numbers))
         self.items.append(
             f'(symbol {named}(lib_id "{library}") (at {self._at(x, y)} {angle}){turned} (unit {unit}) '
             f"{flags or plain} "
