@@ -8,7 +8,7 @@ from collections.abc import Iterator
 from functools import cached_property
 
 from levelcrossing import partkinds, units
-from levelcrossing.model import Board, ControlFacts, Part, Pin, RegulatorFacts, Settings, Spread
+from levelcrossing.model import Board, ControlFacts, Part, PartFacts, Pin, RegulatorFacts, Settings, Spread
 from levelcrossing.pinnames import looks_like_supply, pin_words
 from levelcrossing.tradebook import Tradebook
 
@@ -67,6 +67,8 @@ class Scene:
                     self.pins_on[pin.net].append(pin)
         self._roles: dict[tuple[str, str], str] = {}
         self._companies: dict[str, bool] = {}
+        self._facts: dict[str, PartFacts | None] = {}
+        self._signals: dict[str, bool] = {}
         self.grounds = self._find_grounds()
         self.farads, self._unread = self._decoupling()
 
@@ -75,6 +77,12 @@ class Scene:
     def active(self, reference: str) -> bool:
         """Tell whether a part is an integrated circuit, a module or a regulator."""
         return self.kinds[reference] in ACTIVE
+
+    def facts(self, reference: str) -> PartFacts | None:
+        """Return what the trade library knows of a part, looked up once."""
+        if reference not in self._facts:
+            self._facts[reference] = self.book.part(self.parts[reference])
+        return self._facts[reference]
 
     @cached_property
     def regulators(self) -> dict[str, RegulatorFacts]:
@@ -103,7 +111,7 @@ class Scene:
     def _find_role(self, pin: Pin) -> str:
         if not self.active(pin.part):
             return ""
-        facts = self.book.part(self.parts[pin.part])
+        facts = self.facts(pin.part)
         if facts is not None:
             if facts.translator is not None and self._reference_pin(pin, facts.translator.controls):
                 return ""
@@ -163,6 +171,12 @@ class Scene:
         for pin in self.pins_on.get(net, ()):
             if self.active(pin.part) and not self.role(pin) and pin.part not in self.regulators:
                 yield pin
+
+    def signal_named(self, net: str) -> bool:
+        """Tell whether a net's name is a signal's, although it may hold a voltage."""
+        if net not in self._signals:
+            self._signals[net] = self.book.looks_like_signal(net)
+        return self._signals[net]
 
     def decoupled(self, net: str) -> bool:
         """Tell whether a net has a capacitor of 100 nF or more to ground, or one whose value cannot be read."""
@@ -230,7 +244,7 @@ class Scene:
 
     def _named_ground(self, net: str) -> bool:
         """Tell a ground by its name; ``GND_SENSE`` is none, ``PSADC_AGND`` is one when ground pins stand on it."""
-        if self.book.looks_like_signal(net):
+        if self.signal_named(net):
             return False
         if self.book.looks_like_ground(net):
             return True

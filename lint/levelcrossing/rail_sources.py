@@ -212,7 +212,7 @@ class Sources:
         last = net.rpartition("/")[2]
         if re.search(r"[_-]VIN$", last, re.IGNORECASE):
             return None
-        if scene.book.looks_like_signal(net):
+        if scene.signal_named(net):
             head = re.match(r"[+]?[A-Z]{0,4}\d{1,2}V\d{0,2}(?=_)", last, re.IGNORECASE)
             supplied = {pin.part for pin in scene.supplies(net)}
             clear = head is not None and len(supplied) >= 2 and scene.decoupled(net)
@@ -244,7 +244,7 @@ class Sources:
         """Take the voltage that a connector's pin, or a module's output pin, is named with."""
         scene = self.scene
         connector = scene.kinds[part.reference] == "connector"
-        facts = None if connector else scene.book.part(part)
+        facts = None if connector else scene.facts(part.reference)
         told: dict[tuple[str, str], list[Pin]] = defaultdict(list)
         for pin in part.pins:
             if not pin.net or pin.unused or pin.net in scene.grounds:

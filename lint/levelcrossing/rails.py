@@ -151,7 +151,7 @@ class _Tracing:
         scene = self.scene
         if any(scene.supplies(net) for net in nets):
             return True
-        if any(scene.book.looks_like_signal(net) for net in nets):
+        if any(scene.signal_named(net) for net in nets):
             return False
         return any(scene.decoupled(net) for net in nets) and not any(next(scene.signal_pins(net), None) for net in nets)
 
@@ -321,7 +321,7 @@ class _Tracing:
         scene = self.scene
         if len(nets) == 1 or any(owner == net for owner, _ in found) or scene.keeps_company(net):
             return True
-        return next(scene.signal_pins(net), None) is None and not scene.book.looks_like_signal(net)
+        return next(scene.signal_pins(net), None) is None and not scene.signal_named(net)
 
     def _as_seen(self, net: str, owner: str, item: Evidence) -> Evidence:
         if owner == net or self.joints.group(owner) != self.joints.group(net):
