@@ -7,14 +7,16 @@ import math
 import numpy as np
 import pytest
 from against_ngspice import node_volts, waves
-from cells import Cell, all_cells
+from cells import N_FET, Cell, all_cells
+from cells import NPN as CELL_NPN
 
 from levelcrossing import devices as d
 from levelcrossing.bitrate import VALID_FROM, TimingJob, pattern_response, received, timing, timings
 from levelcrossing.decks import Step
 from levelcrossing.network import Network, stack
 from levelcrossing.solve import solve_dc
-from levelcrossing.transient import StepResponse, Waves, last_invalid_s, step_response
+from levelcrossing.transient import StepResponse, step_response
+from levelcrossing.waveforms import Waves, last_invalid_s
 
 CELLS = {cell.name: cell for cell in all_cells()}
 MEMBERS = (0, 3, 6)
@@ -338,3 +340,67 @@ def test_quasi_static_integral_of_a_zener_clamped_node() -> None:
     network = Network(branches=(*parts, d.capacitor("C1", "x", "0", 100e-12)), fixed={"drv": 0.0})
     found = step_response(network, {"drv": 0.0}, {"drv": 5.0}, ["x"], edge_s=1e-11)
     assert found.delay_s("x", 2.5)[0] - found.delay_s("x", 0.3)[0] == pytest.approx(expected, rel=4e-3)
+
+
+# --------------------------------------------------------------------------------- common practice, not published figures
+
+LOADS = np.array([15e-12, 30e-12, 50e-12, 200e-12])
+KHZ_125, MHZ_1, MHZ_8 = 2 * 125e3, 2 * 1e6, 2 * 8e6  # a clock needs two bits per period
+
+
+def practice(parts: list, drive: str, high: float, out: str, vih: float, vil: float) -> np.ndarray:
+    """Return the usable bit rates [bit/s] at the loads above, driven through 40 ohm."""
+    branches = (*parts, d.resistor("driver", "drv", drive, 40.0), d.capacitor("load", out, "0", LOADS))
+    network = Network(branches=branches, fixed={"3V3": 3.3, "5V": 5.0, "drv": 0.0})
+    return timing(network, {"drv": 0.0}, {"drv": high}, out, vih, vil).bit_rate
+
+
+def test_common_practice_a_divider_is_for_slow_signals() -> None:
+    """2 k over 3 k: fine at 125 kHz, poor at 1 MHz, useless at 8 MHz.
+
+    The solution agrees on 125 kHz at every load, on 8 MHz from 30 pF on (a board's trace, a pin and a probe), but on
+    1 MHz only from about 200 pF on: at the loads of one pin a divider of this resistance is good for 1 MHz.
+    """
+    parts = [d.resistor("R1", "a", "x", 2e3), d.resistor("R2", "x", "0", 3e3)]
+    rate = practice(parts, "a", 5.0, "x", 2.31, 0.99)
+    assert (rate > KHZ_125).all()
+    assert rate[0] > MHZ_8
+    assert (rate[1:] < MHZ_8).all()
+    assert (rate[:3] > MHZ_1).all()
+    assert rate[3] < 1.1 * MHZ_1
+
+
+def test_common_practice_a_bipolar_cell_slows_at_1_megahertz() -> None:
+    """Base through 1 k, 10 k pull-ups: good at 125 kHz, slowing at 1 MHz, not to be trusted at 8 MHz.
+
+    The solution agrees for a 5 V CMOS receiver: stored charge keeps the transistor on for half a microsecond. A
+    receiver with TTL levels sees the driver through the saturated transistor and is much faster.
+    """
+    values = {**CELL_NPN, "beta_reverse": 4.0}
+    parts = [
+        d.resistor("RB", "3V3", "b", 1e3),
+        d.resistor("RH", "5V", "hi", 10e3),
+        d.resistor("RL", "3V3", "lo", 10e3),
+        d.capacitor("CL", "lo", "0", 15e-12),
+        *d.bipolar("Q1", "hi", "b", "lo", values),
+    ]
+    rate = practice(parts, "lo", 3.3, "hi", 3.5, 1.5)
+    assert (rate > KHZ_125).all()
+    assert (rate < MHZ_1).all()
+    assert (practice(parts, "lo", 3.3, "hi", 2.0, 0.8)[:3] > MHZ_8).all()
+
+
+def test_common_practice_a_mosfet_cell_still_follows_at_8_megahertz() -> None:
+    """Gate at 3.3 V, 10 k pull-ups: still follows at 8 MHz.
+
+    The solution agrees where a push-pull driver meets a receiver with TTL levels, which the conducting transistor
+    alone brings up to 2 V. A 5 V CMOS receiver waits for the 10 k pull-up and gets a third of that at best.
+    """
+    parts = [
+        d.resistor("RH", "5V", "hi", 10e3),
+        d.resistor("RL", "3V3", "lo", 10e3),
+        d.capacitor("CL", "lo", "0", 15e-12),
+        d.mosfet("Q1", "hi", "3V3", "lo", N_FET),
+    ]
+    assert (practice(parts, "lo", 3.3, "hi", 2.0, 0.8) > MHZ_8).all()
+    assert (practice(parts, "lo", 3.3, "hi", 3.5, 1.5) < 0.4 * MHZ_8).all()

@@ -16,7 +16,8 @@ import numpy as np
 from levelcrossing.arrays import Flags
 from levelcrossing.network import Network, Value, Vector, slices, stack, topology
 from levelcrossing.solve import DcSolution, solve_dc
-from levelcrossing.transient import EDGE_S, STEP_ERROR_VOLTS, Waves, follow, last_invalid_s, stage, step_response
+from levelcrossing.transient import EDGE_S, STEP_ERROR_VOLTS, follow, stage, step_response
+from levelcrossing.waveforms import Waves, last_invalid_s
 
 # From this part of each bit on, the received level must be valid.
 VALID_FROM = 0.75
