@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+import contextlib
 import gzip
 import importlib.util
 import json
 import os
+import random
+import re
 import shutil
 import sys
 from collections import Counter
@@ -294,6 +297,25 @@ def test_every_truncation_is_refused_or_read(tmp_path: Path) -> None:
     for end in range(0, len(text) - 2, 37):
         path.write_text(text[:end], encoding="utf-8")
         _refusal(path)
+
+
+@pytest.mark.parametrize("name", ["hidden_supply", "bus_groups", "sheets_of_kicad_6", "fields_and_flags"])
+def test_meddled_text_is_refused_or_read(tmp_path: Path, name: str) -> None:
+    """Words lost, doubled and swapped give a board or an InputError, never another one."""
+    for file in SMALL.glob(f"{name}*.kicad_sch"):
+        shutil.copy(file, tmp_path)
+    path = tmp_path / f"{name}.kicad_sch"
+    words = re.findall(r'"(?:[^"\\\\]|\\\\.)*"|[()]|[^\s()"]+', path.read_text(encoding="utf-8"))
+    chance = random.Random(3)
+    for _ in range(150):
+        meddled = list(words)
+        for _ in range(chance.choice((1, 1, 3, 8))):
+            at = chance.randrange(len(meddled))
+            other = chance.choice([*words, "nan", "1e999", "-1", '"${X}"', '""', "hide"])
+            meddled[at : at + 1] = chance.choice(([], [other], [meddled[at], other], [meddled[at]] * 2))
+        path.write_text(" ".join(meddled), encoding="utf-8")
+        with contextlib.suppress(InputError):
+            read_board(path)
 
 
 def test_a_newer_version_is_read_with_a_remark(tmp_path: Path) -> None:

@@ -231,7 +231,7 @@ def read_sheet_file(path: Path, shown: str) -> SheetFile:
     tree = _tree(text, shown)
     try:
         return _sheet(tree, path, shown)
-    except (IndexError, TypeError, ValueError, AttributeError) as error:
+    except (IndexError, TypeError, ValueError, AttributeError, ArithmeticError) as error:
         raise InputError(
             f"holds something that no KiCad sheet has ({error})", remedy="save it with KiCad again", file=shown
         ) from None

@@ -153,7 +153,7 @@ class _Reader:
             pin=pin,
             unit=unit_letters(unit.instance.unit) if library.units > 1 else "",
             several=len(same) > 1,
-            netlisted=not reference.startswith("#") and unit.symbol.on_board and use.on_board and not library.power,
+            netlisted=self._is_part(unit),
             power=power,
             power_local=library.power == "local",
         )
@@ -288,7 +288,8 @@ class _Reader:
     def _is_part(self, unit: _Unit) -> bool:
         use = self.project.uses[unit.use]
         power = unit.library is not None and unit.library.power
-        return unit.symbol.on_board and use.on_board and not power and not unit.instance.reference.startswith("#")
+        reference = unit.instance.reference
+        return unit.symbol.on_board and use.on_board and not power and bool(reference) and not reference.startswith("#")
 
     def _part(self, reference: str, units: list[_Unit]) -> Part:
         first = units[0]
