@@ -231,7 +231,7 @@ class _Layout:
         for branch in network.branches:
             key = {"diode": "series_ohms", "bipolar": "base_ohms"}.get(branch.kind)
             if key and np.any(np.asarray(branch.value(key)) > 0):
-                name = f"{branch.label}#"
+                name = f"{branch.label}\0"
                 self.inner[branch.label] = self.index[name] = len(self.index)
                 inner_names.append(name)
         self.unknown = len(self.index)

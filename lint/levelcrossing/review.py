@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import hashlib
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import replace
 from pathlib import Path
@@ -11,7 +10,7 @@ from levelcrossing import crossings as crossing_survey
 from levelcrossing import islands as island_survey
 from levelcrossing import pins as pin_models
 from levelcrossing import rails as rail_tracing
-from levelcrossing import remedies, rulebook, scope, solutions, tradebook
+from levelcrossing import remedies, rulebook, scope, solutions, tradebook, waivers
 from levelcrossing.model import (
     Basis,
     Board,
@@ -21,12 +20,15 @@ from levelcrossing.model import (
     NotJudged,
     Outcome,
     PinModel,
+    Place,
     Review,
     ReviewedCrossing,
     Settings,
     SolvedCrossing,
 )
 from levelcrossing.read import read_board
+from levelcrossing.read.places import Places
+from levelcrossing.settings import settings_from_fields, unmatched
 
 
 def review(
@@ -86,10 +88,14 @@ def review_board(
     board: Board, settings: Settings, *, rules_folders: Sequence[Path] = (), facts_files: Sequence[Path] = ()
 ) -> Review:
     """Review a board that has been read."""
+    remarks = unmatched(board, settings)
+    settings = settings_from_fields(board, settings)
     book = tradebook.load(extra=tuple(facts_files))
     case = open_case(board, settings, book)
-    findings = rulebook.run_rules(rulebook.load_rules(rules_folders), case)
-    findings = tuple(replace(finding, fingerprint=fingerprint(finding, case)) for finding in findings)
+    rules = rulebook.load_rules(rules_folders)
+    findings = waivers.fingerprinted(rulebook.run_rules(rules, case), case)
+    findings, waiver_remarks = waivers.apply_waivers(findings, settings, rules=[rule.name for rule in rules])
+    findings = placed(board, findings)
     return Review(
         board=board,
         rails=case.rails,
@@ -98,8 +104,20 @@ def review_board(
         coverage=coverage(case),
         assumptions=assumptions(settings),
         out_of_scope=scope.out_of_scope(case),
-        remarks=board.remarks,
+        remarks=(*remarks, *waiver_remarks),
     )
+
+
+def placed(board: Board, findings: Sequence[Finding]) -> tuple[Finding, ...]:
+    """Give each finding the line where its pin, its part or its net stands."""
+    places = Places(board)
+
+    def place_of(finding: Finding) -> Place | None:
+        found = places.place_of_pin(finding.part, finding.pin) if finding.part and finding.pin else None
+        found = found or (places.place_of_part(finding.part) if finding.part else None)
+        return found or (places.place_of_net(finding.net) if finding.net else None)
+
+    return tuple(replace(finding, at=finding.at or place_of(finding)) for finding in findings)
 
 
 def reviewed_crossings(case: CaseFile, findings: Sequence[Finding]) -> tuple[ReviewedCrossing, ...]:
@@ -171,22 +189,3 @@ def assumptions(settings: Settings) -> tuple[str, ...]:
         "parts without data are ordinary CMOS: inputs at 0.7 and 0.3 of their supply, rated 0.3 V beyond it",
         "every supply is up and settled",
     )
-
-
-def fingerprint(finding: Finding, case: CaseFile) -> str:
-    """Return a mark that survives renamed nets but not a changed circuit.
-
-    Notes
-    -----
-    It covers the rule, the part, its value and pin, and for a crossing the driver and the values of the parts between.
-    """
-    values = {part.reference: part.value for part in case.board.parts}
-    words = [finding.rule, finding.part, values.get(finding.part, ""), finding.pin]
-    if finding.crossing is not None:
-        solved: SolvedCrossing = case.crossings[finding.crossing]
-        driver = solved.crossing.driver
-        words += [driver.part, driver.number, values.get(driver.part, "")] if driver is not None else [solved.crossing.driver_rail]
-        words += sorted(f"{reference}={values.get(reference, '')}" for reference in solved.crossing.link)
-    elif not finding.part:
-        words.append(finding.net)
-    return hashlib.sha256("\x1f".join(words).encode()).hexdigest()[:16]

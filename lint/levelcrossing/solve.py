@@ -375,7 +375,7 @@ def solve_dc(network: Network, start: DcSolution | Mapping[str, Value] | None = 
     _, missed = _residual(arrays, found)
     return DcSolution(
         network=network,
-        volts={name: found[i] for i, name in enumerate(arrays.names) if not name.endswith("#")},
+        volts={name: found[i] for i, name in enumerate(arrays.names) if not name.endswith("\0")},
         solved=good,
         residual_amps=missed,
         rescued=rescued,
