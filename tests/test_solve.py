@@ -10,7 +10,7 @@ from cells import CLAMP, N_FET, NPN, SIGNAL, all_cells, random_network
 
 from levelcrossing import devices as d
 from levelcrossing.devices import THERMAL_VOLTS as VT
-from levelcrossing.network import Branch, Network, slices, stack, topology
+from levelcrossing.network import Branch, Network
 from levelcrossing.solve import solve_dc
 
 
@@ -211,22 +211,6 @@ def test_a_warm_start_leads_to_the_same_answer() -> None:
             assert np.abs(warm.volts[node] - cold.volts[node]).max() < 1e-6, (cell.name, node)
 
 
-def test_stacking_keeps_order_and_values() -> None:
-    def divider(lower: float, name: str) -> Network:
-        parts = (d.resistor(f"{name}1", "in", name, 1e3), d.resistor(f"{name}2", name, "0", lower))
-        return Network(branches=parts, fixed={"in": 5.0})
-
-    renamed = [divider(1e3, "x").canonical(), divider(4e3, "y").canonical()]
-    assert topology(renamed[0][0]) == topology(renamed[1][0])
-    found = solve_dc(stack([n for n, _ in renamed]))
-    parts = slices([n for n, _ in renamed])
-    node = next(new for new, old in renamed[1][1].items() if old == "y")
-    assert found.volts[node][parts[0]] == pytest.approx([2.5])
-    assert found.volts[node][parts[1]] == pytest.approx([4.0])
-    with pytest.raises(ValueError, match="different topology"):
-        stack([divider(1e3, "x"), Network(branches=(d.resistor("R", "in", "x", 1.0),), fixed={"in": 1.0})])
-
-
 # ------------------------------------------------------------------------------------------------- no voltage, and why
 
 
@@ -271,16 +255,3 @@ def test_nothing_to_solve_is_solved() -> None:
     found = solve_dc(network(d.resistor("R1", "5V", "0", 1e3), **{"5V": 5.0}))
     assert found.solved.all()
     assert found.amps_from("5V")[0] == pytest.approx(5e-3)
-
-
-def test_malformed_branches_are_refused() -> None:
-    with pytest.raises(ValueError, match="no branch kind"):
-        Branch(kind="inductor", label="L1", nodes=("a", "b"), values={})
-    with pytest.raises(ValueError, match="has 2 nodes"):
-        Branch(kind="resistor", label="R1", nodes=("a",), values={"ohms": 1.0})
-    with pytest.raises(ValueError, match="missing"):
-        Branch(kind="resistor", label="R1", nodes=("a", "b"), values={})
-    with pytest.raises(ValueError, match="two branches"):
-        network(d.resistor("R1", "a", "0", 1.0), d.resistor("R1", "a", "0", 1.0))
-    with pytest.raises(ValueError, match="batch sizes"):
-        network(d.resistor("R1", "a", "0", np.ones(2)), d.resistor("R2", "a", "0", np.ones(3)))
