@@ -255,3 +255,13 @@ def test_nothing_to_solve_is_solved() -> None:
     found = solve_dc(network(d.resistor("R1", "5V", "0", 1e3), **{"5V": 5.0}))
     assert found.solved.all()
     assert found.amps_from("5V")[0] == pytest.approx(5e-3)
+
+
+@pytest.mark.parametrize("place", ["rail", "part"])
+def test_what_is_no_number_is_never_solved(place: str) -> None:
+    """A member with a missing figure is unsolved; its neighbours in the batch are not."""
+    ohms, rail = np.array([1e3, 1e3, 1e3]), np.array([5.0, 5.0, 5.0])
+    (ohms if place == "part" else rail)[1] = np.nan
+    parts = (d.resistor("R1", "A", "x", ohms), d.diode("D1", "x", "0", CLAMP))
+    found = solve_dc(Network(branches=parts, fixed={"A": rail}))
+    assert found.solved.tolist() == [True, False, True]

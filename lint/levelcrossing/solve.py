@@ -365,13 +365,16 @@ def solve_dc(network: Network, start: DcSolution | Mapping[str, Value] | None = 
     arrays, loose, parts = lay_out(network)
     volts = starting_volts(network, arrays, start)
     found, converged = _newton(arrays, volts)
+    # A voltage or value that is no number has no answer; nothing else may be made of it on the way.
+    sane = np.isfinite(volts).all(axis=0)
     good = converged & _gated(arrays, found)
     rescued: tuple[str, ...] = ()
-    if not good.all():
-        open_ = np.flatnonzero(~good)
+    if not (good | ~sane).all():
+        open_ = np.flatnonzero(~good & sane)
         better, passed, rescued = _rescue(arrays.taken(open_), volts[:, open_])
         found[:, open_] = better
         good[open_] = passed
+    good &= sane
     _, missed = _residual(arrays, found)
     return DcSolution(
         network=network,
