@@ -28,6 +28,8 @@ def regulator_remarks(
         the usual voltage of the input.
     """
     for one in conversions:
+        if one.part not in scene.regulators:
+            continue
         source, made = by_net.get(one.source), by_net.get(one.output)
         if source is None or source.volts is None or source.volts.nominal <= 0:
             continue

@@ -67,6 +67,7 @@ class Scene:
                     self.pins_on[pin.net].append(pin)
         self._roles: dict[tuple[str, str], str] = {}
         self._companies: dict[str, bool] = {}
+        self._converters: dict[str, bool] = {}
         self._facts: dict[str, PartFacts | None] = {}
         self._signals: dict[str, bool] = {}
         self.grounds = self._find_grounds()
@@ -124,6 +125,8 @@ class Scene:
             return "ground"
         if _NO_SUPPLY.fullmatch(first):
             return ""
+        if re.fullmatch(r"V_?IN_[A-Z].*", first, re.IGNORECASE) and pin.kind != "power_in":
+            return ""  # a picture or sound input
         if pin.kind == "power_out":
             return "out"
         if not looks_like_supply(pin):
@@ -145,9 +148,13 @@ class Scene:
         """Tell whether a part makes supplies: a regulator known or named so, or one with a switch node."""
         if reference in self.regulators or self.kinds[reference] == "regulator":
             return True
-        part = self.parts[reference]
-        small = self.active(reference) and len(part.pins) <= 60
-        return small and any(self.switching(pin.net) for pin in part.pins if pin.net)
+        if reference not in self._converters:
+            part = self.parts[reference]
+            small = self.active(reference) and len(part.pins) <= 60
+            self._converters[reference] = small and any(
+                pin.net and self._switch_pin(pin) and not self.decoupled(pin.net) for pin in part.pins
+            )
+        return self._converters[reference]
 
     def named_pins(self, part: Part, pattern: str) -> list[Pin]:
         """Return the connected pins of a part whose name, or one of its alternates, matches a pattern as a whole."""
@@ -193,15 +200,15 @@ class Scene:
         """Tell whether a net is the switch node of a converter: no rail, although coils lead to it."""
         if self.decoupled(net):
             return False
-        for pin in self.pins_on.get(net, ()):
-            if not self.active(pin.part):
-                continue
-            facts = self.regulators.get(pin.part)
-            pattern = facts.switch_pins if facts is not None else ""
-            for word in (pin.name, *plain_words(pin)):
-                if _SWITCH_PIN.fullmatch(word) or (pattern and re.fullmatch(pattern, word, re.IGNORECASE)):
-                    return True
-        return False
+        return any(self.active(pin.part) and self._switch_pin(pin) for pin in self.pins_on.get(net, ()))
+
+    def _switch_pin(self, pin: Pin) -> bool:
+        facts = self.regulators.get(pin.part)
+        pattern = facts.switch_pins if facts is not None else ""
+        words = (pin.name, *plain_words(pin))
+        return any(
+            _SWITCH_PIN.fullmatch(word) or (pattern and re.fullmatch(pattern, word, re.IGNORECASE)) for word in words
+        )
 
     def _decoupling(self) -> tuple[dict[str, float], set[str]]:
         farads: dict[str, float] = defaultdict(float)
@@ -243,11 +250,16 @@ class Scene:
         return grounds
 
     def _named_ground(self, net: str) -> bool:
-        """Tell a ground by its name; ``GND_SENSE`` is none, ``PSADC_AGND`` is one when ground pins stand on it."""
+        """Tell a ground by its name; ``GND_SENSE`` is none, ``PSADC_AGND`` is one when ground pins stand on it.
+
+        ``VSS`` is the negative supply where amplifiers have their ``V-`` on it and the board has another ground.
+        """
         if self.signal_named(net):
             return False
         if self.book.looks_like_ground(net):
-            return True
+            below = any(re.fullmatch(r"V-|VEE|VS-|-VS", pin.name, re.IGNORECASE) for pin in self.pins_on[net])
+            own = re.fullmatch(r"VSS[AD]?", net.rpartition("/")[2], re.IGNORECASE) is not None
+            return not (own and below and any(other.rpartition("/")[2].upper() == "GND" for other in self.pins_on))
         words = re.split(r"[_\-. ]", net.rpartition("/")[2])
         named = any(_GROUND_WORD.fullmatch(word) for word in words) and not net.startswith(("Net-(", "unconnected-("))
         return named and self._like_ground(net)

@@ -14,7 +14,7 @@ from collections import defaultdict
 from dataclasses import dataclass
 
 from levelcrossing import units
-from levelcrossing.model import Basis, Evidence, Part, Pin, Provenance, RegulatorFacts, Settings, Spread
+from levelcrossing.model import Basis, Evidence, Part, Pin, Provenance, RegulatorFacts, Settings, Spread, SupplyFacts
 from levelcrossing.rail_dividers import feedback_volts, read_divider
 from levelcrossing.rail_links import Joints, across_coil, diode_ways
 from levelcrossing.rail_scene import Scene, plain_words
@@ -34,6 +34,9 @@ _VOLTS_WORD = re.compile(r"\dV|V\d|VBUS|VUSB|\d\.\d", re.IGNORECASE)
 _BARE_POINT = re.compile(r"(?<!\d)\d_\d(?!\d)")
 _BATTERY_PIN = re.compile(r"V?_?BATT?[+]?|BATT?_?\+|B\+", re.IGNORECASE)
 _GENERIC_SWITCH = r"SW\d?|LX\d?|PH(ASE)?|VSW"
+_GENERIC_INPUT = r"P?V_?IN\d?|INP?\d?|VI|INPUT|AVIN"
+_GENERIC_OUTPUT = r"V_?OUT\d?|OUT\d?|VO|OUTPUT"
+_GENERIC_ENABLE = r"EN\d?|ENABLE|CE|RUN|n?SHDN|SHDN#?|ON|ON/OFF|EN/UVLO|STBY"
 
 
 @dataclass(frozen=True, slots=True)
@@ -73,6 +76,9 @@ class Sources:
         self._from_settings()
         for reference, facts in scene.regulators.items():
             self._from_regulator(scene.parts[reference], facts)
+        for reference, part in scene.parts.items():
+            if reference not in scene.regulators and scene.converter(reference):
+                self._from_unknown_converter(part)
         self._from_names()
         for reference, part in scene.parts.items():
             kind = scene.kinds[reference]
@@ -122,7 +128,7 @@ class Sources:
             output = output or divider.top_net
         if not output or output in inputs:
             return
-        switched = self._switched(part, facts, inputs)
+        switched = self._switched(part, facts.enable_pins, inputs)
         self.conversions.append(Conversion(part.reference, source, output, switched))
         title = scene.title(part.reference)
         if facts.output is not None:
@@ -140,6 +146,27 @@ class Sources:
             self.add(output, "feedback", facts.reference, Basis.LIBRARY, text, ranged=True)
         else:
             self.made_by.setdefault(output, f"{title} makes it; its feedback divider could not be read")
+
+    def _from_unknown_converter(self, part: Part) -> None:
+        """Note which net a converter without data makes from which, though not at what voltage."""
+        scene = self.scene
+        inputs = [pin.net for pin in scene.named_pins(part, _GENERIC_INPUT) if pin.net not in scene.grounds]
+        if not inputs:
+            return
+        outputs: dict[str, None] = {}
+        for pin in scene.named_pins(part, _GENERIC_OUTPUT):
+            if pin.net not in scene.grounds and not scene.switching(pin.net):
+                outputs[pin.net] = None
+        for pin in part.pins:
+            if pin.net and scene.switching(pin.net):
+                outputs.update(dict.fromkeys(across_coil(scene, pin.net)))
+        held = {self.joints.group(net) for net in inputs}
+        made = [net for net in outputs if self.joints.group(net) not in held]
+        if len({self.joints.group(net) for net in made}) == 1:
+            switched = self._switched(part, _GENERIC_ENABLE, inputs)
+            self.conversions.append(Conversion(part.reference, inputs[0], made[0], switched))
+            title = scene.title(part.reference)
+            self.made_by.setdefault(made[0], f"{title} makes it, whose output the trade data does not tell")
 
     def _output(self, part: Part, facts: RegulatorFacts, inputs: set[str]) -> str:
         """Return the net that a regulator makes, beyond its coil or at its output pin; empty when neither tells."""
@@ -169,10 +196,10 @@ class Sources:
             return bool(pins) and all(pin.net in self.scene.grounds for pin in pins)
         return bool(feedback) and self.joints.group(feedback[0].net) == self.joints.group(output)
 
-    def _switched(self, part: Part, facts: RegulatorFacts, inputs: list[str]) -> bool:
+    def _switched(self, part: Part, enable_pins: str, inputs: list[str]) -> bool:
         """Tell whether anything but its own input holds the enable pin of a regulator."""
         own = {self.joints.group(net) for net in inputs}
-        for pin in self.scene.named_pins(part, facts.enable_pins):
+        for pin in self.scene.named_pins(part, enable_pins):
             if self.joints.group(pin.net) in own:
                 continue
             others = [other for other in self.scene.pins_on[pin.net] if other.part != part.reference]
@@ -268,20 +295,29 @@ class Sources:
             text += f"{'are' if len(pins) > 1 else 'is'} named {pins[0].name}"
             self.add(net, "connector", scene.tolerant(volts), Basis.TRACED, text, ranged=volts.low < volts.high)
 
-    def _from_facts(self, part: Part, pin: Pin, supplies: tuple[object, ...]) -> bool:
+    def _from_facts(self, part: Part, pin: Pin, supplies: tuple[SupplyFacts, ...]) -> bool:
         """Take the voltage that the trade data gives for an output pin of a module; tell whether it did."""
         for supply in supplies:
-            low, high = getattr(supply, "low_volts", None), getattr(supply, "high_volts", None)
-            if getattr(supply, "role", "") != "out" or not low or not high or high > 1.35 * low:
+            low, high = supply.low_volts, supply.high_volts
+            if supply.role != "out" or not low or not high or high > 1.35 * low:
                 continue
-            pattern = re.compile(str(getattr(supply, "pins", "")), re.IGNORECASE)
+            pattern = re.compile(supply.pins, re.IGNORECASE)
             if any(pattern.fullmatch(word) for word in (pin.name, *plain_words(pin))):
                 volts = Spread(low=low, nominal=round((low + high) / 2, 3), high=high)
                 title = self.scene.title(part.reference)
                 text = f"{title} gives {units.format_volts(volts.nominal)} at its pin {pin.name or pin.number}"
                 self.add(pin.net, "connector", volts, Basis.LIBRARY, text, ranged=True)
+                self._module_conversion(part, pin, supplies)
                 return True
         return False
+
+    def _module_conversion(self, part: Part, made: Pin, supplies: tuple[SupplyFacts, ...]) -> None:
+        """Note that a module makes its output from the one net that it is fed by."""
+        scene = self.scene
+        patterns = [supply.pins for supply in supplies if supply.role in ("in", "usb")]
+        fed = {pin.net for pattern in patterns for pin in scene.named_pins(part, pattern)} - set(scene.grounds)
+        if len({self.joints.group(net) for net in fed}) == 1:
+            self.conversions.append(Conversion(part.reference, min(fed), made.net, switched=False))
 
     def _from_battery(self, part: Part) -> None:
         scene = self.scene

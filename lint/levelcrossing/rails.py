@@ -280,7 +280,7 @@ class _Tracing:
         for net in nets:
             if not self._belongs(net, nets, found):
                 continue
-            evidence = tuple(dict.fromkeys(self._as_seen(net, owner, item) for owner, item in found))
+            evidence = tuple(dict.fromkeys(self._as_seen(net, owner, item) for owner, item in _own_first(net, found)))
             yield (
                 net,
                 Rail(
@@ -347,10 +347,24 @@ class _Tracing:
             if feed.kind in ("resistor", "filter") and self.joints.group(feed.target) == group
         ]
         origin = self.origin.get(group, ())
-        if group not in self.known and len(origin) == 1 and small:
-            above = origin[0]
+        above = origin[0] if group not in self.known and len(origin) == 1 and small else self._larger(group, small)
+        if above:
             return self._domain(above, self.groups[above], self.known.get(above) or self.fed.get(above) or [])
         return max(nets, key=lambda net: (len(self.scene.pins_on[net]), [-ord(letter) for letter in net]))
+
+    def _larger(self, group: str, small: Sequence[Feed]) -> str:
+        """Return the group of equal voltage that feeds a named one through a resistor, if it is one and the larger."""
+        volts = self._volts(group)
+        above = {self.joints.group(feed.source) for feed in small}
+        if volts is None or group not in self.known or len(above) != 1:
+            return ""
+        other = above.pop()
+        theirs = self._volts(other) if other in self.known else None
+        near = theirs is not None and abs(theirs.nominal - volts.nominal) <= NEAR * abs(volts.nominal)
+        return other if near and self._size(other) > self._size(group) else ""
+
+    def _size(self, group: str) -> int:
+        return sum(len(self.scene.pins_on[net]) for net in self.groups.get(group, ()))
 
     def _fed_by(self, group: str) -> str:
         made = [one for one in self.sources.conversions if self.joints.group(one.output) == group]
@@ -429,9 +443,17 @@ class _Tracing:
                 title = f"{scene.title(out[0].part)} makes it at pin {out[0].name}"
                 yield f"{title}, whose output the trade data does not tell"
                 return
-        feeds = sorted({f"{feed.part} from {feed.source}" for feed in self.feeds if feed.target in nets})
+        feeds = sorted({f"{feed.part} from {feed.source}" for feed in self.feeds if self._plausible(feed, nets)})
         if feeds:
             yield f"may be fed through {self._listed(feeds)}"
+
+    def _plausible(self, feed: Feed, nets: Sequence[str]) -> bool:
+        """Tell whether a way into some nets is worth naming: not a pull-up from a signal."""
+        if feed.target not in nets or feed.kind == "filter":
+            return False
+        scene = self.scene
+        lead = any(scene.kinds[pin.part] == "connector" for pin in scene.pins_on[feed.source])
+        return lead or scene.keeps_company(feed.source)
 
     def _matters(self, reference: str) -> bool:
         return not self.scene.converter(reference)
@@ -449,6 +471,17 @@ def _contradict(first: Spread, other: Spread) -> bool:
     overlap = first.low <= other.high and other.low <= first.high
     held = first.low <= other.nominal <= first.high or other.low <= first.nominal <= other.high
     return (apart > DISAGREE and not held) or (apart > NEAR and not overlap)
+
+
+def _own_first(net: str, found: Sequence[tuple[str, Evidence]]) -> Sequence[tuple[str, Evidence]]:
+    """Put a net's own evidence first when it says just what the deciding evidence of its group says."""
+    if not found:
+        return found
+    decided = found[0][1]
+    for entry in found[1:]:
+        if entry[0] == net and found[0][0] != net and entry[1].kind == decided.kind and entry[1].volts == decided.volts:
+            return [entry, *(other for other in found if other is not entry)]
+    return found
 
 
 def _less(volts: Spread, drop: Spread) -> Spread:
