@@ -140,9 +140,10 @@ def _mosfet_lines(label: str, at: list[str], value: _Lookup, *, body: bool) -> l
     threshold = value("threshold_volts") * (1 if n_channel else -1)
     bulk, lines = source, []
     if not body:
-        # A pass transistor without a body diode: its bulk lies where no junction can ever conduct.
+        # A pass transistor without a body diode: its bulk lies where no junction can ever conduct, yet not so far that
+        # the simulator's leakage across those junctions (1e-12 S) shows.
         bulk = f"{label}_bulk"
-        lines.append(f"V{label}_bulk {bulk} 0 DC {-200 if n_channel else 200}")
+        lines.append(f"V{label}_bulk {bulk} 0 DC {-30 if n_channel else 30}")
     lines += [
         f"M{label} {drain} {gate} {source} {bulk} m_{label} L=100u W=100u",
         f".model m_{label} {'N' if n_channel else 'P'}MOS(LEVEL=1 VTO={_number(threshold)} KP={_number(value('gain'))}"
