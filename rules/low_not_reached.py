@@ -35,4 +35,6 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 f"{solved.crossing.target} reads a low from {format_volts(solved.vil.nominal if solved.vil else margin.limit)} down; {solved.crossing.source} brings it to "
                 f"{format_volts(state.receiver_volts.nominal)} ({format_volts(margin.at)} against {format_volts(margin.limit)}{where})."
             )
-            yield solved.finding(index, NAME, Outcome.MALFUNCTION if nominal else Outcome.MARGINAL, text)
+            parts = " and ".join(solved.crossing.shifter.parts)
+            remedy = f"Use larger pull-ups on {solved.crossing.receiver.net}, a stronger driver" + (f", or a MOSFET pair or a translator in place of {parts}." if parts else ".")
+            yield solved.finding(index, NAME, Outcome.MALFUNCTION if nominal else Outcome.MARGINAL, text, remedy=remedy)

@@ -94,6 +94,8 @@ class Builder:
         ``high``, ``low`` or ``released``.
     rail_overrides : mapping from rail net to Spread or None
         Voltages to use instead (0 V for a dead rail); None leaves the rail floating.
+    others : sequence of (PinModel, str)
+        Further drivers and their states, where one circuit combines several signals.
     """
 
     def __init__(
@@ -106,6 +108,7 @@ class Builder:
         rail_overrides: Mapping[str, Spread | None] | None = None,
         with_capacitance: bool = False,
         stray_farads: float = 0.0,
+        others: Sequence[tuple[PinModel, str]] = (),
     ) -> None:
         self.island = island
         self.rails = rails
@@ -121,7 +124,10 @@ class Builder:
             for net in island.nets:
                 self._capacitor(f"stray of {net}", net, Spread.exactly(stray_farads))
         if driver is not None and driver.drive is not None and state != "released":
-            self._driver(driver, driver.drive, state)
+            self._driver(driver, driver.drive, state, DRIVER)
+        for other, other_state in others:
+            if other.drive is not None and other_state != "released":
+                self._driver(other, other.drive, other_state, f"inside {other.part}.{other.number}")
 
     # -- nodes -------------------------------------------------------------------------------------------------------
 
@@ -298,7 +304,7 @@ class Builder:
             farads = pin.receive.capacitance_farads if pin.receive is not None else Spread.exactly(5e-12)
             self._capacitor(f"input of {label}", pin.net, farads)
 
-    def _driver(self, pin: PinModel, drive: Drive, state: str) -> None:
+    def _driver(self, pin: PinModel, drive: Drive, state: str, source: str) -> None:
         level, ohms = (drive.high, drive.high_ohms) if state == "high" else (drive.low, drive.low_ohms)
         supply = self.supply_key(pin)
         output = self.plan.variable(f"output resistance of {pin.part}.{pin.number}", ohms, "Ω")
@@ -314,9 +320,9 @@ class Builder:
                 return level.at(held.nominal)
             return level_at(level, values_of(held, codes[supply]))
 
-        self.plan.fixed[DRIVER] = volts
+        self.plan.fixed[source] = volts
         label = f"output of {pin.part}.{pin.number}"
-        self.plan.makers.append(lambda codes: (devices.resistor(label, DRIVER, pin.net, values_of(ohms, codes[output])),))
+        self.plan.makers.append(lambda codes: (devices.resistor(label, source, pin.net, values_of(ohms, codes[output])),))
 
 
 def _passed(facts: TranslatorFacts, supply_volts: float) -> float:

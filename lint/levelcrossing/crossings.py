@@ -93,10 +93,10 @@ class _Finder:
             volts = rails.volts(pin.net)
             if pin.role == "supply" and volts is not None and volts.nominal > 0.5:
                 self.supplies_on[reference].append((pin.net, volts))
-        self.islands = [_Field(self._with_far_ends(island), rails) for island in islands]
-        self.by_net = {net: field for field in self.islands for net in field.island.nets}
         self.not_judged: dict[tuple[str, str], NotJudged] = {}
         self.far_ends: dict[tuple[str, str], str] = {}
+        self.islands = [_Field(self._with_far_ends(island), rails) for island in islands]
+        self.by_net = {net: field for field in self.islands for net in field.island.nets}
         self.drivers_of = {id(field): self._drivers(field) for field in self.islands}
 
     def run(self) -> Survey:
@@ -136,6 +136,9 @@ class _Finder:
             rail, volts = max(pulled, key=lambda pull: pull[1].nominal)
             why = f"the other side of {pin.part}.{pin.number} is an open-drain line at the level of its pull-up to {rail}"
             style, basis = True, Basis.TRACED
+            higher = [name for name, level in self.supplies_on.get(pin.part, []) if level.nominal > 1.04 * volts.nominal]
+            if higher:
+                self.far_ends[pin.part, pin.number] = f"{pin.part} also carries {higher[0]}"
         else:
             supplies = self.supplies_on.get(pin.part, [])
             nominal = {round(volts.nominal, 2) for _, volts in supplies}
@@ -190,7 +193,7 @@ class _Finder:
                     continue
                 if driver.supply_volts is None or receiver.supply_volts is None:
                     continue
-                if driver.role == "far-end" and receiver.role == "far-end":
+                if driver.role == "far-end" and receiver.role == "far-end" and not (_settled(driver) and _settled(receiver)):
                     continue
                 if same_supply(driver.supply_volts, receiver.supply_volts):
                     continue
@@ -200,7 +203,6 @@ class _Finder:
 
     def _crossing(self, field: _Field, driver: PinModel, receiver: PinModel, path: Sequence[Element], **more: object) -> Crossing:
         shifter = shifters.recognise(field.island, path, driver, receiver, self.rails, self.facts)
-        inferred = "; ".join(dict.fromkeys(pin.why for pin in (driver, receiver) if pin.inferred_far_end))
         crossing = Crossing(
             driver=driver,
             driver_rail=driver.supply,
@@ -210,8 +212,8 @@ class _Finder:
             shifter=shifter,
             island=field.island.index,
             inverting=shifters.inverts(path, driver.net),
-            condition=driver.when,
-            inferred=inferred,
+            condition=" and ".join(dict.fromkeys([*([driver.when] if driver.when else []), *_far_condition(driver, receiver)])),
+            inferred=_guessed(driver, receiver),
             basis=Basis.weakest(driver.basis, receiver.basis, *(element.basis for element in path)),
         )
         return replace(crossing, **more) if more else crossing  # type: ignore[arg-type]
@@ -279,12 +281,12 @@ class _Finder:
         for source in sources:
             for sink in sinks:
                 assert source.supply_volts is not None and sink.supply_volts is not None
-                if same_supply(source.supply_volts, sink.supply_volts) or (source.role == "far-end" and sink.role == "far-end"):
+                if same_supply(source.supply_volts, sink.supply_volts) or (source.role == "far-end" and sink.role == "far-end" and not (_settled(source) and _settled(sink))):
                     continue
                 path = far_side.path(out.net, sink.net)
                 if path is None:
                     continue
-                condition = " and ".join(dict.fromkeys(text for text in (source.when, out.when) if text))
+                condition = " and ".join(dict.fromkeys(text for text in (source.when, out.when, *_far_condition(source, sink)) if text))
                 yield Crossing(
                     driver=source,
                     driver_rail=source.supply,
@@ -296,7 +298,7 @@ class _Finder:
                     through=(reference,),
                     condition=condition,
                     stage_driver=replace(out, when=""),
-                    inferred="; ".join(dict.fromkeys(pin.why for pin in (source, sink) if pin.inferred_far_end)),
+                    inferred=_guessed(source, sink),
                     basis=Basis.weakest(source.basis, sink.basis, out.basis),
                 )
 
@@ -423,6 +425,21 @@ def _held(drivers: Sequence[PinModel], nets: Sequence[str]) -> bool:
         pin.net in nets and not pin.when and pin.role == "signal" and pin.drive is not None and pin.drive.style == "push-pull" and not pin.drive.tristate
         for pin in drivers
     )
+
+
+def _settled(pin: PinModel) -> bool:
+    """Tell whether the level of a pin rests on the board or the settings: not so for a far end guessed from a supply pin."""
+    return not pin.inferred_far_end or pin.drive is None or pin.drive.basis is Basis.TRACED
+
+
+def _guessed(*pins: PinModel) -> str:
+    """Say how the level of far ends was guessed; empty when none was."""
+    return "; ".join(dict.fromkeys(pin.why for pin in pins if not _settled(pin)))
+
+
+def _far_condition(*pins: PinModel) -> list[str]:
+    """Say what must be true of far ends whose level a pull-up on the board tells."""
+    return [pin.why for pin in pins if pin.inferred_far_end and _settled(pin)]
 
 
 def _two_way(found: Sequence[Crossing]) -> list[Crossing]:

@@ -857,7 +857,7 @@ class PinModel:
     @property
     def label(self) -> str:
         """``U3.12 (SDA)``, or ``U3.12`` for a pin without a name of its own."""
-        plain = self.name.strip("~{}")
+        plain = self.name.replace("~", "").replace("{slash}", "/").strip("{}").split("/")[0].strip("{}")
         return f"{self.part}.{self.number}" + (f" ({plain})" if plain and plain != self.number else "")
 
 
@@ -1178,6 +1178,10 @@ class SolvedCrossing:
         if crossing.inferred:
             conditions.append(crossing.inferred)
             outcome = Outcome.UNKNOWN
+            # One guess about one connector is one matter, however many of its lines it concerns.
+            far = crossing.receiver if crossing.receiver.inferred_far_end else crossing.driver
+            near = crossing.driver if far is crossing.receiver else crossing.receiver
+            cause = f"guess {rule} {far.part if far else ''} {near.supply if near else crossing.driver_rail}"
         sources = [pin.source for pin in (receive, (crossing.driver.drive if crossing.driver else None)) if pin is not None]
         return Finding(
             rule=rule,

@@ -48,7 +48,7 @@ NOT_IO_SUPPLY = re.compile(
     re.I,
 )
 ANALOG_NAME = re.compile(
-    r"(AIN|AN\d+$|ADC|DAC|VREF|AREF|XTAL|XIN|XOUT|OSC|XO$|XI$|ANT|RF|LNA|CANH|CANL|D\+|D-|DP$|DM$|USB_?D[PMN+-]|TX[PN+-]$|RX[PN+-]$|"
+    r"(V_?OUT\w*$|AIN|AN\d+$|ADC|DAC|VREF|AREF|XTAL|XIN|XOUT|OSC|XO$|XI$|ANT|RF|LNA|CANH|CANL|D\+|D-|DP$|DM$|USB_?D[PMN+-]|TX[PN+-]$|RX[PN+-]$|"
     r"FB$|COMP$|ISET|RSET|SW$|BST$|BOOT$|LX|SS$|VSENSE|CAP|C1[+-]|C2[+-]|CP\d?|CN\d?|MIC|SPK|LINE|HP[LR]|OUT[LRAB]?[+-]|IN[+-]|CC[12]$|SBU|REXT|RBIAS|"
     r"IREF|VCP|SDP|SDM|MDI|TD[+-]|RD[+-]|TDP|TDN|RDP|RDN|.*_[PN]$|.*DIFF.*|I(SEN|LIM|MON)|PROG$|TS$|NTC|VC$|RT$|RT/)",
     re.I,
@@ -155,6 +155,14 @@ def drive_from(facts: PinFacts, style: str, part: PartFacts | None) -> Drive:
             rated_low = max(rated_low or 0.0, point.iol_amps)
     if part is not None and not known:
         basis = Basis.ASSUMED
+    weak = part.translator.output_ohms if part is not None and part.translator is not None else None
+    if weak is not None and weak >= 500:
+        # A weak static driver behind an edge accelerator: its resistance is the maker's own design figure.
+        spread = Spread(low=weak * 0.7, nominal=weak, high=weak * 1.3)
+        return Drive(
+            style=style, high=high, low=_level("0"), high_ohms=spread, low_ohms=spread, limit_amps=facts.output_amps,
+            rated_low_amps=None, basis=Basis.LIBRARY, source=describe(part.provenance, part.title) if part else "",
+        )  # fmt: skip
     if bipolar_output(facts.outputs):
         high = _level("max(V-1.6, 0)")
     return Drive(

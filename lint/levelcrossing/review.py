@@ -152,7 +152,8 @@ def _explained(case: CaseFile, findings: Sequence[Finding]) -> dict[int, list[in
         head = case.crossings[finding.crossing].crossing
         for place in finding.also:
             for index in places.get(place, ()):
-                if case.crossings[index].crossing.island == head.island:
+                here = case.crossings[index].crossing
+                if here.island == head.island or (here.inferred and here.inferred == head.inferred) or (here.inferred and finding.cause.startswith("guess")):
                     found.setdefault(index, []).append(number)
     return found
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
+from itertools import product
 
 import numpy as np
 import numpy.typing as npt
@@ -83,9 +84,11 @@ class _Solver:
                 return SolvedCrossing(crossing=crossing, states={}, why=f"{len(island.nets)} nets hang together here: too large to be a level shifter")
         states: dict[str, StateResult] = {}
         limits: _Limits | None = None
+        partners = combined_drivers(crossing, island)
         for state in planned_states(crossing):
-            result, limits = self._state(crossing, island, state)
-            states[state] = result
+            for name, others in _combinations(state, partners):
+                result, limits = self._state(crossing, island, state, others)
+                states[name] = replace(result, state=name)
         return _collected(crossing, island, states, limits)
 
     def _tied(self, crossing: Crossing) -> SolvedCrossing:
@@ -113,9 +116,11 @@ class _Solver:
             high=result.receiver_volts,
         )
 
-    def _state(self, crossing: Crossing, island: Island, state: str) -> tuple[StateResult, _Limits]:
+    def _state(
+        self, crossing: Crossing, island: Island, state: str, others: Sequence[tuple[PinModel, str]] = ()
+    ) -> tuple[StateResult, _Limits]:
         pin = crossing.stage_driver or crossing.driver
-        builder = Builder(island, self.rails, pin, state)
+        builder = Builder(island, self.rails, pin, state, others=others)
         receiver = crossing.receiver
         supply_key = builder.supply_key(receiver)
         plan = builder.plan
@@ -144,8 +149,66 @@ class _Solver:
         limits = _Limits.of(receiver, supplies)
         drives_high = state in ("high", "released") and not (state == "released" and pin is not None and pin.drive is not None and pin.drive.style == "open-source")
         seen_high = drives_high != crossing.inverting
+        if others:
+            # Several signals meet in one circuit, a gate: which level is meant follows from the level that is there.
+            seen_high = bool(answer.receiver[0] >= (limits.vih[0] + limits.vil[0]) / 2)
         result = _judged(state, answer, limits, codes, variables, reads_high=seen_high, reads_low=not seen_high, influence=influence)
         return result, limits
+
+
+def combined_drivers(crossing: Crossing, island: Island) -> tuple[PinModel, ...]:
+    """Return the other outputs that meet the crossing's driver in one transistor: together they make a gate.
+
+    Parameters
+    ----------
+    crossing : Crossing
+    island : Island
+
+    Returns
+    -------
+    tuple of PinModel
+        Sure push-pull outputs on the terminals of a transistor of the link, directly or through resistors; two at most.
+    """
+    driver = crossing.stage_driver or crossing.driver
+    if driver is None:
+        return ()
+    terminals = {
+        net
+        for element in island.elements
+        if element.part in crossing.link and element.kind in ("mosfet", "bipolar")
+        for net in element.nets
+    }
+    if not terminals:
+        return ()
+    reach = set(terminals)
+    for element in island.elements:
+        if element.kind in ("resistor", "link") and terminals & set(element.nets):
+            reach.update(element.nets)
+    found = [
+        pin
+        for pin in island.pins
+        if pin.net in reach
+        and pin.drive is not None
+        and pin.drive.style == "push-pull"
+        and not pin.when
+        and pin.role == "signal"
+        and (pin.part, pin.number) != (driver.part, driver.number)
+        and pin.net not in (driver.net, crossing.receiver.net)
+        and pin.supply_volts is not None
+    ]
+    return tuple(found[:2])
+
+
+def _combinations(state: str, partners: Sequence[PinModel]) -> list[tuple[str, tuple[tuple[PinModel, str], ...]]]:
+    """Return every combination of the partners' states with a name for it."""
+    if not partners:
+        return [(state, ())]
+    combinations = []
+    for choice in product(("high", "low"), repeat=len(partners)):
+        others = tuple(zip(partners, choice, strict=True))
+        words = ", ".join(f"{pin.part}.{pin.number} {level}" for pin, level in others)
+        combinations.append((f"{state} with {words}", others))
+    return combinations
 
 
 class _Answer:
