@@ -70,7 +70,9 @@ class _Tracing:
         self.scene = scene
         self.joints = Joints(scene)
         self.sources = Sources(scene, self.joints)
-        self.feeds = find_feeds(scene, self.joints)
+        self.into: dict[str, list[Feed]] = defaultdict(list)
+        for feed in find_feeds(scene, self.joints):
+            self.into[self.joints.group(feed.target)].append(feed)
         self.groups: dict[str, tuple[str, ...]] = {}
         for net in sorted(scene.pins_on):
             if net not in scene.grounds:
@@ -157,26 +159,27 @@ class _Tracing:
 
     def _feed(self, kinds: Sequence[str]) -> None:
         """Give groups without a voltage that of the groups that feed them, round after round."""
-        into: dict[str, list[Feed]] = defaultdict(list)
-        for feed in self.feeds:
-            if feed.kind in kinds:
-                into[self.joints.group(feed.target)].append(feed)
-        for group in list(into):
-            if group in self.known or group not in self.groups or not self._supply_like(self.groups[group]):
-                del into[group]
+        into = {
+            group: [feed for feed in feeds if feed.kind in kinds]
+            for group, feeds in self.into.items()
+            if group not in self.known and group in self.groups and self._supply_like(self.groups[group])
+        }
         for _ in range(_ROUNDS):
-            fresh: dict[str, tuple[Evidence, tuple[str, ...]]] = {}
+            fresh = False
             for group, feeds in into.items():
                 found = self._combined(group, feeds)
-                if found is not None and (group not in self.fed or self.fed[group][0][1] != found[0]):
-                    fresh[group] = found
+                was = self.fed.get(group)
+                if found is None or (was and was[0][1] == found[0]):
+                    continue
+                if was and was[0][1].kind == "upstream" and found[0].kind == "diode":
+                    continue
+                # At once, so that two groups that lead into each other never feed each other.
+                supplied = [net for net in self.groups[group] if self.scene.keeps_company(net)]
+                self.fed[group] = [(self._chief(supplied or self.groups[group]), found[0])]
+                self.origin[group] = found[1]
+                fresh = True
             if not fresh:
                 return
-            for group, (item, sources) in fresh.items():
-                if group in self.fed and self.fed[group][0][1].kind == "upstream" and item.kind == "diode":
-                    continue
-                self.fed[group] = [(self.groups[group][0], item)]
-                self.origin[group] = sources
 
     def _combined(self, group: str, feeds: Sequence[Feed]) -> tuple[Evidence, tuple[str, ...]] | None:
         """Combine all feeds of a group: any of them may hold it, so its range spans them all."""
@@ -232,15 +235,10 @@ class _Tracing:
         known = self.known.get(group, ())
         if not known or any(item.kind not in ("name", "use") for _, item in known):
             return
-        for feed in self.feeds:
+        for feed in self.into.get(group, ()):
             source = self.joints.group(feed.source)
             volts = self._volts(source)
-            if (
-                self.joints.group(feed.target) != group
-                or volts is None
-                or volts.nominal <= 0.5
-                or feed.kind in ("filter", "choice")
-            ):
+            if volts is None or volts.nominal <= 0.5 or feed.kind in ("filter", "choice"):
                 continue
             strong = any(
                 item.kind in ("regulator", "feedback", "connector", "battery") for _, item in self.known.get(source, ())
@@ -274,7 +272,7 @@ class _Tracing:
         found = self.known.get(group) or self.fed.get(group) or []
         if not found and not self._powered_by(nets):
             return
-        domain = self._domain(group, nets, found)
+        domain = self._domain(group)
         disagreement = self._disagreement(found) if found else ""
         found = [*found, *self._also_fed(group)]
         for net in nets:
@@ -314,7 +312,7 @@ class _Tracing:
             for pin in pins
         ):
             return True
-        return any(self.joints.group(feed.target) == self.joints.group(nets[0]) for feed in self.feeds)
+        return self.joints.group(nets[0]) in self.into
 
     def _belongs(self, net: str, nets: Sequence[str], found: Sequence[tuple[str, Evidence]]) -> bool:
         """Tell whether a net of a group is a rail itself; a mode pin strapped to a supply by 0 ohm is none."""
@@ -336,29 +334,34 @@ class _Tracing:
             basis=Basis.weakest(item.basis, Basis.TRACED),
         )
 
-    def _domain(self, group: str, nets: Sequence[str], found: Sequence[tuple[str, Evidence]]) -> str:
-        """Return the net that feeds a group: where its source stands, else the one with most pins."""
+    def _domain(self, group: str) -> str:
+        """Return the net that feeds a group: where its source stands, else the largest whose name decided."""
+        nets = self.groups[group]
+        found = self.known.get(group) or self.fed.get(group) or []
         sources = [owner for owner, item in found if item.kind in ("regulator", "feedback", "battery", "connector")]
         if sources:
             return sources[0]
-        small = [
-            feed
-            for feed in self.feeds
-            if feed.kind in ("resistor", "filter") and self.joints.group(feed.target) == group
-        ]
+        small = {
+            self.joints.group(feed.source) for feed in self.into.get(group, ()) if feed.kind in ("resistor", "filter")
+        }
         origin = self.origin.get(group, ())
-        above = origin[0] if group not in self.known and len(origin) == 1 and small else self._larger(group, small)
+        fed = group not in self.known and len(origin) == 1 and origin[0] in small
+        above = origin[0] if fed else self._larger(group, small)
         if above:
-            return self._domain(above, self.groups[above], self.known.get(above) or self.fed.get(above) or [])
-        return max(nets, key=lambda net: (len(self.scene.pins_on[net]), [-ord(letter) for letter in net]))
+            return self._domain(above)
+        owners = [owner for owner, item in found if item.kind == found[0][1].kind]
+        return self._chief(owners or [net for net in nets if self._belongs(net, nets, found)])
 
-    def _larger(self, group: str, small: Sequence[Feed]) -> str:
+    def _chief(self, nets: Sequence[str]) -> str:
+        """Return the net with most pins, the first by name of equals."""
+        return max(sorted(nets), key=lambda net: len(self.scene.pins_on[net]), default="")
+
+    def _larger(self, group: str, above: set[str]) -> str:
         """Return the group of equal voltage that feeds a named one through a resistor, if it is one and the larger."""
         volts = self._volts(group)
-        above = {self.joints.group(feed.source) for feed in small}
         if volts is None or group not in self.known or len(above) != 1:
             return ""
-        other = above.pop()
+        (other,) = above
         theirs = self._volts(other) if other in self.known else None
         near = theirs is not None and abs(theirs.nominal - volts.nominal) <= NEAR * abs(volts.nominal)
         return other if near and self._size(other) > self._size(group) else ""
@@ -372,11 +375,10 @@ class _Tracing:
             return made[0].source
         origin = self.origin.get(group, ())
         if group not in self.known and len(origin) == 1:
-            ways = [feed for feed in self.feeds if self.joints.group(feed.target) == group]
+            ways = self.into.get(group, ())
             alone = {self.joints.group(feed.source) for feed in ways} == set(origin)
             if alone and {feed.kind for feed in ways} <= {"diode", "resistor", "filter"}:
-                nets = self.groups[origin[0]]
-                return self._domain(origin[0], nets, self.known.get(origin[0]) or [])
+                return self._domain(origin[0])
         return ""
 
     def _disagreement(self, found: Sequence[tuple[str, Evidence]]) -> str:
@@ -415,7 +417,7 @@ class _Tracing:
             supplied = [pin for net in nets for pin in self.scene.supplies(net) if self._matters(pin.part)]
             if not supplied or not self._sources_on(nets):
                 continue
-            net = max(nets, key=lambda net: (len(self.scene.pins_on[net]), [-ord(letter) for letter in net]))
+            net = self._chief([net for net in nets if net in by_net])
             hints = [f"supplies {self._listed([f'{pin.part} ({pin.name or pin.number})' for pin in supplied])}"]
             hints += list(self._makers(nets))
             yield (
@@ -443,13 +445,14 @@ class _Tracing:
                 title = f"{scene.title(out[0].part)} makes it at pin {out[0].name}"
                 yield f"{title}, whose output the trade data does not tell"
                 return
-        feeds = sorted({f"{feed.part} from {feed.source}" for feed in self.feeds if self._plausible(feed, nets)})
+        ways = self.into.get(self.joints.group(nets[0]), ())
+        feeds = sorted({f"{feed.part} from {self._label(feed.source)}" for feed in ways if self._plausible(feed)})
         if feeds:
             yield f"may be fed through {self._listed(feeds)}"
 
-    def _plausible(self, feed: Feed, nets: Sequence[str]) -> bool:
-        """Tell whether a way into some nets is worth naming: not a pull-up from a signal."""
-        if feed.target not in nets or feed.kind == "filter":
+    def _plausible(self, feed: Feed) -> bool:
+        """Tell whether a way is worth naming: not a pull-up from a signal."""
+        if feed.kind == "filter":
             return False
         scene = self.scene
         lead = any(scene.kinds[pin.part] == "connector" for pin in scene.pins_on[feed.source])
