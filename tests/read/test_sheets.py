@@ -362,6 +362,9 @@ def test_project_variables_and_aliases_are_taken_from_the_project_file(tmp_path:
     path = _write(tmp_path, sheet)
     path.with_suffix(".kicad_pro").write_text('{"text_variables": {"RAIL": "3V3"}}', encoding="utf-8")
     assert [net.name for net in read_sheets(path).nets] == ["/3V3_IN", "/S1"]
+    tops = '{"schematic": {"top_level_sheets": [{}, {}], "bus_aliases": {"PAIR": ["S1", "S2"]}}}'
+    path.with_suffix(".kicad_pro").write_text(tops, encoding="utf-8")
+    assert "the project has 2 top-level sheets; only root.kicad_sch" in read_sheets(path).remarks[0]
     path.with_suffix(".kicad_pro").write_text("{broken", encoding="utf-8")
     assert [net.name for net in read_sheets(path).nets] == ["/${RAIL}_IN", "/S1"]
 

@@ -12,6 +12,23 @@ from dataclasses import dataclass
 _VARIABLE = re.compile(r"\$\{([^${}]*)\}")
 _VECTOR = re.compile(r"([^\s\[\]]*)\[(\d+)\.\.(\d+)\]([^\s\[\]]*)")
 _MARKS = "~^_"
+_ESCAPED = {
+    "slash": "/",
+    "backslash": "\\",
+    "brace": "{",
+    "lt": "<",
+    "gt": ">",
+    "colon": ":",
+    "comma": ",",
+    "bar": "|",
+    "dollar": "$",
+    "space": " ",
+    "tab": "\t",
+    "return": "\n",
+    "quote": "'",
+    "dblquote": '"',
+}
+_ESCAPE = re.compile("[{](" + "|".join(_ESCAPED) + ")[}]")
 _LONGEST_VECTOR = 4096
 """Members of one bus; a longer one is taken for a slip of the pen and read as its first members."""
 _DEEPEST_ALIAS = 8
@@ -51,13 +68,17 @@ def _kept(match: re.Match[str], lookup: Callable[[str], str | None]) -> str:
 
 
 def as_net_name(text: str) -> str:
-    """Return text as it stands in a net name."""
-    return text.replace("/", "{slash}").replace("\n", "").replace("\r", "")
+    """Return text as it stands in a net name: only slashes stay escaped; nothing at all has a name, too."""
+    return _escaped(text) or "<NO NET>"
+
+
+def _escaped(text: str) -> str:
+    return plain(text).replace("/", "{slash}").replace("\n", "").replace("\r", "")
 
 
 def plain(text: str) -> str:
-    """Undo the escape that keeps a slash from parting sheets."""
-    return text.replace("{slash}", "/")
+    """Undo the escapes of letters that KiCad keeps out of its files' texts (``{slash}``, ``{lt}``)."""
+    return _ESCAPE.sub(lambda match: _ESCAPED[match[1]], text) if "{" in text else text
 
 
 def bus_of(text: str, aliases: Mapping[str, tuple[str, ...]], depth: int = 0) -> Bus | None:
@@ -77,7 +98,7 @@ def bus_of(text: str, aliases: Mapping[str, tuple[str, ...]], depth: int = 0) ->
     text = plain(text)
     vector = _vector(text)
     if vector is not None:
-        return Bus(True, tuple(Member(as_net_name(name), as_net_name(name)) for name in vector))
+        return Bus(True, tuple(Member(_escaped(name), _escaped(name)) for name in vector))
     group = _group(text)
     if group is None or depth > _DEEPEST_ALIAS:
         return None
@@ -89,8 +110,8 @@ def bus_of(text: str, aliases: Mapping[str, tuple[str, ...]], depth: int = 0) ->
             inner = bus_of(part, aliases, depth + 1) if part != word or "[" in part or "{" in part else None
             if inner is None and part in aliases and part != word:
                 inner = bus_of("{" + part + "}", aliases, depth + 1)
-            bares = [member.name for member in inner.members] if inner is not None else [as_net_name(part)]
-            members.extend(Member(as_net_name(start) + bare, bare) for bare in bares)
+            bares = [member.name for member in inner.members] if inner is not None else [_escaped(part)]
+            members.extend(Member(_escaped(start) + bare, bare) for bare in bares)
     return Bus(False, tuple(members))
 
 
@@ -166,9 +187,9 @@ def pin_net_name(*, reference: str, unit: str, number: str, name: str, several: 
         The net holds this pin alone or is marked as not connected.
     """
     if name and name != number:
-        middle = f"{reference}{unit}-{as_net_name(name)}"
+        middle = f"{reference}{unit}-{_escaped(name)}"
         if unused or several:
-            middle += f"-Pad{as_net_name(number)}"
+            middle += f"-Pad{_escaped(number)}"
     else:
-        middle = f"{reference}-Pad{as_net_name(number)}"
+        middle = f"{reference}-Pad{_escaped(number)}"
     return f"{'unconnected' if unused else 'Net'}-({middle})"

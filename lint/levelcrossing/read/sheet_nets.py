@@ -29,7 +29,8 @@ _STRENGTH = {"global": GLOBAL, "local": LOCAL, "hierarchical": HIERARCHICAL, "sh
 class UsedPin:
     """A pin on one use of a sheet, with what naming needs of its symbol.
 
-    ``power`` is the net that a power pin names, with ``power_local`` telling whether only on its sheet.
+    ``power`` is the net that a power pin names, with ``power_local`` telling whether only on its sheet; ``names`` tells
+    whether a net may be named after the pin, which power flags and the like do not.
     """
 
     reference: str
@@ -38,6 +39,8 @@ class UsedPin:
     unit: str
     several: bool
     netlisted: bool
+    on_board: bool
+    names: bool
     power: str | None = None
     power_local: bool = False
 
@@ -389,7 +392,7 @@ class Nets:
         unused = unused or any(used.pin.kind == "no_connect" for used in pins)
         names = []
         for used in pins:
-            if not used.reference.startswith("#"):
+            if used.names:
                 name = pin_net_name(
                     reference=used.reference,
                     unit=used.unit,
@@ -398,7 +401,7 @@ class Nets:
                     several=used.several,
                     unused=unused,
                 )
-                names.append((not used.netlisted, "-Pad" in name, name))
+                names.append((not used.on_board, "-Pad" in name, name))
         return min(names)[2] if names else ""
 
     def _finish(self, strong: dict[str, list[int]], weak: list[tuple[str, list[int]]]) -> list[DrawnNet]:

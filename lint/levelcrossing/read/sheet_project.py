@@ -147,6 +147,12 @@ class Project:
     def _grow(self) -> None:
         schematic = self.settings.get("schematic")
         aliases = schematic.get("bus_aliases") if isinstance(schematic, dict) else None
+        tops = schematic.get("top_level_sheets") if isinstance(schematic, dict) else None
+        if isinstance(tops, list) and len(tops) > 1:
+            self.remarks.append(
+                f"{self.root.stem}.kicad_pro: the project has {len(tops)} top-level sheets; "
+                f"only {self.root.name} and what lies below it was read"
+            )
         if isinstance(aliases, dict):
             self.aliases.update(
                 {str(key): tuple(map(str, members)) for key, members in aliases.items() if isinstance(members, list)}

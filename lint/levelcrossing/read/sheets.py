@@ -154,6 +154,8 @@ class _Reader:
             unit=unit_letters(unit.instance.unit) if library.units > 1 else "",
             several=len(same) > 1,
             netlisted=self._is_part(unit),
+            on_board=unit.symbol.on_board and use.on_board,
+            names=not library.power and not library.field("Reference").startswith("#"),
             power=power,
             power_local=library.power == "local",
         )
@@ -170,7 +172,7 @@ class _Reader:
             "SHEETFILE": use.box.file if use.box is not None else "",
             "SHEETPATH": use.names,
             "FILENAME": use.file.path.name,
-            "PROJECTNAME": self.project.root.stem,
+            "PROJECTNAME": self.project.root.stem if self.project.settings else "",
             "#": use.page,
             "##": str(len(self.project.uses)),
         }

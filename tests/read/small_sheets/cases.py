@@ -238,6 +238,51 @@ def names_with_marks(name: str) -> list[Drawing]:
 
 
 @case
+def escaped_letters(name: str) -> list[Drawing]:
+    """Letters that KiCad keeps out of its files are written in braces; in net names only the slash stays so."""
+    sheet = Drawing(name)
+    texts = (
+        "a{lt}b{gt}",
+        "{dblquote}{space}{colon}",
+        "{brace}",
+        "x{y",
+        "a{tilde}b",
+        "{slash}x{backslash}",
+        "[x]",
+        "^{a b}",
+    )
+    for row, text in enumerate((*texts, " lead", "trail ", "two\\nlines", "@{1+1}", "é Ω")):
+        sheet.label(text, 0, row * 2).tp((f"TP{row + 1}", 0, row * 2))
+    sheet.bus((20, 0), (24, 0)).label("D{slash}[0..1]", 21, 0).label("D{slash}0", 21, 4).tp(("TP97", 21, 4))
+    return [sheet.part("own:VCC", "#PWR01", 10, 5, value="v{lt}w").tp(("TP98", 10, 5))]
+
+
+@case
+def flags_of_sheets(name: str) -> list[Drawing]:
+    """A sheet that is not fitted or not on the board makes its parts so; a sheet may lack a name."""
+    sheet = Drawing(name)
+    drawings = [sheet]
+    for row, (box, flag) in enumerate((("bare", "(dnp no)"), ("off", "(on_board yes)"), ("", ""))):
+        below = Drawing(f"{name}_below{row}", number=row + 2)
+        y = row * 12
+        sheet.sheet(box, below, 20, y, [("A", "input", 20, y + 2)]).wire((15, y + 2), (20, y + 2))
+        sheet.tp((f"TP{row + 1}", 15, y + 2))
+        if flag:
+            other = flag.replace("no", "yes") if "no" in flag else flag.replace("yes", "no")
+            sheet.items = [item.replace(flag, other) if f'"{box}"' in item else item for item in sheet.items]
+        below.hier("A", 0, 0).tp((f"TP{row + 11}", 0, 0)).label("LOCAL", 0, 3).tp((f"TP{row + 21}", 0, 3))
+        drawings.append(below)
+    return drawings
+
+
+@case
+def odd_references(name: str) -> list[Drawing]:
+    """A part whose reference starts with # is in no net, yet may name one; a part without a number names none."""
+    sheet = Drawing(name).wire((0, 0), (5, 0)).part("own:TP", "#TP9", 0, 0).tp(("TP10", 5, 0))
+    return [sheet.wire((0, 5), (5, 5)).part("own:R", "R?", 0, 6).part("own:R", "R1", 5, 6)]
+
+
+@case
 def text_variables(name: str) -> list[Drawing]:
     """Labels may hold variables: of the sheet and of the project."""
     sheet, below = _pair(name)
