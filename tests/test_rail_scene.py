@@ -84,3 +84,9 @@ def test_switch_node_is_told_by_its_pin_unless_it_is_decoupled() -> None:
     assert scene_of(buck).switching("N1")
     assert scene_of(buck).converter("U1")
     assert not scene_of(buck, "C1 10u Device:C | 1 - passive N1 | 2 - passive GND").switching("N1")
+
+
+def test_negative_supply_of_amplifiers_called_vss_is_no_ground_beside_another_one() -> None:
+    amplifier = "U1 OPA Amplifier:OPA | 2 V- power_in VSS | 5 V+ power_in VDD"
+    assert "VSS" not in scene_of(amplifier, "R1 1k Device:R | 1 - passive GND | 2 - passive X").grounds
+    assert "VSS" in scene_of(amplifier).grounds

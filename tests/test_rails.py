@@ -369,3 +369,86 @@ def test_the_same_board_gives_the_same_rails() -> None:
         ldo("VS", "+3V3"),
     )
     assert repr(trace(*lines)) == repr(trace(*lines))
+
+
+# ------------------------------------------------------------------------------------------------------------ the corners
+
+
+def test_sides_of_a_shifter_board_without_integrated_circuits_are_asked_for() -> None:
+    cell = (
+        "Q1 BSS138 Device:Q_NMOS_GSD | 1 G input LV | 2 S passive A1 | 3 D passive B1",
+        "R1 10k Device:R | 1 - passive LV | 2 - passive A1",
+        "R2 10k Device:R | 1 - passive HV | 2 - passive B1",
+        "J1 in Connector:Conn_01x03 | 1 - passive LV | 2 - passive A1 | 3 - passive GND",
+        "J2 out Connector:Conn_01x03 | 1 - passive HV | 2 - passive B1 | 3 - passive GND",
+    )
+    rails = trace(*cell)
+    assert [net for net, _ in rails.unknown] == ["HV", "LV"]
+    assert {"A1", "B1"}.isdisjoint(rails.by_net)
+    assert "R2" in dict(rails.unknown)["HV"]
+
+
+def test_small_resistor_between_two_names_of_one_voltage_makes_one_domain() -> None:
+    lines = (gate("+3V3", 1), gate("+3V3", 2), gate("3V3A", 3), "R1 10R Device:R | 1 - passive +3V3 | 2 - passive 3V3A")
+    rails = trace(*lines)
+    assert rails.by_net["3V3A"].domain == "+3V3"
+    assert rails.by_net["+3V3"].domain == "+3V3"
+
+
+def test_own_name_comes_first_where_it_says_the_same() -> None:
+    rails = trace("L1 2u2 Device:L | 1 - passive +5V | 2 - passive +5F", gate("+5V", 1), gate("+5F", 2))
+    assert rails.by_net["+5V"].evidence[0].text == "its name says 5 V"
+    assert rails.by_net["+5F"].evidence[0].text == "its name says 5 V"
+
+
+def test_what_feeds_a_named_rail_is_told_beside_its_name() -> None:
+    found = rail("+5V", "D1 1N5819 Device:D_Schottky | 1 K passive +5V | 2 A passive VBUS", gate("+5V"), cap("VBUS"))
+    assert [item.kind for item in found.evidence] == ["name", "diode"]
+    assert "VBUS" in found.evidence[1].text
+    assert not found.disagreement
+
+
+def test_a_converter_without_data_still_tells_what_it_feeds_on() -> None:
+    buck = "U5 XYZ9 Local:BUCK | 1 VIN power_in +12V | 2 GND power_in GND | 3 SW output SWN | 4 EN input {}"
+    coil = "L1 4u7 Device:L | 1 - passive SWN | 2 - passive +3V3"
+    lines = (coil, cap("+3V3", "22u"), gate("+3V3"))
+    assert rail("+3V3", buck.format("+12V"), *lines).fed_by == "+12V"
+    driven = gate("+12V", 2).replace("OUT2", "RUN")
+    assert rail("+3V3", buck.format("RUN"), driven, *lines).fed_by == ""
+
+
+def test_a_module_makes_its_output_from_its_supply() -> None:
+    bridge = "U7 FT232RL Local:FT232RL | 17 3V3OUT power_out V33 | 7 GND power_in GND | 20 VCC power_in +5V"
+    assert rail("V33", bridge, gate("+5V", 2), cap("V33")).fed_by == "+5V"
+
+
+def test_diodes_in_both_directions_settle() -> None:
+    pair = (
+        "D1 1N5819 Device:D_Schottky | 1 K passive VA1 | 2 A passive VB1",
+        "D2 1N5819 Device:D_Schottky | 1 K passive VB1 | 2 A passive VA1",
+        "D3 1N5819 Device:D_Schottky | 1 K passive VA1 | 2 A passive +5V",
+    )
+    rails = trace(*pair, gate("VA1", 1), gate("VB1", 2), gate("+5V", 3))
+    assert span(rails.by_net["VA1"]) == (4.25, 4.7, 5.05)
+    assert span(rails.by_net["VB1"]) == (3.75, 4.4, 4.85)
+
+
+def test_a_usb_power_delivery_controller_is_pointed_out() -> None:
+    usb = "J1 USB Connector:USB_C_Receptacle | A4 VBUS power_out VIN1 | A1 GND power_out GND"
+    asks = "U3 CH224K Local:CH224K | 1 VDD power_in VIN1 | 2 GND power_in GND"
+    assert "CH224K" in rail("VIN1", usb, asks, gate("VIN1")).evidence[0].text
+    assert "CH224K" not in rail("VIN1", usb, gate("VIN1")).evidence[0].text
+
+
+def test_every_domain_and_every_unknown_net_is_a_rail() -> None:
+    """Also where nets that are no rails (a strapped mode pin with more pins than the supply) stand in the group."""
+    strap = "R1 0R Device:R | 1 - passive N1 | 2 - passive MODE"
+    modes = [
+        f"U{n} 74LVC1G04 74xGxx:74LVC1G04 | 2 A input MODE | 3 GND power_in GND | 5 VCC power_in +5V"
+        for n in range(2, 7)
+    ]
+    feed = "R2 1R Device:R | 1 - passive +5V | 2 - passive N1"
+    rails = trace(strap, *modes, feed, gate("N1"))
+    assert "MODE" not in rails.by_net
+    assert rails.by_net["N1"].domain in rails.by_net
+    assert all(net in rails.by_net for net, _ in rails.unknown)

@@ -28,6 +28,11 @@ _NO_SUPPLY = re.compile(
 _OUTPUT_PIN = re.compile(r"V?_?OUT\d?|VO(_\w+)?|.*_?OUT|V?REG_?OUT.*|VREG\d?", re.IGNORECASE)
 _SWITCH_PIN = re.compile(r"(.*_)?(SW|LX|PH|PHASE|SWN|VSW|SWITCH)\d?[A-Z]?|L[12]?", re.IGNORECASE)
 _GROUND_WORD = re.compile(r"[A-Z]?GND\d?|VSS[AD]?", re.IGNORECASE)
+# Nets called so are supplies even where only pull-ups and transistors hang on them (naming habits); HV and LV are the
+# two sides of a level-shifter board.
+_SUPPLY_NET = re.compile(
+    r"[+]?([AD]?V(CC|DD)[A-Z0-9]{0,3}|V_?(IN|IO|MOT|M|SYS|LOGIC|EXT|HIGH|LOW|TARGET|REF[AB])\d?|HV|LV)", re.IGNORECASE
+)
 ACTIVE = ("ic", "regulator")
 
 
@@ -184,6 +189,14 @@ class Scene:
         if net not in self._signals:
             self._signals[net] = self.book.looks_like_signal(net)
         return self._signals[net]
+
+    def pulled_supply(self, net: str) -> bool:
+        """Tell a supply by its name that feeds no integrated circuit: two parts at least hang on it, and no signal."""
+        if not _SUPPLY_NET.fullmatch(net.rpartition("/")[2]) or next(self.signal_pins(net), None) is not None:
+            return False
+        hanging = ("resistor", "resistor-pack", "transistor", "capacitor", "connector")
+        parts = {pin.part for pin in self.pins_on.get(net, ()) if self.kinds[pin.part] in hanging}
+        return len(parts) >= 2 and any(self.kinds[part].startswith(("resistor", "transistor")) for part in parts)
 
     def decoupled(self, net: str) -> bool:
         """Tell whether a net has a capacitor of 100 nF or more to ground, or one whose value cannot be read."""

@@ -30,6 +30,10 @@ _CHARGER = re.compile(
     r"^(TP405\d|TP5100|BL405\d|LTC405\d|MCP738\d\d|BQ2[1-5]\d{3}|IP530\d|CN3\d{3}|MAX15[15]\d|STC4054|ME4054)",
     re.IGNORECASE,
 )
+# Controllers that ask a USB source for 9 to 20 V (makers' data sheets, remembered).
+_POWER_DELIVERY = re.compile(
+    r"^(FUSB30[27]|CH224|IP2721|STUSB45\d\d|HUSB238|CYPD3\d{3}|AP33772|TPS2575\d|TPS6598\d)", re.IGNORECASE
+)
 _VOLTS_WORD = re.compile(r"\dV|V\d|VBUS|VUSB|\d\.\d", re.IGNORECASE)
 _BARE_POINT = re.compile(r"(?<!\d)\d_\d(?!\d)")
 _BATTERY_PIN = re.compile(r"V?_?BATT?[+]?|BATT?_?\+|B\+", re.IGNORECASE)
@@ -293,6 +297,9 @@ class Sources:
             numbers = units_listed([pin.number for pin in pins])
             text = f"pin{'s' if len(pins) > 1 else ''} {numbers} of {scene.title(part.reference)} "
             text += f"{'are' if len(pins) > 1 else 'is'} named {pins[0].name}"
+            asking = [other for other in scene.pins_on[net] if _POWER_DELIVERY.match(scene.parts[other.part].value)]
+            if asking:
+                text += f"; {scene.title(asking[0].part)} may ask for more, which only the settings can tell"
             self.add(net, "connector", scene.tolerant(volts), Basis.TRACED, text, ranged=volts.low < volts.high)
 
     def _from_facts(self, part: Part, pin: Pin, supplies: tuple[SupplyFacts, ...]) -> bool:

@@ -151,7 +151,7 @@ class _Tracing:
     def _supply_like(self, nets: Sequence[str]) -> bool:
         """Tell whether a group without a voltage may be a rail: it supplies a part, or is decoupled and no signal."""
         scene = self.scene
-        if any(scene.supplies(net) for net in nets):
+        if any(scene.supplies(net) or scene.pulled_supply(net) for net in nets):
             return True
         if any(scene.signal_named(net) for net in nets):
             return False
@@ -296,6 +296,8 @@ class _Tracing:
     def _powered_by(self, nets: Sequence[str]) -> bool:
         """Tell whether a group without a voltage is a supply all the same; a bias pin on a pull-up alone is none."""
         scene = self.scene
+        if any(scene.pulled_supply(net) for net in nets):
+            return True
         pins = [pin for net in nets for pin in scene.pins_on[net]]
         if len(pins) < 2 or not any(scene.role(pin) in ("in", "out") for pin in pins):
             return False
@@ -415,10 +417,13 @@ class _Tracing:
             ):
                 continue
             supplied = [pin for net in nets for pin in self.scene.supplies(net) if self._matters(pin.part)]
-            if not supplied or not self._sources_on(nets):
+            pulled = [net for net in nets if self.scene.pulled_supply(net)]
+            if not (supplied and self._sources_on(nets)) and not pulled:
                 continue
             net = self._chief([net for net in nets if net in by_net])
-            hints = [f"supplies {self._listed([f'{pin.part} ({pin.name or pin.number})' for pin in supplied])}"]
+            whom = [f"{pin.part} ({pin.name or pin.number})" for pin in supplied]
+            whom = whom or [pin.part for net in pulled for pin in self.scene.pins_on[net] if self._hangs(pin.part)]
+            hints = [f"supplies {self._listed(whom)}"]
             hints += list(self._makers(nets))
             yield (
                 net,
@@ -449,6 +454,9 @@ class _Tracing:
         feeds = sorted({f"{feed.part} from {self._label(feed.source)}" for feed in ways if self._plausible(feed)})
         if feeds:
             yield f"may be fed through {self._listed(feeds)}"
+
+    def _hangs(self, reference: str) -> bool:
+        return self.scene.kinds[reference].startswith(("resistor", "transistor"))
 
     def _plausible(self, feed: Feed) -> bool:
         """Tell whether a way is worth naming: not a pull-up from a signal."""
