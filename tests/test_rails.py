@@ -371,7 +371,7 @@ def test_the_same_board_gives_the_same_rails() -> None:
     assert repr(trace(*lines)) == repr(trace(*lines))
 
 
-# ------------------------------------------------------------------------------------------------------------ the corners
+# ----------------------------------------------------------------------------------------------------------- corners
 
 
 def test_sides_of_a_shifter_board_without_integrated_circuits_are_asked_for() -> None:
