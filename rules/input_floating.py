@@ -4,11 +4,11 @@ Why: a CMOS input without a defined level picks up charge, switches at random an
 
 What to do: tie it to a supply or ground (directly or through a resistor), or connect the driver that was meant.
 
-Speaks when an input that the trade data or the symbol calls an input is alone on its net, or shares it only with other
-inputs, and nothing pulls the net.
+Speaks when an input of a logic part or translator is alone on its net, or when several inputs that the trade data knows
+share a net, and nothing drives or pulls it.
 
 Stays quiet when anything drives or pulls the net, when a connector or test point leads off the board, when the part has a
-pull-up of its own, and when the pin is marked as not connected.
+pull-up of its own, for a lone input of a controller or interface part (they often pull unused inputs), and when the pin is marked as not connected.
 """
 
 from collections.abc import Iterator
@@ -30,6 +30,13 @@ def check(case: CaseFile) -> Iterator[Finding]:
         if any(pin.pull_up_ohms for pin in inputs) or any(_other_pins(case, net, inputs) for net in island.nets):
             continue
         first = inputs[0]
+        group = case.facts[first.part].group if first.part in case.facts else ""
+        alone = len(inputs) == 1
+        # Controllers and interface parts often pull their unused inputs themselves; plain logic never does.
+        if alone and group not in ("logic", "translator"):
+            continue
+        if any(pin.facts is None or pin.facts.direction is None for pin in inputs):
+            continue
         if first.basis is Basis.ASSUMED or (first.facts is not None and "pull" in first.facts.note):
             continue
         value = names[first.part].value

@@ -53,4 +53,5 @@ def check(case: CaseFile) -> Iterator[Finding]:
         )
         if clamped:
             text += f"; {worst.clamp_amps.nominal * 1e3:.1f} mA flow through its clamp diode"
-        yield solved.finding(index, NAME, Outcome.DAMAGE if nominal else Outcome.MARGINAL, text + ".", cause=f"over {solved.crossing.receiver.part}.{solved.crossing.receiver.number} {solved.crossing.driver_rail}")
+        remedy = f"Tie {solved.crossing.receiver.label} to {solved.crossing.receiver_rail or 'its own supply'}." if tied else ""
+        yield solved.finding(index, NAME, Outcome.DAMAGE if nominal else Outcome.MARGINAL, text + ".", remedy=remedy, cause=f"over {solved.crossing.receiver.part}.{solved.crossing.receiver.number} {solved.crossing.driver_rail}")

@@ -20,6 +20,9 @@ NAME = "supply-range"
 OUTCOME = Outcome.DAMAGE
 SOURCES = ("recommended operating conditions of the part's data sheet",)
 
+# A rail worked out from a divider may miss a round figure by this much without meaning anything [1].
+NEARLY = 0.02
+
 
 def check(case: CaseFile) -> Iterator[Finding]:
     """Yield one finding per part and supply outside the range."""
@@ -33,7 +36,7 @@ def check(case: CaseFile) -> Iterator[Finding]:
             if supply is None or supply.low_volts is None or supply.high_volts is None:
                 continue
             low, high = supply.low_volts, supply.high_volts
-            if low - 1e-9 <= volts.nominal * 1.001 and volts.nominal <= high * 1.001:
+            if low <= volts.nominal * (1 + NEARLY) and volts.nominal <= high * (1 + NEARLY):
                 continue
             done.add(pin.net)
             above = volts.nominal > high

@@ -9,8 +9,8 @@ from dataclasses import dataclass, replace
 
 import networkx
 
+from levelcrossing import partkinds, shifters
 from levelcrossing import pins as pin_models
-from levelcrossing import shifters
 from levelcrossing.islands import SWITCH_KINDS
 from levelcrossing.model import (
     Basis,
@@ -31,7 +31,11 @@ from levelcrossing.model import (
 SAME_SUPPLY = 0.04
 SERIES_AT_MOST_OHMS = 2_200.0
 CHAIN_KINDS = frozenset({"auto-buffer", "dual-dir", "dual-fixed", "i2c-buffer"})
-ANALOG_NET = re.compile(r".*(TMDS|USB_?D[PMN+-]|CSI|DSI|MDI|ETH|_D\d?[PN]$|[_.](P|N)$|LVDS|CANH|CANL|RS485|AUDIO|SPK|MIC|ANT)", re.I)
+# Hosts whose signal level is fixed by their maker, told from the connector's reference, value or symbol.
+KNOWN_HOSTS = (
+    (re.compile(r"RASPBERRY|\bRPI|RPI_?\d|PI_?ZERO", re.I), 3.3, "Raspberry Pi, whose header signals are 3.3 V (maker's GPIO documentation)"),
+)
+ANALOG_NET = re.compile(r".*(TMDS|USB_?D[PMN+-]|CSI|DSI|MDI|ETH|_D\d?[PN]$|.*\w[+-]$|[_.](P|N)$|LVDS|CANH|CANL|RS485|AUDIO|SPK|MIC|ANT)", re.I)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -73,6 +77,7 @@ def find_crossings(
         Crossings in a stable order, with what could not be judged and why.
     """
     finder = _Finder(board, rails, pins, facts, islands)
+    finder.note_jumpers(board)
     return finder.run()
 
 
@@ -88,6 +93,7 @@ class _Finder:
         self.rails = rails
         self.facts = facts
         self.pins = pins
+        self.values = {part.reference: f"{part.value} {part.symbol}" for part in board.parts}
         self.supplies_on: dict[str, list[tuple[str, Spread]]] = defaultdict(list)
         for (reference, _), pin in pins.items():
             volts = rails.volts(pin.net)
@@ -132,13 +138,19 @@ class _Finder:
         return replace(island, pins=tuple(new))
 
     def _inferred(self, pin: PinModel, pulled: Sequence[tuple[str, Spread]]) -> PinModel:
-        if pulled:
+        if any(ANALOG_NET.match(name) for name in (pin.net, pin.name)):
+            self._note_higher(pin, pulled)
+            return pin
+        host = next((known for known in KNOWN_HOSTS if known[0].search(f"{pin.part} {self.values.get(pin.part, '')}")), None)
+        if host is not None:
+            volts = Spread.around(host[1], 0.05)
+            why = f"{pin.part} goes to a {host[2]}"
+            rail, style, basis = "", False, Basis.TRACED
+        elif pulled:
             rail, volts = max(pulled, key=lambda pull: pull[1].nominal)
             why = f"the other side of {pin.part}.{pin.number} is an open-drain line at the level of its pull-up to {rail}"
             style, basis = True, Basis.TRACED
-            higher = [name for name, level in self.supplies_on.get(pin.part, []) if level.nominal > 1.04 * volts.nominal]
-            if higher:
-                self.far_ends[pin.part, pin.number] = f"{pin.part} also carries {higher[0]}"
+            self._note_higher(pin, pulled)
         else:
             supplies = self.supplies_on.get(pin.part, [])
             nominal = {round(volts.nominal, 2) for _, volts in supplies}
@@ -152,11 +164,20 @@ class _Finder:
             supply=rail,
             supply_volts=volts,
             drive=pin_models.far_end_drive(open_drain=style, basis=basis),
-            receive=replace(pin_models.cmos_receive(), basis=Basis.ASSUMED, source="an ordinary CMOS input is assumed beyond the connector"),
+            receive=replace(pin_models.cmos_receive(), clamp_high=False, source="an ordinary CMOS input is assumed beyond the connector"),
             basis=Basis.ASSUMED,
             inferred_far_end=True,
             why=why,
         )
+
+    def _note_higher(self, pin: PinModel, pulled: Sequence[tuple[str, Spread]]) -> None:
+        """A pull-up tells the level only if what is plugged in has none of its own to a higher supply."""
+        if not pulled:
+            return
+        level = max(volts.nominal for _, volts in pulled)
+        higher = [name for name, volts in self.supplies_on.get(pin.part, []) if volts.nominal > 1.04 * level]
+        if higher:
+            self.far_ends[pin.part, pin.number] = f"{pin.part} also carries {higher[0]}"
 
     # -- drivers -----------------------------------------------------------------------------------------------------
 
@@ -264,6 +285,7 @@ class _Finder:
     def _chain(self, reference: str, known: PartFacts, into: PinModel, out: PinModel) -> Iterator[Crossing]:
         if into.receive is None or out.drive is None or into.supply_volts is None or out.supply_volts is None:
             return
+        assert known.translator is not None
         near_side, far_side = self.by_net[into.net], self.by_net[out.net]
         if near_side is far_side:
             return
@@ -286,7 +308,7 @@ class _Finder:
                 path = far_side.path(out.net, sink.net)
                 if path is None:
                     continue
-                condition = " and ".join(dict.fromkeys(text for text in (source.when, out.when, *_far_condition(source, sink)) if text))
+                condition = " and ".join(dict.fromkeys(text for text in (source.when, "" if known.translator.direction == "auto" or known.translator.kind == "auto-buffer" else out.when, *_far_condition(source, sink)) if text))
                 yield Crossing(
                     driver=source,
                     driver_rail=source.supply,
@@ -321,6 +343,21 @@ class _Finder:
             )
 
     # -- what cannot be judged -----------------------------------------------------------------------------------------
+
+    def note_jumpers(self, board: Board) -> None:
+        """Note the receivers that a jumper of unknown state may join to another supply's driver."""
+        for part in board.parts:
+            if not part.fitted or partkinds.kind_of(part) != "jumper" or len(part.pins) != 2 or partkinds.joined_pins(part):
+                continue
+            first, second = (self.by_net.get(pin.net) for pin in part.pins)
+            if first is None or second is None or first is second or re.search(r"OPEN", f"{part.value} {part.symbol}", re.I):
+                continue
+            for near, far in ((first, second), (second, first)):
+                levels = [pin.supply_volts for pin in self.drivers_of[id(far)] if pin.supply_volts is not None and pin.role == "signal" and not pin.when]
+                for pin in near.island.pins:
+                    if pin.role == "signal" and pin.receive is not None and pin.supply_volts is not None and any(not same_supply(level, pin.supply_volts) for level in levels):
+                        why = f"{part.reference} ({part.value}) is a jumper whose state nothing tells; closed, it joins this pin to a driver on another supply"
+                        self.not_judged[pin.part, pin.number] = NotJudged(part=pin.part, pin=pin.number, name=pin.name, net=pin.net, why=why)
 
     def _note_unknown(self, field: _Field, drivers: Sequence[PinModel], receivers: Sequence[PinModel]) -> None:
         active = {(pin.part, pin.number): pin for pin in [*drivers, *receivers] if pin.role == "signal"}

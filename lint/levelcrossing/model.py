@@ -793,6 +793,8 @@ class Receive:
     leakage_amps : float
     off_tolerant : bool
         Specified to bear a signal while unpowered.
+    reads : bool
+        False for a pin that bears the line's voltage without reading it (an open-drain output).
     basis, source
     """
 
@@ -809,6 +811,7 @@ class Receive:
     off_tolerant: bool
     basis: Basis
     source: str
+    reads: bool = True
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -987,7 +990,8 @@ class Crossing:
         """Name the driver for people: ``U1.5 (TX) on +5V``, or ``+5V through R3``."""
         if self.driver is None:
             return f"{self.driver_rail} through {self.link[0]}" if self.link else self.driver_rail
-        return self.driver.label + (f" on {self.driver_rail}" if self.driver_rail else "")
+        through = f" through {' and '.join(self.through)}" if self.through else ""
+        return self.driver.label + (f" on {self.driver_rail}" if self.driver_rail else "") + through
 
     @property
     def target(self) -> str:
@@ -1181,7 +1185,9 @@ class SolvedCrossing:
             # One guess about one connector is one matter, however many of its lines it concerns.
             far = crossing.receiver if crossing.receiver.inferred_far_end else crossing.driver
             near = crossing.driver if far is crossing.receiver else crossing.receiver
-            cause = f"guess {rule} {far.part if far else ''} {near.supply if near else crossing.driver_rail}"
+            cause = f"guess {rule} {far.part if far else ''}"
+            volts = near.supply_volts.nominal if near is not None and near.supply_volts is not None else 5.0
+            remedy = f"Declare what is plugged in: under [far_ends] in levelcrossing.toml, \"{far.part if far else ''}\" = {{rail = \"{volts:.3g}\"}}."
         sources = [pin.source for pin in (receive, (crossing.driver.drive if crossing.driver else None)) if pin is not None]
         return Finding(
             rule=rule,

@@ -28,6 +28,7 @@ from levelcrossing.model import (
 )
 from levelcrossing.pinnames import looks_like_supply, pin_words
 from levelcrossing.tradebook import Tradebook
+from levelcrossing.units import format_volts
 
 # Output resistance taken for a CMOS output of which nothing is known [ohm]: 4 mA at 0.4 V gives 100 ohm at worst
 # (the LVCMOS test point of JESD8C.01 is 2 mA; common practice puts small drivers at 25 to 100 ohm).
@@ -50,10 +51,12 @@ NOT_IO_SUPPLY = re.compile(
 ANALOG_NAME = re.compile(
     r"(V_?OUT\w*$|AIN|AN\d+$|ADC|DAC|VREF|AREF|XTAL|XIN|XOUT|OSC|XO$|XI$|ANT|RF|LNA|CANH|CANL|D\+|D-|DP$|DM$|USB_?D[PMN+-]|TX[PN+-]$|RX[PN+-]$|"
     r"FB$|COMP$|ISET|RSET|SW$|BST$|BOOT$|LX|SS$|VSENSE|CAP|C1[+-]|C2[+-]|CP\d?|CN\d?|MIC|SPK|LINE|HP[LR]|OUT[LRAB]?[+-]|IN[+-]|CC[12]$|SBU|REXT|RBIAS|"
-    r"IREF|VCP|SDP|SDM|MDI|TD[+-]|RD[+-]|TDP|TDN|RDP|RDN|.*_[PN]$|.*DIFF.*|I(SEN|LIM|MON)|PROG$|TS$|NTC|VC$|RT$|RT/)",
+    r".*\w[+-]$|IREF|VCP|SDP|SDM|MDI|TD[+-]|RD[+-]|TDP|TDN|RDP|RDN|.*_[PN]$|.*DIFF.*|I(SEN|LIM|MON)|PROG$|TS$|NTC|VC$|RT$|RT/)",
     re.I,
 )
 OPEN_DRAIN_NAME = re.compile(r".*(PGOOD|PWRGD|POK|PG$|^PG|ALERT|ALERTB|INT[B#N]?\d?$|IRQ|FAULT|FLT|nINT|OVCUR|OC$|CHRG|STDBY|STAT\d?$|STATUS|RDY/BSY).*", re.I)
+STRICT_SUPPLY = re.compile(r"[AD]?V(DD|CC|PP|EE|TT)[A-Z0-9_]*", re.I)
+TWO_WAY_NAME = re.compile(r"(SDA|SCL|SMB|DQ|1W|IO|GPIO|P[A-Z]?\d|D\d|SDIO|ALERT|BUSY)", re.I)
 READ_NAME = re.compile(r"(SDI|DIN|SI|MOSI|SCK|SCLK|CLK|CS|CSN|CSB|NCS|SS|EN|ENA|ENABLE|OE|CE|WE|RD|WR|RST|RESET|NRST|MR|SHDN|WP|HOLD|DIR|SEL|STBY|MCLK|LRCK|BCK|BCLK)", re.I)
 DRIVE_NAME = re.compile(r"(SDO|DOUT|SO|MISO|RO|DRDY|BUSY|CLKOUT|Q\d*|RXD_OUT)", re.I)
 
@@ -317,7 +320,7 @@ class _PartModeller:
             direction = self.facts.pin(pin).direction
             if direction in ("supply", "supply-out", "ground"):
                 return True
-            if direction is not None:
+            if direction is not None and not (pin.net in self.rails.by_net and STRICT_SUPPLY.fullmatch(pin.name)):
                 return False
         return looks_like_supply(pin) and (pin.net in self.rails.by_net or pin.kind in ("power_in", "power_out"))
 
@@ -329,7 +332,7 @@ class _PartModeller:
         setting = setting_for(self.settings.pins, pin.part, pin.number)
         if facts.direction == "ground" or (self.rails.is_ground(pin.net) and facts.direction is None and self._is_supply(pin)):
             return _plain(pin, "ground")
-        if facts.direction in ("supply", "supply-out") or (facts.direction is None and self._is_supply(pin)):
+        if facts.direction in ("supply", "supply-out") or (self._is_supply(pin) and (facts.direction is None or STRICT_SUPPLY.fullmatch(pin.name))):
             return _plain(pin, "supply-out" if facts.direction == "supply-out" or pin.kind == "power_out" else "supply")
         if facts.direction in ("analog", "passive"):
             return replace(_plain(pin, "analog", facts.note), facts=facts)
@@ -350,6 +353,8 @@ class _PartModeller:
             receive = receive_from(facts, self.facts) if self.facts and (facts.vih or facts.vmax) else cmos_receive()
             if setting:
                 receive = _overridden(receive, setting)
+            if direction == "open-drain" and pin.kind != "bidirectional" and not any(TWO_WAY_NAME.match(word) for word in words):
+                receive = replace(receive, reads=False)
         if direction in ("out", "inout", "open-drain", "open-source"):
             style = {"open-drain": "open-drain", "open-source": "open-source"}.get(direction, "push-pull")
             drive = replace(drive_from(facts, style, self.facts), tristate=pin.kind == "tri_state")
@@ -396,6 +401,9 @@ class _PartModeller:
                 return "open-drain", True, Basis.TRACED
             case "open_emitter":
                 return "open-source", True, Basis.TRACED
+            case "input" if self.facts is not None and self.facts.group == "fpga" and not any(READ_NAME.fullmatch(word) for word in words):
+                # Symbols of gate arrays are often drawn with every ball an input.
+                return "inout", False, Basis.ASSUMED
             case "input":
                 return ("open-drain", True, Basis.ASSUMED) if re.fullmatch(r"SDA\w?|PGD|PGOOD", first, re.I) else ("in", True, Basis.TRACED)
             case "output" | "tri_state":
@@ -457,7 +465,7 @@ class _PartModeller:
         first = with_volts[0][1]
         if all(abs(volts.nominal - first.nominal) <= 0.04 * first.nominal for _, volts in with_volts):
             return with_volts[0][0], first, ""
-        listing = ", ".join(f"{net} {volts.nominal:g} V" for net, volts in with_volts)
+        listing = ", ".join(f"{net} {format_volts(volts.nominal)}" for net, volts in with_volts)
         return "", None, f"{self.part.reference} has several supplies ({listing}) and nothing says which one this pin is on"
 
 

@@ -9,7 +9,7 @@ from levelcrossing.model import CaseFile
 HIGH_VOLTS = 60.0
 _SIGNS = (
     (
-        re.compile(r"\b(230|240|220|110|115|120)\s?V(AC)?\b|\bMAINS\b|\bAC_?[LN]\b|HLK-|IRM-\d|SSR|TRIAC|BT13[689]|MOC30", re.I),
+        re.compile(r"\b(230|240|220|110|115|120)\s?V(AC)?\b|\bMAINS\b|\bAC_?[LN]\b|HLK-|IRM-\d|\bSSR\b|TRIAC|BT13[689]|MOC30", re.I),
         "mains: not judged; local electrical codes, the applicable product standard and a licensed engineer decide",
     ),
     (

@@ -147,12 +147,16 @@ class _Solver:
             influence = _influence(answer.receiver, codes)
         supplies = plan.values(supply_key, codes) if supply_key is not None else _nominal_supply(receiver)
         limits = _Limits.of(receiver, supplies)
+        reads = receiver.receive is not None and receiver.receive.reads
         drives_high = state in ("high", "released") and not (state == "released" and pin is not None and pin.drive is not None and pin.drive.style == "open-source")
         seen_high = drives_high != crossing.inverting
         if others:
             # Several signals meet in one circuit, a gate: which level is meant follows from the level that is there.
             seen_high = bool(answer.receiver[0] >= (limits.vih[0] + limits.vil[0]) / 2)
-        result = _judged(state, answer, limits, codes, variables, reads_high=seen_high, reads_low=not seen_high, influence=influence)
+        result = _judged(state, answer, limits, codes, variables, reads_high=seen_high and reads, reads_low=not seen_high and reads, influence=influence)
+        if receiver.inferred_far_end:
+            # What is plugged in there may read as guessed; what it bears is its own affair.
+            result = replace(result, rating_margin=None, low_rating_margin=None)
         return result, limits
 
 
