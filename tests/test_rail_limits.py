@@ -29,6 +29,14 @@ def test_less_than_output_and_dropout(volts: float, kinds: list[str]) -> None:
     assert all(remark.part == "U8" and remark.net == "+3V3" for remark in found)
 
 
+def test_a_step_down_has_no_dropout_of_a_linear_regulator() -> None:
+    buck = (
+        "U1 LM3671MF-3.3 Local:LM3671 | 1 VIN power_in VX | 2 GND power_in GND | 4 FB input +3V3 | 5 SW output SWN\n"
+        "L1 2u2 Device:L | 1 - passive SWN | 2 - passive +3V3\nC1 10u Device:C | 1 - passive +3V3 | 2 - passive GND"
+    )
+    assert not remarks(3.6, buck)
+
+
 def test_a_step_up_needs_no_room() -> None:
     boost = (
         "U1 MT3608 Regulator:MT3608 | 1 SW output SWN | 2 GND power_in GND | 3 FB input FBN | 5 IN power_in VX\n"

@@ -155,6 +155,23 @@ def test_a_dropout_and_an_input_over_its_maximum_are_remarked() -> None:
     assert not trace(ldo("+5V", "+3V3"), gate("+5V", 1), gate("+3V3", 2)).remarks
 
 
+@pytest.mark.parametrize(
+    ("name", "tolerance", "conflicts"),
+    [
+        ("+5.1V", 0.001, 0),  # 2 % apart: names are rounded
+        ("+5.25V", 0.02, 0),  # 5 % apart, ranges touch
+        ("+5.25V", 0.01, 1),  # 5 % apart, ranges do not touch
+        ("+5.4V", 0.05, 1),  # 7 % apart, although ranges touch
+        ("+5.4V", 0.1, 0),  # the wide range holds the other's usual value
+    ],
+)
+def test_how_far_apart_contradicts(name: str, tolerance: float, conflicts: int) -> None:
+    """The regulator makes 5 V +-3 %, that is 4.85 to 5.15 V."""
+    settings = Settings(rail_tolerance=tolerance)
+    remarks = trace(ldo("+5.8V", name, "5.0"), gate(name), settings=settings).remarks
+    assert [remark.kind for remark in remarks] == ["conflict"] * conflicts
+
+
 def test_a_switched_regulator_may_be_off_while_its_input_is_up() -> None:
     enabled = ldo("+5V", "+3V3") + " | 3 EN input {}"
     assert rail("+3V3", enabled.format("+5V"), gate("+3V3")).fed_by == "+5V"
@@ -232,6 +249,14 @@ def test_a_series_resistor_feeds_supply_pins(ohms: str, extra: str, nominal: flo
 def test_behind_a_larger_resistor_a_signal_pin_forbids_a_rail() -> None:
     reset = "R1 1k Device:R | 1 - passive +3V3 | 2 - passive IN1"
     assert "IN1" not in trace(reset, gate("+3V3"), cap("IN1")).by_net
+
+
+@pytest.mark.parametrize(("ohms", "fed"), [("10R", True), ("11R", False)])
+def test_beyond_ten_ohm_a_signal_pin_forbids_a_rail_even_with_a_supply_pin(ohms: str, fed: bool) -> None:
+    clock = "U7 RTC Local:RTC | 1 VDD power_in N1 | 2 GND power_in GND"
+    reads = "U6 74LVC1G04 74xGxx:74LVC1G04 | 2 A input N1 | 3 GND power_in GND | 5 VCC power_in +3V3"
+    found = rail("N1", f"R1 {ohms} Device:R | 1 - passive +3V3 | 2 - passive N1", clock, reads)
+    assert (found.volts is not None) is fed
 
 
 def test_a_diode_takes_its_drop() -> None:

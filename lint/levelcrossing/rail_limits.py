@@ -55,7 +55,7 @@ def _input_remark(scene: Scene, one: Conversion, source: Rail, volts: Spread) ->
 
 def _dropout_remark(scene: Scene, one: Conversion, volts: Spread, made: Rail, output: Spread) -> Iterator[RailRemark]:
     facts = scene.regulators[one.part]
-    switching = facts.through_inductor or bool(scene.named_pins(scene.parts[one.part], facts.switch_pins))
+    switching = facts.through_inductor or any(scene.switching(pin.net) for pin in scene.parts[one.part].pins if pin.net)
     room = volts.nominal - output.nominal
     if facts.dropout_volts is None or facts.isolated or switching or units.at_least(room, facts.dropout_volts):
         return
