@@ -1,8 +1,8 @@
 """A project of sheets: its root, its files, and every use of every sheet.
 
 A sheet may be used more than once, and each use calls its symbols by other references. Newer files keep them with the
-symbol (``instances``), KiCad 6 keeps them in the root sheet (``symbol_instances``); where neither knows the use, the
-reference written on the symbol counts.
+symbol (``instances``), KiCad 6 keeps them in the root sheet (``symbol_instances``). Where neither knows the use, the
+first reference of the symbol counts and a remark says so; KiCad itself would leave its nets without a label out.
 """
 
 from __future__ import annotations
@@ -82,6 +82,7 @@ class Project:
         self.root = root
         self.folder = root.parent
         self.remarks: list[str] = []
+        self.unsure: dict[str, int] = {}
         self.files: dict[Path, SheetFile] = {}
         self.uses: list[Use] = []
         self.settings = _project_settings(root.with_suffix(".kicad_pro"))
@@ -112,6 +113,9 @@ class Project:
         old = self.uses[0].file.old_instances.get(f"{below_root.rstrip('/')}/{symbol.uuid}")
         if old is not None:
             return old
+        self.unsure[use.names] = self.unsure.get(use.names, 0) + 1
+        for _, instance in symbol.instances[:1]:
+            return instance
         return Instance(reference=symbol.field("Reference"), unit=symbol.unit)
 
     def library(

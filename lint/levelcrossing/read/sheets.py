@@ -63,6 +63,10 @@ def read_sheets(path: str | Path) -> Board:
     parts = reader.parts(drawn)
     nets = reader.nets(drawn)
     remarks = [*project.remarks, *reader.remarks]
+    remarks += [
+        f"the sheet {names} has {count} symbols that are not annotated for this use of it; their first references count"
+        for names, count in project.unsure.items()
+    ]
     if given.is_file() and given.suffix == ".kicad_sch" and given != root:
         remarks.append(f"{given.name} is a sub-sheet: the whole board was read from {root.name}")
     return Board(
