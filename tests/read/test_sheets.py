@@ -22,6 +22,7 @@ from kiutils.schematic import Schematic
 from levelcrossing.errors import InputError
 from levelcrossing.model import Board
 from levelcrossing.read import read_board, sheet_files
+from levelcrossing.read.places import Places
 from levelcrossing.read.sheet_files import read_sheet_file
 from levelcrossing.read.sheet_names import Bus, as_net_name, bus_of, resolve, unit_letters
 from levelcrossing.read.sheet_project import find_root
@@ -158,6 +159,25 @@ def test_root_folder_project_file_and_sub_sheet_are_one_board(project: Path) -> 
     assert _nets(read_sheets(project / "three_levels.kicad_pro")) == expected
     assert _nets(read_sheets(project)) == expected
     assert find_root(project / "three_levels_below.kicad_sch") == root
+
+
+def test_a_sub_sheet_in_a_folder_below_leads_to_its_project(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    folder = tmp_path / "sheets"
+    folder.mkdir()
+    root, below = Drawing("root").tp(("TP1", 0, 0)), Drawing("below", number=2)
+    root.sheet("in", below, 20, 0, [], file="sheets/below.kicad_sch")
+    below.tp(("TP2", 0, 0)).label("NAMED", 0, 0)
+    root.save(tmp_path)
+    below.save(folder)
+    assert find_root(folder / "below.kicad_sch") == folder / "below.kicad_sch"  # no project in sight
+    (tmp_path / "root.kicad_pro").write_text("{}", encoding="utf-8")
+    assert find_root(folder / "below.kicad_sch") == tmp_path / "root.kicad_sch"
+    monkeypatch.chdir(folder)
+    board = read_sheets("below.kicad_sch")
+    assert [part.reference for part in board.parts] == ["TP1", "TP2"]
+    place = Places(board).place_of_net("/in/NAMED")
+    assert place is not None
+    assert Path(place.file).resolve() == (folder / "below.kicad_sch").resolve()
 
 
 def test_a_sheet_with_a_project_of_its_own_is_a_root(project: Path) -> None:

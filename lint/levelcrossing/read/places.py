@@ -17,6 +17,7 @@ from functools import cached_property
 from pathlib import Path
 from xml.sax.saxutils import escape
 
+from levelcrossing.errors import InputError
 from levelcrossing.model import Board, Net, Part, Place
 from levelcrossing.read.sheet_names import as_net_name
 
@@ -210,9 +211,14 @@ class Places:
 
     def _folder(self) -> Path:
         path = Path(self.board.path)
-        if self.board.form == "sheets" and not path.is_dir():
-            return path.parent
-        return path if path.is_dir() else path.parent
+        if self.board.form == "sheets":
+            from levelcrossing.read.sheet_project import find_root  # loads kiutils, which netlists do not need
+
+            try:
+                return find_root(path).parent  # a sub-sheet may lie deeper than the root that names the sheets
+            except InputError:
+                return path.parent
+        return path.parent
 
     def sheets(self) -> list[_Text]:
         """Return the sheets of the board, root first; none when they are not beside a netlist."""

@@ -29,6 +29,9 @@ from levelcrossing.read.sheet_files import (
 DEEPEST_TREE = 50
 """Sheets within sheets."""
 
+LEVELS_ABOVE = 4
+"""How many folders above a sub-sheet are searched for the project that uses it."""
+
 MOST_USES = 20_000
 """Uses of sheets in one project; reused sheets within reused sheets multiply."""
 
@@ -355,13 +358,18 @@ def _children_of(sheet: Path) -> set[Path]:
 
 
 def _above(path: Path) -> Path:
-    """Go from a sub-sheet to the root above it, through the sheets of its folder."""
+    """Go from a sub-sheet to the root above it, through the sheets of its folder and of project folders above."""
     if not path.is_file():
         return path
+    folders = [path.parent]
+    for folder in list(path.absolute().parents)[1:LEVELS_ABOVE]:
+        if any(folder.glob("*.kicad_pro")):
+            folders.append(Path(os.path.relpath(folder)) if not path.is_absolute() else folder)
     parents: dict[Path, list[Path]] = {}
-    for sheet in sorted(path.parent.glob("*.kicad_sch")):
-        for child in _children_of(sheet):
-            parents.setdefault(child, []).append(sheet)
+    for folder in folders:
+        for sheet in sorted(folder.glob("*.kicad_sch")):
+            for child in _children_of(sheet):
+                parents.setdefault(child, []).append(sheet)
     sheet = path
     seen = {path.resolve()}
     while True:
