@@ -15,7 +15,9 @@ def diode_pairs(part: Part) -> list[tuple[Pin, Pin]]:
     Notes
     -----
     Names ``A`` and ``K`` decide (also ``A1``/``K1``); a common terminal serves all. Series pairs such as the BAT54S
-    (1 anode, 2 cathode, 3 middle) and symbols without names follow KiCad's pin order: 1 cathode, 2 anode.
+    (1 anode, 2 cathode, 3 middle) and symbols without names follow KiCad's pin order: 1 cathode, 2 anode. BAT54C, BAV70,
+    BAS40-05 and BAS70-05 have their cathodes joined at pin 3, BAT54A, BAW56, BAS40-06 and BAS70-06 their anodes (makers'
+    data sheets, from memory).
     """
     named: dict[str, list[Pin]] = defaultdict(list)
     for pin in part.pins:
@@ -41,4 +43,11 @@ def diode_pairs(part: Part) -> list[tuple[Pin, Pin]]:
         return list(zip(anodes, cathodes, strict=True))
     if len(part.pins) == 2 and not anodes and not cathodes:
         return [(part.pins[1], part.pins[0])]
+    by_number = {pin.number: pin for pin in part.pins}
+    if set(by_number) == {"1", "2", "3"} and not anodes and not cathodes:
+        words = f"{part.value} {part.symbol}".upper()
+        if re.search(r"BAT\d\dC|BAV70|BA[ST]\d\d-05|COM_?K|KAK|ACOM_?C", words):
+            return [(by_number["1"], by_number["3"]), (by_number["2"], by_number["3"])]
+        if re.search(r"BAT\d\dA|BAW56|BA[ST]\d\d-06|COM_?A|AKA", words):
+            return [(by_number["3"], by_number["1"]), (by_number["3"], by_number["2"])]
     return []

@@ -214,29 +214,9 @@ def _through_diode(scene: Scene, part: Part) -> Iterator[Feed]:
     drop = SCHOTTKY_DROP if schottky else SILICON_DROP
     name = "Schottky diode" if schottky else "silicon diode"
     words = f"through {part.reference} ({name}, {drop.low:g} to {drop.high:g} V less)"
-    for anode, cathode in diode_ways(part):
+    for anode, cathode in diode_pairs(part):
         if anode.net and cathode.net:
             yield Feed(anode.net, cathode.net, part.reference, "diode", drop, words)
-
-
-def diode_ways(part: Part) -> list[tuple[Pin, Pin]]:
-    """Return the (anode, cathode) pins of each diode of a part, also of unnamed three-pin pairs known by their number.
-
-    Notes
-    -----
-    BAT54C, BAV70, BAS40-05 and BAS70-05 have their cathodes joined at pin 3, BAT54A, BAW56, BAS40-06 and BAS70-06 their
-    anodes (makers' data sheets, remembered).
-    """
-    pairs = diode_pairs(part)
-    by_number = {pin.number: pin for pin in part.pins}
-    if pairs or set(by_number) != {"1", "2", "3"}:
-        return pairs
-    words = f"{part.value} {part.symbol}".upper()
-    if re.search(r"BAT\d\dC|BAV70|BA[ST]\d\d-05|COM_?K|KAK|ACOM_?C", words):
-        return [(by_number["1"], by_number["3"]), (by_number["2"], by_number["3"])]
-    if re.search(r"BAT\d\dA|BAW56|BA[ST]\d\d-06|COM_?A|AKA", words):
-        return [(by_number["3"], by_number["1"]), (by_number["3"], by_number["2"])]
-    return []
 
 
 def _through_transistor(scene: Scene, part: Part) -> Iterator[Feed]:

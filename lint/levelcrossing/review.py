@@ -10,7 +10,7 @@ from levelcrossing import crossings as crossing_survey
 from levelcrossing import islands as island_survey
 from levelcrossing import pins as pin_models
 from levelcrossing import rails as rail_tracing
-from levelcrossing import remedies, rulebook, scope, solutions, tradebook, waivers
+from levelcrossing import offstates, remedies, rulebook, scope, solutions, tradebook, waivers
 from levelcrossing.model import (
     Basis,
     Board,
@@ -70,7 +70,9 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
     islands = island_survey.find_islands(board, rails, pins, elements)
     survey = crossing_survey.find_crossings(board, rails, pins, facts, islands)
     solved = solutions.solve_crossings(survey.crossings, islands, rails, settings)
-    solved = tuple(replace(one, proposal=remedies.propose(one)) for one in solved)
+    solved = tuple(
+        replace(one, proposal=remedies.propose(one), off_states=offstates.power_down(one, islands, rails)) for one in solved
+    )
     return CaseFile(
         board=board,
         rails=rails,

@@ -1,0 +1,201 @@
+"""The voltage ladder of one crossing as plain rows: what is sent, what arrives and what the receiver takes.
+
+One scale for all rows. ``terminal.py`` draws it with characters, ``page.py`` as a picture; both use the same figures.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+from levelcrossing.model import SolvedCrossing as Solved
+from levelcrossing.model import Spread, StateResult
+from levelcrossing.reports.phrases import span, volts
+
+# The pin is drawn as "over" from this much above its limit; below, it is rounding [V].
+_HAIR_VOLTS = 5e-3
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Bar:
+    """One range of voltages.
+
+    Parameters
+    ----------
+    low, high : float
+        Ends [V].
+    name : str
+        ``high`` or ``low``.
+    """
+
+    low: float
+    high: float
+    name: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Row:
+    """One line of bars: who, the bars from low to high, and its figures in words."""
+
+    label: str
+    who: str
+    bars: tuple[Bar, ...]
+    figures: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Zone:
+    """What the receiver makes of a range of voltages.
+
+    ``kind`` is ``low`` (read as low), ``between`` (not guaranteed either way), ``high`` (read as high) or ``over``
+    (beyond the absolute maximum).
+    """
+
+    low: float
+    high: float
+    kind: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Ladder:
+    """A whole ladder.
+
+    Parameters
+    ----------
+    bottom, top : float
+        Ends of the scale [V].
+    step : float
+        Distance of the marks [V].
+    rows : tuple of Row
+        Sent and arriving levels.
+    zones : tuple of Zone
+        The receiver's view, from bottom to top without gaps.
+    reader : str
+        Name of the receiver.
+    limits : tuple of (str, float)
+        ``VIL``, ``VIH`` and ``max`` [V] at their least favourable corner, rising; those that are known.
+    notes : tuple of str
+        What stands against what, in words.
+    """
+
+    bottom: float
+    top: float
+    step: float
+    rows: tuple[Row, ...]
+    zones: tuple[Zone, ...]
+    reader: str
+    limits: tuple[tuple[str, float], ...]
+    notes: tuple[str, ...]
+
+    def marks(self) -> tuple[float, ...]:
+        """Return the voltages that the scale names."""
+        first = math.ceil(self.bottom / self.step - 1e-9)
+        last = math.floor(self.top / self.step + 1e-9)
+        return tuple(round(index * self.step, 6) for index in range(first, last + 1))
+
+
+def ladder(solved: Solved) -> Ladder | None:
+    """Return the ladder of a crossing, or None when nothing could be solved or no limit is known.
+
+    Parameters
+    ----------
+    solved : SolvedCrossing
+
+    Returns
+    -------
+    Ladder or None
+    """
+    states = [state for state in solved.states.values() if state.solved]
+    if not states or (solved.vih is None and solved.vil is None and solved.vmax is None):
+        return None
+    crossing = solved.crossing
+    sent = _bars(states, lambda state: state.driver_volts)
+    arrives = _bars(states, lambda state: state.open_volts)
+    if not arrives:
+        return None
+    vil = solved.vil.low if solved.vil else None
+    vih = solved.vih.high if solved.vih else None
+    vmax = solved.vmax.low if solved.vmax else None
+    figures = [bar.high for bar in (*sent, *arrives)] + [value for value in (vil, vih, vmax) if value is not None]
+    lows = [bar.low for bar in (*sent, *arrives)]
+    step = _step(max(figures) - min(0.0, *lows))
+    top = step * math.ceil((max(figures) + 0.15 * step) / step)
+    bottom = min(0.0, step * math.floor((min(lows) + 0.05 * step) / step))
+    if crossing.driver is None:
+        source = f"{crossing.driver_rail} through {crossing.link[0]}" if crossing.link else crossing.driver_rail
+        sent = ()
+        source_row: tuple[Row, ...] = ()
+        label = f"from {source}"
+    else:
+        source = f"{crossing.driver.part}.{crossing.driver.number}"
+        source_row = (Row(label="sent", who=source, bars=sent, figures=_figures(sent)),) if sent else ()
+        label = ""
+    reader = f"{crossing.receiver.part}.{crossing.receiver.number}"
+    arrival = Row(label="arrives", who=reader, bars=arrives, figures=_figures(arrives))
+    notes = _notes(solved, vil, vih, vmax)
+    limits = [(name, value) for name, value in (("VIL", vil), ("VIH", vih), ("max", vmax)) if value is not None]
+    return Ladder(
+        bottom=bottom,
+        top=top,
+        step=step,
+        rows=(*source_row, arrival),
+        zones=_zones(bottom, top, vil, vih, vmax),
+        reader=reader,
+        limits=tuple(sorted(limits, key=lambda limit: limit[1])),
+        notes=((label, *notes) if label else notes),
+    )
+
+
+def _bars(states: list[StateResult], pick: object) -> tuple[Bar, ...]:
+    assert callable(pick)
+    bars = []
+    for state in states:
+        spread: Spread = pick(state)
+        if not all(math.isfinite(value) for value in (spread.low, spread.nominal, spread.high)):
+            continue
+        name = "released" if state.state == "released" else state.state
+        bars.append(Bar(low=spread.low, high=spread.high, name=name))
+    return tuple(sorted(bars, key=lambda bar: (bar.low, bar.high)))
+
+
+def _figures(bars: tuple[Bar, ...]) -> str:
+    texts = []
+    for bar in bars:
+        spread = Spread(low=bar.low, nominal=bar.low, high=bar.high)
+        texts.append(span(spread, "").strip().replace("  ", " ").replace(" to ", "..").rstrip())
+    return ", ".join(texts) + " V"
+
+
+def _step(reach: float) -> float:
+    for step in (0.1, 0.2, 0.5, 1.0, 2.0, 5.0, 10.0, 20.0):
+        if reach / step <= 8:
+            return step
+    return 10.0 ** math.ceil(math.log10(reach / 8))
+
+
+def _zones(bottom: float, top: float, vil: float | None, vih: float | None, vmax: float | None) -> tuple[Zone, ...]:
+    over = vmax if vmax is not None else top
+    zones = []
+    low_end = min(vil if vil is not None else bottom, over)
+    high_start = min(max(vih if vih is not None else over, low_end), over)
+    for low, high, kind in (
+        (bottom, low_end, "low"),
+        (low_end, high_start, "between"),
+        (high_start, over, "high"),
+        (over, top, "over"),
+    ):
+        if high - low > 1e-9:
+            zones.append(Zone(low=low, high=high, kind=kind))
+    return tuple(zones)
+
+
+def _notes(solved: Solved, vil: float | None, vih: float | None, vmax: float | None) -> tuple[str, ...]:
+    notes = []
+    most = max((state.open_volts.high for state in solved.states.values() if state.solved), default=None)
+    if most is not None and vmax is not None and most > vmax + _HAIR_VOLTS:
+        notes.append(f"{volts(most - vmax)} V above the limit of {volts(vmax)} V")
+    if solved.high is not None and vih is not None and solved.high.low < vih - 1e-6:
+        notes.append(f"the high may be {volts(vih - solved.high.low)} V short of VIH {volts(vih)} V")
+    if solved.low is not None and vil is not None and solved.low.high > vil + 1e-6:
+        notes.append(f"the low may be {volts(solved.low.high - vil)} V above VIL {volts(vil)} V")
+    return tuple(notes)

@@ -1,0 +1,124 @@
+"""Words and figures that every report for people shares."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable
+
+from levelcrossing.model import Finding, Outcome, Review, Spread
+
+NOTICE = "This is a review of logic levels, not a safety approval: what it did not judge is yours to judge."
+
+MEANING = {
+    Outcome.DAMAGE: "a rating is exceeded",
+    Outcome.MALFUNCTION: "a level is not guaranteed",
+    Outcome.MARGINAL: "holds nominally, not at every corner",
+    Outcome.UNKNOWN: "could not be judged",
+    Outcome.SOUND: "holds at every corner",
+}
+
+BASIS = {
+    "declared": "declared by you",
+    "library": "from the trade library",
+    "traced": "traced on the board",
+    "assumed": "assumed, a family default",
+}
+
+_PREFIXES = ((1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"), (1e-12, "p"))
+
+
+def plain_number(value: float, decimals: int = 2) -> str:
+    """Return a number without needless zeros."""
+    text = f"{value:.{decimals}f}"
+    if "." in text:
+        text = text.rstrip("0").rstrip(".")
+    return "0" if text in ("-0", "") else text
+
+
+def quantity(value: float, unit: str, digits: int = 3) -> str:
+    """Return a quantity with an SI prefix: ``quantity(4.7e3, "Ω")`` is ``4.7 kΩ``."""
+    if not math.isfinite(value):
+        return "?"
+    if value == 0:
+        return f"0 {unit}"
+    for scale, prefix in _PREFIXES:
+        if abs(value) >= scale * 0.9995:
+            break
+    shown = f"{value / scale:.{digits}g}"
+    if "e" in shown:
+        shown = f"{value / scale:.0f}"
+    return f"{shown} {prefix}{unit}"
+
+
+def volts(value: float) -> str:
+    """Return a voltage to 10 mV, without unit."""
+    return plain_number(value)
+
+
+def span(spread: Spread, unit: str = "V") -> str:
+    """Return a range of voltages: ``4.75 to 5.25 V``, or one figure when it has no width to speak of."""
+    low, high = volts(spread.low), volts(spread.high)
+    return f"{low} {unit}" if low == high else f"{low} to {high} {unit}"
+
+
+def count(number: int, word: str, words: str = "") -> str:
+    """Return ``1 net``, ``2 nets``."""
+    return f"{number} {word if number == 1 else words or word + 's'}"
+
+
+def listed(items: Iterable[str], most: int = 12) -> str:
+    """Return items with commas; what is beyond ``most`` is counted."""
+    everything = list(items)
+    shown = ", ".join(everything[:most])
+    return shown + (f" and {len(everything) - most} more" if len(everything) > most else "")
+
+
+def spot(finding: Finding) -> str:
+    """Name where a finding bites: ``U3.4``, ``R7`` or the net; empty for the whole board."""
+    if finding.part:
+        return finding.part + (f".{finding.pin}" if finding.pin else "")
+    return finding.net
+
+
+def open_findings(review: Review) -> list[Finding]:
+    """Return the findings that no waiver accepts, in the review's order."""
+    return [finding for finding in review.findings if finding.waived is None]
+
+
+def outcome_counts(review: Review) -> list[tuple[Outcome, int]]:
+    """Return how many open findings each outcome has, worst first, without ``sound``."""
+    return [(outcome, review.count(outcome)) for outcome in Outcome if outcome is not Outcome.SOUND]
+
+
+def verdict_counts(review: Review) -> list[tuple[Outcome, int]]:
+    """Return how many crossings each verdict has, worst first."""
+    return [(outcome, sum(1 for one in review.crossings if one.verdict is outcome)) for outcome in Outcome]
+
+
+def headline(review: Review) -> str:
+    """Return the counts of findings in one line, worst first."""
+    parts = [f"{number} {outcome.value}" for outcome, number in outcome_counts(review) if number]
+    accepted = sum(1 for finding in review.findings if finding.waived is not None)
+    text = ", ".join(parts) if parts else "nothing found"
+    return text + (f" ({accepted} accepted by waiver)" if accepted else "")
+
+
+def size_of(review: Review) -> str:
+    """Return the size of the board in one line."""
+    board = review.board
+    return ", ".join(
+        [
+            count(len(board.parts), "part"),
+            count(len(board.nets), "net"),
+            count(sum(1 for rail in review.rails.by_net.values() if not rail.ground), "supply rail"),
+            count(len(review.crossings), "crossing"),
+        ]
+    )
+
+
+def reasons(review: Review) -> list[tuple[str, list[str]]]:
+    """Group the pins that were not judged by reason, the most frequent first."""
+    groups: dict[str, list[str]] = {}
+    for pin in review.coverage.not_judged:
+        groups.setdefault(pin.why, []).append(f"{pin.part}.{pin.pin}")
+    return sorted(groups.items(), key=lambda item: (-len(item[1]), item[0]))
