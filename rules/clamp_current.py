@@ -41,7 +41,11 @@ def check(case: CaseFile) -> Iterator[Finding]:
             continue
         worst = max(states, key=lambda state: state.clamp_amps.high)
         amps = worst.clamp_amps
-        if worst.rating_margin is None or worst.rating_margin.spread.low >= 0 or not QUIET_AMPS <= amps.high < STIFF_AMPS:
+        if (
+            worst.rating_margin is None
+            or worst.rating_margin.spread.low >= 0
+            or not QUIET_AMPS <= amps.high < STIFF_AMPS
+        ):
             continue
         limit = receive.injection_amps
         text = (
@@ -59,7 +63,13 @@ def check(case: CaseFile) -> Iterator[Finding]:
         else:
             outcome = Outcome.MARGINAL
             text += "; no injection current is known for this part, below 1 mA it usually survives (common practice)."
-        yield solved.finding(index, NAME, outcome, text, cause=f"over {solved.crossing.receiver.part}.{solved.crossing.receiver.number} {solved.crossing.driver_rail}")
+        yield solved.finding(
+            index,
+            NAME,
+            outcome,
+            text,
+            cause=f"over {solved.crossing.receiver.part}.{solved.crossing.receiver.number} {solved.crossing.driver_rail}",
+        )
 
 
 def _milliamperes(amps: float) -> str:

@@ -44,7 +44,14 @@ def check(case: CaseFile) -> Iterator[Finding]:
 
 
 def _always_drives(pin: PinModel) -> bool:
-    return pin.role == "signal" and pin.drive is not None and pin.drive.style == "push-pull" and not pin.drive.tristate and not pin.when and pin.receive is None
+    return (
+        pin.role == "signal"
+        and pin.drive is not None
+        and pin.drive.style == "push-pull"
+        and not pin.drive.tristate
+        and not pin.when
+        and pin.receive is None
+    )
 
 
 def _joined(island: Island, a: str, b: str) -> bool:
@@ -55,7 +62,9 @@ def _joined(island: Island, a: str, b: str) -> bool:
         if here == b:
             return True
         for element in island.elements:
-            small = element.kind == "link" or (element.kind == "resistor" and element.ohms is not None and element.ohms.nominal < SEPARATED_OHMS)
+            small = element.kind == "link" or (
+                element.kind == "resistor" and element.ohms is not None and element.ohms.nominal < SEPARATED_OHMS
+            )
             if small and here in element.nets:
                 frontier.extend(net for net in element.nets if net not in seen)
                 seen.update(element.nets)

@@ -30,10 +30,21 @@ def check(case: CaseFile) -> Iterator[Finding]:
         crossing = solved.crossing
         if crossing.shifter.kind not in ("mosfet-pass", "inverting-stage"):
             continue
-        element = next((element for element in solved.elements if element.part in crossing.shifter.parts and isinstance(element.facts, MosfetFacts)), None)
+        element = next(
+            (
+                element
+                for element in solved.elements
+                if element.part in crossing.shifter.parts and isinstance(element.facts, MosfetFacts)
+            ),
+            None,
+        )
         if element is None or element.part in done:
             continue
-        failing = [state for state in solved.states.values() if state.solved and state.low_margin is not None and state.low_margin.spread.low < -1e-6]
+        failing = [
+            state
+            for state in solved.states.values()
+            if state.solved and state.low_margin is not None and state.low_margin.spread.low < -1e-6
+        ]
         if not failing:
             continue
         state = failing[0]
@@ -41,7 +52,15 @@ def check(case: CaseFile) -> Iterator[Finding]:
         volts = case.rails.volts(element.nets[1])
         if crossing.shifter.kind == "mosfet-pass" and volts is None:
             continue
-        gate = volts.low if volts is not None else (crossing.driver.supply_volts.low if crossing.driver is not None and crossing.driver.supply_volts is not None else 0.0)
+        gate = (
+            volts.low
+            if volts is not None
+            else (
+                crossing.driver.supply_volts.low
+                if crossing.driver is not None and crossing.driver.supply_volts is not None
+                else 0.0
+            )
+        )
         threshold = element.facts.threshold_volts
         drive = gate - max(state.driver_volts.high, 0.0) if crossing.shifter.kind == "mosfet-pass" else gate
         if drive > threshold.high + 0.3:
@@ -52,4 +71,12 @@ def check(case: CaseFile) -> Iterator[Finding]:
             f"(usually {format_volts(threshold.nominal)}): {crossing.target} then stays at {format_volts(state.low_margin.at)} where a low ends at {format_volts(state.low_margin.limit)}."
         )
         outcome = Outcome.MALFUNCTION if state.low_margin.spread.nominal < 0 else Outcome.MARGINAL
-        yield solved.finding(index, NAME, outcome, text, part=element.part, remedy=f"Take a transistor whose greatest threshold is below about {format_volts(max(drive - 0.5, 0.3))}.", cause=f"threshold {element.part}")
+        yield solved.finding(
+            index,
+            NAME,
+            outcome,
+            text,
+            part=element.part,
+            remedy=f"Take a transistor whose greatest threshold is below about {format_volts(max(drive - 0.5, 0.3))}.",
+            cause=f"threshold {element.part}",
+        )

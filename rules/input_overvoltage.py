@@ -20,7 +20,9 @@ from levelcrossing.units import format_volts
 
 NAME = "input-overvoltage"
 OUTCOME = Outcome.DAMAGE
-SOURCES = ("absolute maximum ratings of the receiver's data sheet; for parts of which nothing is known, V + 0.3 V (common practice)",)
+SOURCES = (
+    "absolute maximum ratings of the receiver's data sheet; for parts of which nothing is known, V + 0.3 V (common practice)",
+)
 
 # A clamp diode that takes less than this does not act on the pin [A]: the rating "V + 0.3 V" exists to keep it off.
 QUIET_AMPS = 10e-6
@@ -34,7 +36,11 @@ def check(case: CaseFile) -> Iterator[Finding]:
         receive = solved.crossing.receiver.receive
         worst = None
         for state in solved.states.values():
-            if state.solved and state.rating_margin is not None and (worst is None or state.rating_margin.spread.low < worst.rating_margin.spread.low):
+            if (
+                state.solved
+                and state.rating_margin is not None
+                and (worst is None or state.rating_margin.spread.low < worst.rating_margin.spread.low)
+            ):
                 worst = state
         if worst is None or worst.rating_margin is None or receive is None or worst.rating_margin.spread.low >= -1e-9:
             continue
@@ -53,5 +59,16 @@ def check(case: CaseFile) -> Iterator[Finding]:
         )
         if clamped:
             text += f"; {worst.clamp_amps.nominal * 1e3:.1f} mA flow through its clamp diode"
-        remedy = f"Tie {solved.crossing.receiver.label} to {solved.crossing.receiver_rail or 'its own supply'}." if tied else ""
-        yield solved.finding(index, NAME, Outcome.DAMAGE if nominal else Outcome.MARGINAL, text + ".", remedy=remedy, cause=f"over {solved.crossing.receiver.part}.{solved.crossing.receiver.number} {solved.crossing.driver_rail}")
+        remedy = (
+            f"Tie {solved.crossing.receiver.label} to {solved.crossing.receiver_rail or 'its own supply'}."
+            if tied
+            else ""
+        )
+        yield solved.finding(
+            index,
+            NAME,
+            Outcome.DAMAGE if nominal else Outcome.MARGINAL,
+            text + ".",
+            remedy=remedy,
+            cause=f"over {solved.crossing.receiver.part}.{solved.crossing.receiver.number} {solved.crossing.driver_rail}",
+        )

@@ -27,9 +27,21 @@ def check(case: CaseFile) -> Iterator[Finding]:
     for index, solved in enumerate(case.crossings):
         for state in solved.states.values():
             for stress in state.stresses:
-                if not state.solved or stress.volts.high <= stress.limit_volts + 1e-6 or (stress.part, stress.what) in done:
+                if (
+                    not state.solved
+                    or stress.volts.high <= stress.limit_volts + 1e-6
+                    or (stress.part, stress.what) in done
+                ):
                     continue
                 done.add((stress.part, stress.what))
                 outcome = Outcome.DAMAGE if stress.volts.nominal > stress.limit_volts else Outcome.MARGINAL
                 text = f"{stress.part} bears {format_volts(stress.limit_volts)} of {stress.what} and gets {format_volts(stress.volts.nominal)}, {format_volts(stress.volts.high)} at worst."
-                yield solved.finding(index, NAME, outcome, text, part=stress.part, remedy=f"Take a part rated above {format_volts(stress.volts.high)} for {stress.what}, or limit the voltage at its terminal.", cause=f"stress {stress.part} {stress.what}")
+                yield solved.finding(
+                    index,
+                    NAME,
+                    outcome,
+                    text,
+                    part=stress.part,
+                    remedy=f"Take a part rated above {format_volts(stress.volts.high)} for {stress.what}, or limit the voltage at its terminal.",
+                    cause=f"stress {stress.part} {stress.what}",
+                )

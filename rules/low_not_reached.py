@@ -36,5 +36,7 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 f"{format_volts(state.receiver_volts.nominal)} ({format_volts(margin.at)} against {format_volts(margin.limit)}{where})."
             )
             parts = " and ".join(solved.crossing.shifter.parts)
-            remedy = f"Use larger pull-ups on {solved.crossing.receiver.net}, a stronger driver" + (f", or a MOSFET pair or a translator in place of {parts}." if parts else ".")
+            remedy = f"Use larger pull-ups on {solved.crossing.receiver.net}, a stronger driver" + (
+                f", or a MOSFET pair or a translator in place of {parts}." if parts else "."
+            )
             yield solved.finding(index, NAME, Outcome.MALFUNCTION if nominal else Outcome.MARGINAL, text, remedy=remedy)

@@ -17,7 +17,9 @@ from levelcrossing.model import CaseFile, Finding, Outcome
 
 NAME = "margin-thin"
 OUTCOME = Outcome.MARGINAL
-SOURCES = ("noise margins of logic families, e.g. 0.4 V between LVTTL parts (JESD8C.01); the limit itself is common practice",)
+SOURCES = (
+    "noise margins of logic families, e.g. 0.4 V between LVTTL parts (JESD8C.01); the limit itself is common practice",
+)
 
 
 def check(case: CaseFile) -> Iterator[Finding]:

@@ -31,7 +31,14 @@ def check(case: CaseFile) -> Iterator[Finding]:
         if not _open_drain(solved) or not _fails(solved):
             continue
         text = f"{crossing.source} and {crossing.target} both drive this line, but the {crossing.shifter.title or crossing.shifter.kind} between them ({', '.join(crossing.shifter.parts)}) carries levels only one way."
-        yield solved.finding(index, NAME, Outcome.MALFUNCTION, text, remedy="Replace it with a MOSFET pair or a two-way translator.", cause=f"one-way {' '.join(crossing.shifter.parts)}")
+        yield solved.finding(
+            index,
+            NAME,
+            Outcome.MALFUNCTION,
+            text,
+            remedy="Replace it with a MOSFET pair or a two-way translator.",
+            cause=f"one-way {' '.join(crossing.shifter.parts)}",
+        )
 
 
 def _open_drain(solved: SolvedCrossing) -> bool:
@@ -41,5 +48,8 @@ def _open_drain(solved: SolvedCrossing) -> bool:
 
 def _fails(solved: SolvedCrossing) -> bool:
     return any(
-        margin is not None and margin.spread.nominal < 0 for state in solved.states.values() if state.solved for margin in (state.high_margin, state.low_margin)
+        margin is not None and margin.spread.nominal < 0
+        for state in solved.states.values()
+        if state.solved
+        for margin in (state.high_margin, state.low_margin)
     )

@@ -18,7 +18,10 @@ from levelcrossing.units import format_volts
 
 NAME = "pull-up-rail"
 OUTCOME = Outcome.DAMAGE
-SOURCES = ("UM10204 section 7.1 (pull-ups belong to the bus supply)", "the receiver's ratings, as named with the finding")
+SOURCES = (
+    "UM10204 section 7.1 (pull-ups belong to the bus supply)",
+    "the receiver's ratings, as named with the finding",
+)
 EXPLAINS = ("input-overvoltage", "clamp-current", "high-not-reached", "margin-thin")
 
 QUIET_AMPS = 10e-6
@@ -34,7 +37,11 @@ def check(case: CaseFile) -> Iterator[Finding]:
         resistor, rail = crossing.link[0], crossing.driver_rail
         receive = crossing.receiver.receive
         over = state.rating_margin is not None and state.rating_margin.spread.nominal < 0
-        if over and state.rating_margin is not None and not (receive is not None and receive.clamp_high and state.clamp_amps.high < QUIET_AMPS):
+        if (
+            over
+            and state.rating_margin is not None
+            and not (receive is not None and receive.clamp_high and state.clamp_amps.high < QUIET_AMPS)
+        ):
             rated = receive.injection_amps if receive is not None else None
             if rated is not None and state.clamp_amps.high <= rated:
                 continue
@@ -43,12 +50,30 @@ def check(case: CaseFile) -> Iterator[Finding]:
             outcome = Outcome.MARGINAL
             if receive is not None and (not receive.clamp_high or state.clamp_amps.nominal > 1e-3):
                 outcome = Outcome.DAMAGE
-            yield solved.finding(index, NAME, outcome, text, remedy=better.strip(), cause=f"{resistor} {rail} {crossing.receiver.part}.{crossing.receiver.number}")
+            yield solved.finding(
+                index,
+                NAME,
+                outcome,
+                text,
+                remedy=better.strip(),
+                cause=f"{resistor} {rail} {crossing.receiver.part}.{crossing.receiver.number}",
+            )
         elif state.high_margin is not None and state.high_margin.spread.low < -1e-6:
             text = (
                 f"{resistor} pulls {crossing.target} only to {rail}, {format_volts(state.receiver_volts.nominal)}; it reads a high from "
                 f"{format_volts(solved.vih.nominal if solved.vih else state.high_margin.limit)} up ({format_volts(state.high_margin.at)} against {format_volts(state.high_margin.limit)} at worst)."
             )
             outcome = Outcome.MALFUNCTION if state.high_margin.spread.nominal < -1e-6 else Outcome.MARGINAL
-            better = f"Tie {resistor} to {crossing.receiver_rail} if every part on the line bears it; otherwise put a shifter between the supplies." if crossing.receiver_rail else ""
-            yield solved.finding(index, NAME, outcome, text, remedy=better, cause=f"{resistor} {rail} {crossing.receiver.part}.{crossing.receiver.number}")
+            better = (
+                f"Tie {resistor} to {crossing.receiver_rail} if every part on the line bears it; otherwise put a shifter between the supplies."
+                if crossing.receiver_rail
+                else ""
+            )
+            yield solved.finding(
+                index,
+                NAME,
+                outcome,
+                text,
+                remedy=better,
+                cause=f"{resistor} {rail} {crossing.receiver.part}.{crossing.receiver.number}",
+            )

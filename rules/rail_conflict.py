@@ -26,7 +26,9 @@ def check(case: CaseFile) -> Iterator[Finding]:
     for remark in case.rails.remarks:
         yield Finding(
             rule=NAME,
-            outcome=Outcome.MARGINAL if remark.kind == "conflict" and _near(case, remark.net) else outcomes.get(remark.kind, Outcome.MARGINAL),
+            outcome=Outcome.MARGINAL
+            if remark.kind == "conflict" and _near(case, remark.net)
+            else outcomes.get(remark.kind, Outcome.MARGINAL),
             text=remark.text,
             remedy=remark.remedy,
             part=remark.part,
@@ -39,5 +41,7 @@ def check(case: CaseFile) -> Iterator[Finding]:
 def _near(case: CaseFile, net: str) -> bool:
     """Tell whether the voltages that evidence gives a rail lie within a tenth of each other."""
     rail = case.rails.by_net.get(net)
-    volts = [evidence.volts.nominal for evidence in rail.evidence if evidence.volts is not None] if rail is not None else []
+    volts = (
+        [evidence.volts.nominal for evidence in rail.evidence if evidence.volts is not None] if rail is not None else []
+    )
     return bool(volts) and max(volts) <= 1.1 * min(volts)

@@ -22,7 +22,18 @@ SOURCES = ("none needed: what is not known is said",)
 def check(case: CaseFile) -> Iterator[Finding]:
     """Yield one finding per rail without a voltage."""
     for net, settle in case.rails.unknown:
-        supplied = sorted({reference for (reference, _), pin in case.pins.items() if pin.net == net and pin.role == "supply"})
+        supplied = sorted(
+            {reference for (reference, _), pin in case.pins.items() if pin.net == net and pin.role == "supply"}
+        )
         who = ", ".join(supplied[:6]) + (f" and {len(supplied) - 6} more" if len(supplied) > 6 else "")
         text = f"Nothing tells the voltage of {net}" + (f", which supplies {who}." if supplied else ".")
-        yield Finding(rule=NAME, outcome=Outcome.UNKNOWN, text=text, remedy=settle, net=net, part=supplied[0] if supplied else "", basis=Basis.ASSUMED, cause=f"rail {net}")
+        yield Finding(
+            rule=NAME,
+            outcome=Outcome.UNKNOWN,
+            text=text,
+            remedy=settle,
+            net=net,
+            part=supplied[0] if supplied else "",
+            basis=Basis.ASSUMED,
+            cause=f"rail {net}",
+        )

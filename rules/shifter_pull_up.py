@@ -26,7 +26,11 @@ def check(case: CaseFile) -> Iterator[Finding]:
     for index, solved in enumerate(case.crossings):
         crossing = solved.crossing
         pass_cell = crossing.shifter.kind in ("mosfet-pass", "bipolar-pass")
-        open_drain = crossing.driver is not None and crossing.driver.drive is not None and crossing.driver.drive.style == "open-drain"
+        open_drain = (
+            crossing.driver is not None
+            and crossing.driver.drive is not None
+            and crossing.driver.drive.style == "open-drain"
+        )
         if not (pass_cell or open_drain):
             continue
         key = (crossing.receiver.part, crossing.receiver.number)
@@ -39,9 +43,18 @@ def check(case: CaseFile) -> Iterator[Finding]:
             done.add(key)
             side = crossing.receiver_rail or "its supply"
             text = f"Nothing pulls {crossing.target} up while {crossing.source} lets go: the line has no defined high."
-            yield solved.finding(index, NAME, Outcome.MALFUNCTION, text, remedy=f"Fit a pull-up of 4.7 kΩ from {crossing.receiver.net} to {side}.", cause=f"pull-up {crossing.receiver.net}")
+            yield solved.finding(
+                index,
+                NAME,
+                Outcome.MALFUNCTION,
+                text,
+                remedy=f"Fit a pull-up of 4.7 kΩ from {crossing.receiver.net} to {side}.",
+                cause=f"pull-up {crossing.receiver.net}",
+            )
             break
 
 
 def _far_end_on(case: CaseFile, island: int, net: str) -> bool:
-    return any(pin.role == "far-end" and pin.net == net and not pin.declared_far_end for pin in case.islands[island].pins)
+    return any(
+        pin.role == "far-end" and pin.net == net and not pin.declared_far_end for pin in case.islands[island].pins
+    )

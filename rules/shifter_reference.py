@@ -18,7 +18,19 @@ from levelcrossing.units import format_volts
 NAME = "shifter-reference"
 OUTCOME = Outcome.DAMAGE
 SOURCES = ("NXP AN10441 rev. 01: gate to the lower supply voltage VDD1", "the bipolar cell: common practice")
-EXPLAINS = ("input-overvoltage", "clamp-current", "low-not-reached", "high-not-reached", "margin-thin", "sink-current", "gate-threshold", "junction-rating", "pull-up-rail", "unpowered-path", "too-slow")
+EXPLAINS = (
+    "input-overvoltage",
+    "clamp-current",
+    "low-not-reached",
+    "high-not-reached",
+    "margin-thin",
+    "sink-current",
+    "gate-threshold",
+    "junction-rating",
+    "pull-up-rail",
+    "unpowered-path",
+    "too-slow",
+)
 
 
 def check(case: CaseFile) -> Iterator[Finding]:
@@ -28,8 +40,20 @@ def check(case: CaseFile) -> Iterator[Finding]:
         crossing = solved.crossing
         if crossing.shifter.kind not in ("mosfet-pass", "bipolar-pass") or crossing.driver is None:
             continue
-        element = next((element for element in solved.elements if element.part in crossing.shifter.parts and element.kind in ("mosfet", "bipolar")), None)
-        if element is None or element.part in done or crossing.driver.supply_volts is None or crossing.receiver.supply_volts is None:
+        element = next(
+            (
+                element
+                for element in solved.elements
+                if element.part in crossing.shifter.parts and element.kind in ("mosfet", "bipolar")
+            ),
+            None,
+        )
+        if (
+            element is None
+            or element.part in done
+            or crossing.driver.supply_volts is None
+            or crossing.receiver.supply_volts is None
+        ):
             continue
         rail = _control_rail(solved, case, element.nets[1])
         volts = case.rails.volts(rail) if rail else None
@@ -51,12 +75,22 @@ def check(case: CaseFile) -> Iterator[Finding]:
         if not troubled:
             continue
         done.add(element.part)
-        rail_low = min((crossing.driver_rail, crossing.receiver_rail), key=lambda net: (case.rails.volts(net) or volts).nominal)
+        rail_low = min(
+            (crossing.driver_rail, crossing.receiver_rail), key=lambda net: (case.rails.volts(net) or volts).nominal
+        )
         text = (
             f"The {what} of {element.part} ({element.value}) is on {rail} ({format_volts(volts.nominal)}), but the lower of its two sides works from {format_volts(lower)}: "
             f"{'the low side can rise towards the high supply' if volts.nominal > lower else 'the transistor hardly conducts'}."
         )
-        yield solved.finding(index, NAME, Outcome.MARGINAL, text, part=element.part, remedy=f"Tie the {what} of {element.part} to {rail_low or 'the lower supply'}.", cause=f"reference {element.part}")
+        yield solved.finding(
+            index,
+            NAME,
+            Outcome.MARGINAL,
+            text,
+            part=element.part,
+            remedy=f"Tie the {what} of {element.part} to {rail_low or 'the lower supply'}.",
+            cause=f"reference {element.part}",
+        )
 
 
 def _control_rail(solved: SolvedCrossing, case: CaseFile, net: str) -> str | None:

@@ -19,7 +19,19 @@ from levelcrossing.units import format_volts
 NAME = "shifter-reversed"
 OUTCOME = Outcome.DAMAGE
 SOURCES = ("NXP AN10441, Level shifting techniques in I2C-bus design, rev. 01 (source on the low-voltage side)",)
-EXPLAINS = ("input-overvoltage", "clamp-current", "low-not-reached", "high-not-reached", "margin-thin", "sink-current", "pull-up-rail", "gate-threshold", "shifter-pull-up", "unpowered-path", "too-slow")
+EXPLAINS = (
+    "input-overvoltage",
+    "clamp-current",
+    "low-not-reached",
+    "high-not-reached",
+    "margin-thin",
+    "sink-current",
+    "pull-up-rail",
+    "gate-threshold",
+    "shifter-pull-up",
+    "unpowered-path",
+    "too-slow",
+)
 
 
 def check(case: CaseFile) -> Iterator[Finding]:
@@ -28,7 +40,14 @@ def check(case: CaseFile) -> Iterator[Finding]:
     for index, solved in enumerate(case.crossings):
         if solved.crossing.shifter.kind != "mosfet-pass":
             continue
-        element = next((element for element in solved.elements if element.part in solved.crossing.shifter.parts and element.kind == "mosfet"), None)
+        element = next(
+            (
+                element
+                for element in solved.elements
+                if element.part in solved.crossing.shifter.parts and element.kind == "mosfet"
+            ),
+            None,
+        )
         if element is None or element.part in done:
             continue
         low_side = _low_side(solved, case)

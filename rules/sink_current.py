@@ -17,7 +17,10 @@ from levelcrossing.model import CaseFile, Finding, Outcome
 
 NAME = "sink-current"
 OUTCOME = Outcome.DAMAGE
-SOURCES = ("IOL and absolute maximum output current of the driver's data sheet", "UM10204 table 10: 3 mA for I2C outputs")
+SOURCES = (
+    "IOL and absolute maximum output current of the driver's data sheet",
+    "UM10204 table 10: 3 mA for I2C outputs",
+)
 
 
 def check(case: CaseFile) -> Iterator[Finding]:
@@ -31,11 +34,22 @@ def check(case: CaseFile) -> Iterator[Finding]:
         amps = state.driver_amps
         rated, most = pin.drive.rated_low_amps, pin.drive.limit_amps
         if most is not None and amps.high > most * (1 + 1e-9):
-            outcome, limit, what = Outcome.DAMAGE if amps.nominal > most else Outcome.MARGINAL, most, "its absolute maximum is"
+            outcome, limit, what = (
+                Outcome.DAMAGE if amps.nominal > most else Outcome.MARGINAL,
+                most,
+                "its absolute maximum is",
+            )
         elif rated is not None and amps.high > rated * (1 + 1e-9):
             outcome, limit, what = Outcome.MARGINAL, rated, "its low level is guaranteed up to"
         else:
             continue
         done.add((pin.part, pin.number))
         text = f"{pin.label} must sink {amps.nominal * 1e3:.2g} mA, {amps.high * 1e3:.2g} mA at worst, to hold {solved.crossing.target} low; {what} {limit * 1e3:.2g} mA."
-        yield solved.finding(index, NAME, outcome, text, remedy="Use larger pull-ups on this line, or a driver rated for the current.", cause=f"sink {pin.part}.{pin.number}")
+        yield solved.finding(
+            index,
+            NAME,
+            outcome,
+            text,
+            remedy="Use larger pull-ups on this line, or a driver rated for the current.",
+            cause=f"sink {pin.part}.{pin.number}",
+        )

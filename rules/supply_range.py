@@ -32,7 +32,10 @@ def check(case: CaseFile) -> Iterator[Finding]:
             volts = case.rails.volts(pin.net)
             if pin.role != "supply" or volts is None or pin.net in done or volts.nominal <= 0.2:
                 continue
-            supply = next((supply for supply in facts.supplies if re.fullmatch(supply.pins, _plain(pin.name), re.IGNORECASE)), None)
+            supply = next(
+                (supply for supply in facts.supplies if re.fullmatch(supply.pins, _plain(pin.name), re.IGNORECASE)),
+                None,
+            )
             if supply is None or supply.low_volts is None or supply.high_volts is None:
                 continue
             low, high = supply.low_volts, supply.high_volts
@@ -40,7 +43,9 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 continue
             done.add(pin.net)
             above = volts.nominal > high
-            outcome = Outcome.DAMAGE if volts.nominal > 1.1 * high else Outcome.MALFUNCTION if not above else Outcome.MARGINAL
+            outcome = (
+                Outcome.DAMAGE if volts.nominal > 1.1 * high else Outcome.MALFUNCTION if not above else Outcome.MARGINAL
+            )
             rail = case.rails.by_net[pin.net]
             yield Finding(
                 rule=NAME,

@@ -16,10 +16,14 @@ Stays quiet when one supply is made from the other, when the part is specified f
 from collections.abc import Iterator
 
 from levelcrossing.model import CaseFile, Finding, Outcome
+from levelcrossing.units import format_si
 
 NAME = "unpowered-path"
 OUTCOME = Outcome.DAMAGE
-SOURCES = ("Ioff and injected-current rows of the parts' data sheets", "1 mA where nothing is rated: common practice, no standard")
+SOURCES = (
+    "Ioff and injected-current rows of the parts' data sheets",
+    "1 mA where nothing is rated: common practice, no standard",
+)
 UNRATED_AMPS = 1e-3
 
 
@@ -40,11 +44,16 @@ def check(case: CaseFile) -> Iterator[Finding]:
             outcome = Outcome.DAMAGE if rated is not None and amps.nominal > rated else Outcome.MARGINAL
             floating = next((other for other in solved.off_states if other.case == "receiver-off-floating"), None)
             lifted = ""
-            if receiver_off and floating is not None and floating.lifted_volts is not None and floating.lifted_volts.nominal > 0.5:
+            if (
+                receiver_off
+                and floating is not None
+                and floating.lifted_volts is not None
+                and floating.lifted_volts.nominal > 0.5
+            ):
                 lifted = f"; left floating, {off.dead_rail} rises to about {floating.lifted_volts.nominal:.1f} V over a 10 kΩ load"
-            text = f"With {off.dead_rail} off, {amps.nominal * 1e3:.2g} mA flow from {off.path} into the dead supply{lifted}."
+            text = f"With {off.dead_rail} off, {format_si(amps.nominal, 'A', 2)} flow from {off.path} into the dead supply{lifted}."
             yield solved.finding(
                 index, NAME, outcome, text, condition=f"{off.dead_rail} can be off while {solved.crossing.driver_rail if receiver_off else solved.crossing.receiver_rail} is on",
-                remedy="Use a part specified for partial power-down (Ioff), enlarge the series resistance, or switch both supplies together.", cause=f"off {off.dead_rail} {solved.crossing.island}",
+                remedy="Use a part specified for partial power-down (Ioff), enlarge the series resistance, or switch both supplies together.", cause=f"off {off.dead_rail} {solved.crossing.receiver.part}",
             )  # fmt: skip
             break

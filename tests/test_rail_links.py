@@ -5,8 +5,9 @@ from __future__ import annotations
 import pytest
 from small_boards import BOOK, board_of
 
+from levelcrossing.diodepins import diode_pairs
 from levelcrossing.model import Settings
-from levelcrossing.rail_links import Feed, Joints, across_coil, diode_ways, find_feeds
+from levelcrossing.rail_links import Feed, Joints, across_coil, find_feeds
 from levelcrossing.rail_scene import Scene
 
 BUCK = "U1 XYZ Local:BUCK | 1 VIN power_in A | 2 GND power_in GND | 3 SW output SWN"
@@ -73,7 +74,7 @@ def test_diode_feeds_one_way() -> None:
 )
 def test_pairs_of_diodes_without_pin_names_go_by_their_number(value: str, ways: list[tuple[str, str]]) -> None:
     part = board_of(f"D1 {value} Diodes:{value} | 1 - passive A | 2 - passive B | 3 - passive C").parts[0]
-    assert [(anode.net, cathode.net) for anode, cathode in diode_ways(part)] == ways
+    assert [(anode.net, cathode.net) for anode, cathode in diode_pairs(part)] == ways
 
 
 def test_power_multiplexer_feeds_from_both_inputs() -> None:

@@ -225,7 +225,8 @@ class Builder:
         def make(codes: Mapping[str, Codes]) -> Sequence[Branch]:
             rows = codes[drop]
             columns = codes[zener] if zener else np.ones_like(rows)
-            return (devices.diode(label, nodes[0], nodes[1], {name: arrays[name][rows, columns] for name in names}),)
+            values: dict[str, Value] = {name: arrays[name][rows, columns] for name in names}
+            return (devices.diode(label, nodes[0], nodes[1], values),)
 
         self.plan.makers.append(make)
 
@@ -239,7 +240,13 @@ class Builder:
             values["beta_forward"] = values_of(facts.beta_forward, codes[forward])
             values["beta_reverse"] = np.maximum(values_of(facts.beta_reverse, codes[reverse]), 0.01)
             return devices.bipolar(
-                label, *nodes, values, base_ohms=facts.base_ohms, base_emitter_ohms=facts.base_emitter_ohms
+                label,
+                nodes[0],
+                nodes[1],
+                nodes[2],
+                values,
+                base_ohms=facts.base_ohms,
+                base_emitter_ohms=facts.base_emitter_ohms,
             )
 
         self.plan.makers.append(make)
@@ -253,15 +260,22 @@ class Builder:
             values: dict[str, Value] = dict(base)
             values["threshold_volts"] = values_of(facts.threshold_volts, codes[threshold])
             values["gain"] = values_of(facts.gain, codes[gain])
-            return (devices.mosfet(label, *nodes, values),)
+            return (devices.mosfet(label, nodes[0], nodes[1], nodes[2], values),)
 
         self.plan.makers.append(make)
 
     def _switch(self, label: str, element: Element, nodes: Sequence[str]) -> None:
-        """A pass switch: a channel whose internal gate lies one threshold above the highest level that it passes."""
+        """Add a pass switch: a channel whose internal gate lies one threshold above the highest level that it passes."""
         facts = element.facts
         assert isinstance(facts, TranslatorFacts)
-        side = next((pin for pin in self.island.pins if pin.part == element.part and pin.net in element.nets and pin.supply_volts is not None), None)
+        side = next(
+            (
+                pin
+                for pin in self.island.pins
+                if pin.part == element.part and pin.net in element.nets and pin.supply_volts is not None
+            ),
+            None,
+        )
         supply = side.supply_volts if side is not None else None
         if supply is None:
             self.plan.missing.append(element.part)
@@ -284,7 +298,9 @@ class Builder:
                 rail = self.supply_node(owner) if owner is not None else None
                 if rail is not None and net in self._relevant:
                     ohms_spread = Spread.around(facts.pull_up_ohms, PULL_SPREAD)
-                    self._spread_resistor(f"pull-up inside {element.part} on {net}", f"{element.part} pull-up", rail, node, ohms_spread)
+                    self._spread_resistor(
+                        f"pull-up inside {element.part} on {net}", f"{element.part} pull-up", rail, node, ohms_spread
+                    )
 
     def _pin(self, pin: PinModel, *, dead_end: bool) -> None:
         """Add what a pin that does not drive is to the circuit: its clamp to the supply, its pull-up, its capacitance."""
@@ -292,13 +308,17 @@ class Builder:
         if pin.receive is not None and pin.receive.clamp_high:
             rail = self.supply_node(pin)
             if rail is not None:
-                values = devices.clamp_values()
-                self.plan.makers.append(lambda codes: (devices.diode(f"clamp of {label}", pin.net, rail, dict(values)),))
+                clamp = devices.diode(f"clamp of {label}", pin.net, rail, devices.clamp_values())
+                self.plan.makers.append(lambda codes: (clamp,))
         if pin.pull_up_ohms and pin.role == "signal" and not dead_end:
             rail = self.supply_node(pin)
             if rail is not None:
                 self._spread_resistor(
-                    f"pull-up inside {label}", f"pull-up inside {label}", rail, pin.net, Spread.around(pin.pull_up_ohms, PULL_SPREAD)
+                    f"pull-up inside {label}",
+                    f"pull-up inside {label}",
+                    rail,
+                    pin.net,
+                    Spread.around(pin.pull_up_ohms, PULL_SPREAD),
                 )
         if self.with_capacitance:
             farads = pin.receive.capacitance_farads if pin.receive is not None else Spread.exactly(5e-12)
@@ -322,7 +342,9 @@ class Builder:
 
         self.plan.fixed[source] = volts
         label = f"output of {pin.part}.{pin.number}"
-        self.plan.makers.append(lambda codes: (devices.resistor(label, source, pin.net, values_of(ohms, codes[output])),))
+        self.plan.makers.append(
+            lambda codes: (devices.resistor(label, source, pin.net, values_of(ohms, codes[output])),)
+        )
 
 
 def _passed(facts: TranslatorFacts, supply_volts: float) -> float:

@@ -59,7 +59,9 @@ def all_corners(count: int) -> Codes:
     if count == 0:
         return np.full((0, 1), NOMINAL, dtype=np.int8)
     grid = np.indices((2,) * count, dtype=np.int8).reshape(count, -1) * HIGH
-    mixtures = np.random.default_rng(20260101).integers(0, 3, size=(count, INTERIOR_SAMPLES if count > 2 else 0), dtype=np.int8)
+    mixtures = np.random.default_rng(20260101).integers(
+        0, 3, size=(count, INTERIOR_SAMPLES if count > 2 else 0), dtype=np.int8
+    )
     return np.concatenate([np.full((count, 1), NOMINAL, dtype=np.int8), grid.astype(np.int8), mixtures], axis=1)
 
 
@@ -103,7 +105,7 @@ def in_words(variables: Sequence[Variable], column: Sequence[int], influence: Se
     order = range(len(variables))
     if influence is not None:
         order = sorted(order, key=lambda index: -abs(influence[index]))  # type: ignore[assignment]
-    words = []
+    words: list[str] = []
     for index in order:
         variable, code = variables[index], int(column[index])
         if code == NOMINAL or variable.spread.low == variable.spread.high:

@@ -6,6 +6,7 @@ import re
 from collections import defaultdict
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
+from itertools import pairwise
 
 import networkx
 
@@ -33,9 +34,16 @@ SERIES_AT_MOST_OHMS = 2_200.0
 CHAIN_KINDS = frozenset({"auto-buffer", "dual-dir", "dual-fixed", "i2c-buffer"})
 # Hosts whose signal level is fixed by their maker, told from the connector's reference, value or symbol.
 KNOWN_HOSTS = (
-    (re.compile(r"RASPBERRY|\bRPI|RPI_?\d|PI_?ZERO", re.I), 3.3, "Raspberry Pi, whose header signals are 3.3 V (maker's GPIO documentation)"),
+    (
+        re.compile(r"RASPBERRY|\bRPI|RPI_?\d|PI_?ZERO", re.I),
+        3.3,
+        "Raspberry Pi, whose header signals are 3.3 V (maker's GPIO documentation)",
+    ),
 )
-ANALOG_NET = re.compile(r".*(TMDS|USB_?D[PMN+-]|CSI|DSI|MDI|ETH|_D\d?[PN]$|.*\w[+-]$|[_.](P|N)$|LVDS|CANH|CANL|RS485|AUDIO|SPK|MIC|ANT)", re.I)
+ANALOG_NET = re.compile(
+    r".*(TMDS|USB_?D[PMN+-]|CSI|DSI|MDI|ETH|_D\d?[PN]$|.*\w[+-]$|[_.](P|N)$|LVDS|CANH|CANL|RS485|AUDIO|SPK|MIC|ANT)",
+    re.I,
+)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -141,14 +149,18 @@ class _Finder:
         if any(ANALOG_NET.match(name) for name in (pin.net, pin.name)):
             self._note_higher(pin, pulled)
             return pin
-        host = next((known for known in KNOWN_HOSTS if known[0].search(f"{pin.part} {self.values.get(pin.part, '')}")), None)
+        host = next(
+            (known for known in KNOWN_HOSTS if known[0].search(f"{pin.part} {self.values.get(pin.part, '')}")), None
+        )
         if host is not None:
             volts = Spread.around(host[1], 0.05)
             why = f"{pin.part} goes to a {host[2]}"
             rail, style, basis = "", False, Basis.TRACED
         elif pulled:
             rail, volts = max(pulled, key=lambda pull: pull[1].nominal)
-            why = f"the other side of {pin.part}.{pin.number} is an open-drain line at the level of its pull-up to {rail}"
+            why = (
+                f"the other side of {pin.part}.{pin.number} is an open-drain line at the level of its pull-up to {rail}"
+            )
             style, basis = True, Basis.TRACED
             self._note_higher(pin, pulled)
         else:
@@ -164,14 +176,18 @@ class _Finder:
             supply=rail,
             supply_volts=volts,
             drive=pin_models.far_end_drive(open_drain=style, basis=basis),
-            receive=replace(pin_models.cmos_receive(), clamp_high=False, source="an ordinary CMOS input is assumed beyond the connector"),
+            receive=replace(
+                pin_models.cmos_receive(),
+                clamp_high=False,
+                source="an ordinary CMOS input is assumed beyond the connector",
+            ),
             basis=Basis.ASSUMED,
             inferred_far_end=True,
             why=why,
         )
 
     def _note_higher(self, pin: PinModel, pulled: Sequence[tuple[str, Spread]]) -> None:
-        """A pull-up tells the level only if what is plugged in has none of its own to a higher supply."""
+        """Note that a pull-up tells the level only if what is plugged in has none of its own to a higher supply."""
         if not pulled:
             return
         level = max(volts.nominal for _, volts in pulled)
@@ -188,15 +204,24 @@ class _Finder:
     def _drivers(self, field: _Field) -> list[PinModel]:
         """Return the pins that may drive an island; possible drivers give way to certain ones."""
         drivers = [pin for pin in field.island.pins if pin.drive is not None and not self._is_switch(pin)]
-        certain = [pin for pin in drivers if not pin.when and pin.role == "signal" and pin.drive and pin.drive.style == "push-pull"]
+        certain = [
+            pin
+            for pin in drivers
+            if not pin.when and pin.role == "signal" and pin.drive and pin.drive.style == "push-pull"
+        ]
         if any(pin.drive is not None and not pin.drive.tristate for pin in certain):
-            return [pin for pin in drivers if not pin.when and pin.role == "signal" or pin.declared_far_end]
+            return [pin for pin in drivers if (not pin.when and pin.role == "signal") or pin.declared_far_end]
         readers = [pin for pin in field.island.pins if pin.receive is not None and pin.drive is None]
         possible = [pin for pin in drivers if pin.when]
         others = [pin for pin in drivers if not pin.when]
         far = [pin for pin in field.island.pins if pin.role == "far-end"]
         if len(possible) == 1 and not others and readers and not far:
-            alone = replace(possible[0], when="", basis=Basis.weakest(possible[0].basis, Basis.TRACED), why="the only pin that can drive this net")
+            alone = replace(
+                possible[0],
+                when="",
+                basis=Basis.weakest(possible[0].basis, Basis.TRACED),
+                why="the only pin that can drive this net",
+            )
             return [alone]
         return drivers
 
@@ -214,7 +239,11 @@ class _Finder:
                     continue
                 if driver.supply_volts is None or receiver.supply_volts is None:
                     continue
-                if driver.role == "far-end" and receiver.role == "far-end" and not (_settled(driver) and _settled(receiver)):
+                if (
+                    driver.role == "far-end"
+                    and receiver.role == "far-end"
+                    and not (_settled(driver) and _settled(receiver))
+                ):
                     continue
                 if same_supply(driver.supply_volts, receiver.supply_volts):
                     continue
@@ -222,7 +251,9 @@ class _Finder:
                 if path is not None:
                     yield self._crossing(field, driver, receiver, path)
 
-    def _crossing(self, field: _Field, driver: PinModel, receiver: PinModel, path: Sequence[Element], **more: object) -> Crossing:
+    def _crossing(
+        self, field: _Field, driver: PinModel, receiver: PinModel, path: Sequence[Element], **more: object
+    ) -> Crossing:
         shifter = shifters.recognise(field.island, path, driver, receiver, self.rails, self.facts)
         crossing = Crossing(
             driver=driver,
@@ -233,7 +264,9 @@ class _Finder:
             shifter=shifter,
             island=field.island.index,
             inverting=shifters.inverts(path, driver.net),
-            condition=" and ".join(dict.fromkeys([*([driver.when] if driver.when else []), *_far_condition(driver, receiver)])),
+            condition=" and ".join(
+                dict.fromkeys([*([driver.when] if driver.when else []), *_far_condition(driver, receiver)])
+            ),
             inferred=_guessed(driver, receiver),
             basis=Basis.weakest(driver.basis, receiver.basis, *(element.basis for element in path)),
         )
@@ -245,7 +278,12 @@ class _Finder:
         near = field.near
         pulls = field.pulls
         for receiver in field.island.pins:
-            if receiver.receive is None or receiver.supply_volts is None or receiver.role == "far-end" or self._is_switch(receiver):
+            if (
+                receiver.receive is None
+                or receiver.supply_volts is None
+                or receiver.role == "far-end"
+                or self._is_switch(receiver)
+            ):
                 continue
             if _held(drivers, near[receiver.net]):
                 continue
@@ -275,7 +313,13 @@ class _Finder:
                 continue
             channels: dict[str, dict[str, PinModel]] = defaultdict(dict)
             for (part, _), pin in self.pins.items():
-                if part == reference and pin.facts is not None and pin.facts.channel and pin.facts.side and pin.net in self.by_net:
+                if (
+                    part == reference
+                    and pin.facts is not None
+                    and pin.facts.channel
+                    and pin.facts.side
+                    and pin.net in self.by_net
+                ):
                     channels[pin.facts.channel][pin.facts.side] = pin
             for _, sides in sorted(channels.items()):
                 if set(sides) == {"a", "b"}:
@@ -297,24 +341,49 @@ class _Finder:
         sinks = [
             pin
             for pin in far_side.island.pins
-            if pin.part != reference and pin.receive is not None and pin.supply_volts is not None and not self._is_switch(pin)
+            if pin.part != reference
+            and pin.receive is not None
+            and pin.supply_volts is not None
+            and not self._is_switch(pin)
         ]
         shifter = Shifter(kind="translator", parts=(reference,), title=known.title)
         for source in sources:
             for sink in sinks:
                 assert source.supply_volts is not None and sink.supply_volts is not None
-                if same_supply(source.supply_volts, sink.supply_volts) or (source.role == "far-end" and sink.role == "far-end" and not (_settled(source) and _settled(sink))):
+                if same_supply(source.supply_volts, sink.supply_volts) or (
+                    source.role == "far-end" and sink.role == "far-end" and not (_settled(source) and _settled(sink))
+                ):
                     continue
                 path = far_side.path(out.net, sink.net)
                 if path is None:
                     continue
-                condition = " and ".join(dict.fromkeys(text for text in (source.when, "" if known.translator.direction == "auto" or known.translator.kind == "auto-buffer" else out.when, *_far_condition(source, sink)) if text))
+                condition = " and ".join(
+                    dict.fromkeys(
+                        text
+                        for text in (
+                            source.when,
+                            ""
+                            if known.translator.direction == "auto" or known.translator.kind == "auto-buffer"
+                            else out.when,
+                            *_far_condition(source, sink),
+                        )
+                        if text
+                    )
+                )
                 yield Crossing(
                     driver=source,
                     driver_rail=source.supply,
                     receiver=sink,
                     receiver_rail=sink.supply,
-                    link=tuple(dict.fromkeys([*(step.part for step in near_side.path(source.net, into.net) or ()), reference, *(step.part for step in path)])),
+                    link=tuple(
+                        dict.fromkeys(
+                            [
+                                *(step.part for step in near_side.path(source.net, into.net) or ()),
+                                reference,
+                                *(step.part for step in path),
+                            ]
+                        )
+                    ),
                     shifter=shifter,
                     island=far_side.island.index,
                     through=(reference,),
@@ -325,7 +394,7 @@ class _Finder:
                 )
 
     def _tied_inputs(self) -> Iterator[Crossing]:
-        """Inputs tied straight to a rail that is not their own supply."""
+        """Yield inputs tied straight to a rail that is not their own supply."""
         for pin in self.pins.values():
             if pin.role != "signal" or pin.receive is None or pin.supply_volts is None:
                 continue
@@ -347,17 +416,38 @@ class _Finder:
     def note_jumpers(self, board: Board) -> None:
         """Note the receivers that a jumper of unknown state may join to another supply's driver."""
         for part in board.parts:
-            if not part.fitted or partkinds.kind_of(part) != "jumper" or len(part.pins) != 2 or partkinds.joined_pins(part):
+            if (
+                not part.fitted
+                or partkinds.kind_of(part) != "jumper"
+                or len(part.pins) != 2
+                or partkinds.joined_pins(part)
+            ):
                 continue
             first, second = (self.by_net.get(pin.net) for pin in part.pins)
-            if first is None or second is None or first is second or re.search(r"OPEN", f"{part.value} {part.symbol}", re.I):
+            if (
+                first is None
+                or second is None
+                or first is second
+                or re.search(r"OPEN", f"{part.value} {part.symbol}", re.I)
+            ):
                 continue
             for near, far in ((first, second), (second, first)):
-                levels = [pin.supply_volts for pin in self.drivers_of[id(far)] if pin.supply_volts is not None and pin.role == "signal" and not pin.when]
+                levels = [
+                    pin.supply_volts
+                    for pin in self.drivers_of[id(far)]
+                    if pin.supply_volts is not None and pin.role == "signal" and not pin.when
+                ]
                 for pin in near.island.pins:
-                    if pin.role == "signal" and pin.receive is not None and pin.supply_volts is not None and any(not same_supply(level, pin.supply_volts) for level in levels):
+                    if (
+                        pin.role == "signal"
+                        and pin.receive is not None
+                        and pin.supply_volts is not None
+                        and any(not same_supply(level, pin.supply_volts) for level in levels)
+                    ):
                         why = f"{part.reference} ({part.value}) is a jumper whose state nothing tells; closed, it joins this pin to a driver on another supply"
-                        self.not_judged[pin.part, pin.number] = NotJudged(part=pin.part, pin=pin.number, name=pin.name, net=pin.net, why=why)
+                        self.not_judged[pin.part, pin.number] = NotJudged(
+                            part=pin.part, pin=pin.number, name=pin.name, net=pin.net, why=why
+                        )
 
     def _note_unknown(self, field: _Field, drivers: Sequence[PinModel], receivers: Sequence[PinModel]) -> None:
         active = {(pin.part, pin.number): pin for pin in [*drivers, *receivers] if pin.role == "signal"}
@@ -368,7 +458,11 @@ class _Finder:
             if pin.supply_volts is None and others:
                 self.not_judged[key] = NotJudged(part=pin.part, pin=pin.number, name=pin.name, net=pin.net, why=pin.why)
         for pin in field.island.pins:
-            if pin.role == "far-end" and pin.supply_volts is None and not any(ANALOG_NET.match(net) for net in (pin.net, pin.name)):
+            if (
+                pin.role == "far-end"
+                and pin.supply_volts is None
+                and not any(ANALOG_NET.match(net) for net in (pin.net, pin.name))
+            ):
                 self.far_ends[pin.part, pin.number] = f"nothing tells the level beyond {pin.part}.{pin.number}"
 
 
@@ -399,7 +493,7 @@ class _Field:
                 self._paths[key] = None
             else:
                 steps = []
-                for a, b in zip(nets, nets[1:], strict=False):
+                for a, b in pairwise(nets):
                     edges = self.graph.get_edge_data(a, b)
                     steps.append(min((data["element"] for data in edges.values()), key=_preference))
                 self._paths[key] = steps
@@ -446,7 +540,9 @@ def _near_groups(island: Island) -> dict[str, tuple[str, ...]]:
     graph: networkx.Graph[str] = networkx.Graph()
     graph.add_nodes_from(island.nets)
     for element in island.elements:
-        small = element.kind == "link" or (element.kind == "resistor" and element.ohms is not None and element.ohms.nominal <= SERIES_AT_MOST_OHMS)
+        small = element.kind == "link" or (
+            element.kind == "resistor" and element.ohms is not None and element.ohms.nominal <= SERIES_AT_MOST_OHMS
+        )
         if small and element.nets[0] in graph and element.nets[1] in graph:
             graph.add_edge(*element.nets)
     groups: dict[str, tuple[str, ...]] = {}
@@ -459,7 +555,12 @@ def _near_groups(island: Island) -> dict[str, tuple[str, ...]]:
 def _held(drivers: Sequence[PinModel], nets: Sequence[str]) -> bool:
     """Tell whether a push-pull output that never lets go holds one of these nets."""
     return any(
-        pin.net in nets and not pin.when and pin.role == "signal" and pin.drive is not None and pin.drive.style == "push-pull" and not pin.drive.tristate
+        pin.net in nets
+        and not pin.when
+        and pin.role == "signal"
+        and pin.drive is not None
+        and pin.drive.style == "push-pull"
+        and not pin.drive.tristate
         for pin in drivers
     )
 
@@ -482,7 +583,8 @@ def _far_condition(*pins: PinModel) -> list[str]:
 def _two_way(found: Sequence[Crossing]) -> list[Crossing]:
     ends = {_ends(crossing) for crossing in found if crossing.driver is not None}
     return [
-        replace(crossing, two_way=True) if crossing.driver is not None and _ends(crossing)[::-1] in ends else crossing for crossing in found
+        replace(crossing, two_way=True) if crossing.driver is not None and _ends(crossing)[::-1] in ends else crossing
+        for crossing in found
     ]
 
 

@@ -29,7 +29,9 @@ def diode_pairs(part: Part) -> list[tuple[Pin, Pin]]:
         else:
             named["?"].append(pin)
     anodes, cathodes, rest = named["A"], named["K"], named["?"]
-    if len(part.pins) == 3 and re.search(r"BAT\d+S|BAV99|BAS70-04|BAS40-04|DUAL_SERIES|SERIES", f"{part.value} {part.symbol}".upper()):
+    if len(part.pins) == 3 and re.search(
+        r"BAT\d+S|BAV99|BAS70-04|BAS40-04|DUAL_SERIES|SERIES", f"{part.value} {part.symbol}".upper()
+    ):
         by_number = {pin.number: pin for pin in part.pins}
         if {"1", "2", "3"} <= set(by_number):
             return [(by_number["1"], by_number["3"]), (by_number["3"], by_number["2"])]

@@ -37,7 +37,9 @@ SOT23_MOSFET = {"1": "G", "2": "S", "3": "D"}
 SOT23_BIPOLAR = {"1": "B", "2": "E", "3": "C"}
 
 
-def find_elements(board: Board, book: Tradebook, facts: Mapping[str, PartFacts], settings: Settings) -> tuple[Element, ...]:
+def find_elements(
+    board: Board, book: Tradebook, facts: Mapping[str, PartFacts], settings: Settings
+) -> tuple[Element, ...]:
     """Turn every fitted passive part, diode, transistor and pass switch into elements.
 
     Parameters
@@ -79,8 +81,30 @@ def _elements_of(part: Part, book: Tradebook, facts: PartFacts | None, settings:
     return ()
 
 
-def _two(part: Part, kind: str, a: Pin, b: Pin, **more: object) -> Element:
-    return Element(kind=kind, part=part.reference, nets=(a.net, b.net), terminals=(a.number, b.number), value=part.value, **more)  # type: ignore[arg-type]
+def _two(
+    part: Part,
+    kind: str,
+    a: Pin,
+    b: Pin,
+    *,
+    ohms: Spread | None = None,
+    farads: Spread | None = None,
+    facts: object = None,
+    basis: Basis = Basis.TRACED,
+    note: str = "",
+) -> Element:
+    return Element(
+        kind=kind,
+        part=part.reference,
+        nets=(a.net, b.net),
+        terminals=(a.number, b.number),
+        value=part.value,
+        ohms=ohms,
+        farads=farads,
+        facts=facts,
+        basis=basis,
+        note=note,
+    )
 
 
 def _resistors(part: Part, settings: Settings) -> Iterable[Element]:
@@ -121,7 +145,9 @@ def _device_index(pin: Pin, roles: Mapping[str, str]) -> tuple[str, str] | None:
     return None
 
 
-def transistor_devices(part: Part, roles: Mapping[str, str], sot23: Mapping[str, str]) -> list[tuple[dict[str, Pin], str]]:
+def transistor_devices(
+    part: Part, roles: Mapping[str, str], sot23: Mapping[str, str]
+) -> list[tuple[dict[str, Pin], str]]:
     """Group the pins of a transistor or a transistor pair into devices.
 
     Parameters
@@ -151,7 +177,12 @@ def transistor_devices(part: Part, roles: Mapping[str, str], sot23: Mapping[str,
     if order and set(order.group(1)) == letters and {"1", "2", "3"} <= set(by_number):
         return [({letter: by_number[str(place + 1)] for place, letter in enumerate(order.group(1))}, "")]
     if len(part.pins) == 3 and set(sot23) == set(by_number):
-        return [({letter: by_number[number] for number, letter in sot23.items()}, "pin order 1 2 3 taken from the SOT-23 habit")]
+        return [
+            (
+                {letter: by_number[number] for number, letter in sot23.items()},
+                "pin order 1 2 3 taken from the SOT-23 habit",
+            )
+        ]
     return []
 
 

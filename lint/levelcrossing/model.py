@@ -984,7 +984,6 @@ class Crossing:
     segment: bool = False
     inferred: str = ""
 
-
     @property
     def source(self) -> str:
         """Name the driver for people: ``U1.5 (TX) on +5V``, or ``+5V through R3``."""
@@ -1156,7 +1155,16 @@ class SolvedCrossing:
     proposal: str = ""
 
     def finding(
-        self, index: int, rule: str, outcome: Outcome, text: str, *, remedy: str = "", cause: str = "", condition: str = "", part: str = ""
+        self,
+        index: int,
+        rule: str,
+        outcome: Outcome,
+        text: str,
+        *,
+        remedy: str = "",
+        cause: str = "",
+        condition: str = "",
+        part: str = "",
     ) -> Finding:
         """Return a finding at the receiver of this crossing.
 
@@ -1187,8 +1195,10 @@ class SolvedCrossing:
             near = crossing.driver if far is crossing.receiver else crossing.receiver
             cause = f"guess {rule} {far.part if far else ''}"
             volts = near.supply_volts.nominal if near is not None and near.supply_volts is not None else 5.0
-            remedy = f"Declare what is plugged in: under [far_ends] in levelcrossing.toml, \"{far.part if far else ''}\" = {{rail = \"{volts:.3g}\"}}."
-        sources = [pin.source for pin in (receive, (crossing.driver.drive if crossing.driver else None)) if pin is not None]
+            remedy = f'Declare what is plugged in: under [far_ends] in levelcrossing.toml, "{far.part if far else ""}" = {{rail = "{volts:.3g}"}}.'
+        sources = [
+            pin.source for pin in (receive, (crossing.driver.drive if crossing.driver else None)) if pin is not None
+        ]
         return Finding(
             rule=rule,
             outcome=outcome,

@@ -32,28 +32,48 @@ DEAD_RAIL_OHMS = 10_000.0
 DEAD = Spread(low=0.0, nominal=0.0, high=0.0)
 
 
-def independent(rails: Rails, first: str, second: str) -> bool:
-    """Tell whether one of two rails can be up while the other is down.
+def can_be_off(rails: Rails, dead: str, live: str) -> bool:
+    """Tell whether the board itself shows that one rail can be down while another is up.
 
-    Rails of one domain, and a rail made from the other by a regulator that nothing switches, come and go together.
+    Parameters
+    ----------
+    rails : Rails
+    dead, live : str
+        Nets of the two rails.
+
+    Returns
+    -------
+    bool
+        False when everything that feeds ``live`` also feeds ``dead``, and when nothing tells where ``dead`` comes from: a
+        rail that only has a name proves no switch.
     """
-    if not first or not second or first == second:
+    rail = rails.by_net.get(dead)
+    if rail is None or not live or dead == live:
         return False
-    return _root(rails, first) != _root(rails, second)
+    if _above(rails, dead) & _above(rails, live):
+        return False
+    source = rails.by_net.get(rail.domain, rail)
+    switched = any(item.kind in ("regulator", "feedback") for item in source.evidence) and not source.fed_by
+    return switched or any(item.kind in ("connector", "battery", "settings") for item in source.evidence)
 
 
-def _root(rails: Rails, net: str) -> str:
-    seen: set[str] = set()
-    while net not in seen:
-        seen.add(net)
-        rail = rails.by_net.get(net)
+def _above(rails: Rails, net: str) -> set[str]:
+    """Return a rail with all that feeds it, also one of several through diodes."""
+    found: set[str] = set()
+    queue = [net]
+    while queue:
+        here = queue.pop()
+        if not here or here in found:
+            continue
+        found.add(here)
+        rail = rails.by_net.get(here)
         if rail is None:
-            return net
-        above = rail.fed_by or rail.domain
-        if not above or above == net:
-            return net
-        net = above
-    return net
+            continue
+        queue += [rail.fed_by, rail.domain]
+        for item in rail.evidence:
+            if item.kind in ("diode", "upstream"):
+                queue += [word for word in item.text.replace(",", " ").split() if word in rails.by_net]
+    return found
 
 
 def power_down(solved: SolvedCrossing, islands: Sequence[Island], rails: Rails) -> tuple[OffState, ...]:
@@ -74,7 +94,10 @@ def power_down(solved: SolvedCrossing, islands: Sequence[Island], rails: Rails) 
     crossing = solved.crossing
     receiver, driver = crossing.receiver, crossing.stage_driver or crossing.driver
     dead, live = crossing.receiver_rail, crossing.driver_rail
-    if crossing.island < 0 or not solved.states or not independent(rails, dead, live):
+    if crossing.island < 0 or not solved.states:
+        return ()
+    receiver_dies, driver_dies = can_be_off(rails, dead, live), can_be_off(rails, live, dead)
+    if not (receiver_dies or driver_dies):
         return ()
     island = with_end(islands[crossing.island], crossing)
     if len(island.nets) > MOST_NODES:
@@ -82,20 +105,19 @@ def power_down(solved: SolvedCrossing, islands: Sequence[Island], rails: Rails) 
     found: list[OffState] = []
     drives_high = driver is not None and driver.drive is not None and driver.drive.style != "open-drain"
     state = "high" if drives_high else "released"
-    if receiver.receive is not None and dead in rails.by_net:
+    if receiver_dies and receiver.receive is not None:
         for case, override in (("receiver-off-grounded", DEAD), ("receiver-off-floating", None)):
             off = _receiver_off(case, crossing, island, rails, driver, state, dead, override)
             if off is not None:
                 found.append(off)
-    if driver is not None and driver.drive is not None and live in rails.by_net:
+    if driver_dies and driver is not None and driver.drive is not None:
         off = _driver_off(crossing, island, rails, driver, live)
         if off is not None:
             found.append(off)
     return tuple(found)
 
 
-def _solve(builder: Builder, extra: Network | None = None) -> tuple[Network, object, int]:
-    del extra
+def _solve(builder: Builder) -> tuple[Network, object, int]:
     variables = builder.plan.variables
     codes = all_corners(len(variables)) if len(variables) <= FULL_VARIABLES else one_at_a_time(len(variables))
     network = builder.plan.network(codes)
@@ -150,14 +172,19 @@ def _receiver_off(
 
 
 def _driver_off(crossing: Crossing, island: Island, rails: Rails, driver: PinModel, dead: str) -> OffState | None:
-    """The driver's supply is gone: its output stage still has a diode to that supply, unless it is rated otherwise."""
+    """Solve with the driver's supply gone: its output stage still has a diode to that supply, unless it is rated otherwise."""
     known = driver.facts
-    off_rated = (driver.receive is not None and driver.receive.off_tolerant) or (known is not None and known.vmax_off is not None)
+    off_rated = (driver.receive is not None and driver.receive.off_tolerant) or (
+        known is not None and known.vmax_off is not None
+    )
     assert driver.drive is not None
     if off_rated or driver.drive.style == "open-drain" or driver.role == "far-end":
         return None
     passive = replace(driver, receive=driver.receive or _bare_receive(driver.drive), drive=None)
-    quiet = replace(island, pins=tuple(passive if (pin.part, pin.number) == (driver.part, driver.number) else pin for pin in island.pins))
+    quiet = replace(
+        island,
+        pins=tuple(passive if (pin.part, pin.number) == (driver.part, driver.number) else pin for pin in island.pins),
+    )
     builder = Builder(quiet, rails, None, "released", rail_overrides={dead: DEAD})
     if builder.plan.missing:
         return None

@@ -12,6 +12,7 @@ SUPPLY_NAME = re.compile(
     re.IGNORECASE,
 )
 
+
 def pin_words(name: str) -> tuple[str, ...]:
     """Split a pin name into its alternates, without overbars: ``~{RESET}/PC6`` gives ``RESET`` and ``PC6``.
 
@@ -32,4 +33,6 @@ def looks_like_supply(pin: Pin) -> bool:
     """Tell from type and name whether a pin is a supply pin (types lie; a supply name on a rail is believed)."""
     words = pin_words(pin.name.replace("_{", "").replace("}", ""))
     named = bool(words) and SUPPLY_NAME.fullmatch(words[0]) is not None
-    return named or (pin.kind in ("power_in", "power_out") and not (words and re.match(r"(EN|SW|FB|PG)", words[0], re.I)))
+    return named or (
+        pin.kind in ("power_in", "power_out") and not (words and re.match(r"(EN|SW|FB|PG)", words[0], re.I))
+    )

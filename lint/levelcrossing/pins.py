@@ -39,7 +39,10 @@ UNKNOWN_LEAKAGE_AMPS = 1e-6
 
 # Supply pins that set the logic levels, tried in this order (naming habits across makers; common practice).
 IO_SUPPLY_NAMES = (
-    re.compile(r"(VCC|VDD|V)_?\(?I/?O\)?\d*([_ ].*)?|IO_?(VDD|VCC).*|OVDD.*|VLOGIC|VDDPST|NVCC.*|VDDQ.*|VCCO([_ ].*)?|VL(CC)?|VDDI", re.I),
+    re.compile(
+        r"(VCC|VDD|V)_?\(?I/?O\)?\d*([_ ].*)?|IO_?(VDD|VCC).*|OVDD.*|VLOGIC|VDDPST|NVCC.*|VDDQ.*|VCCO([_ ].*)?|VL(CC)?|VDDI",
+        re.I,
+    ),
     re.compile(r"3V3.*|3\.3V.*|\+3V3.*|VDD33.*|VCC33.*|1V8|VDD18", re.I),
     re.compile(r"D?(VCC|VDD)\d?|DVCC|DVDD|VDDD|VS|V\+|VCC\w?|VDD\w?|VDD/.*|VCC/.*|VBAT|VDDIN", re.I),
     re.compile(r"A(VCC|VDD)\d?|VDDA|VDDANA|VCCA|VPP|VIN|\+?5V.*|VBUS|VSYS|VREGIN|EXT_5V", re.I),
@@ -54,10 +57,16 @@ ANALOG_NAME = re.compile(
     r".*\w[+-]$|IREF|VCP|SDP|SDM|MDI|TD[+-]|RD[+-]|TDP|TDN|RDP|RDN|.*_[PN]$|.*DIFF.*|I(SEN|LIM|MON)|PROG$|TS$|NTC|VC$|RT$|RT/)",
     re.I,
 )
-OPEN_DRAIN_NAME = re.compile(r".*(PGOOD|PWRGD|POK|PG$|^PG|ALERT|ALERTB|INT[B#N]?\d?$|IRQ|FAULT|FLT|nINT|OVCUR|OC$|CHRG|STDBY|STAT\d?$|STATUS|RDY/BSY).*", re.I)
+OPEN_DRAIN_NAME = re.compile(
+    r".*(PGOOD|PWRGD|POK|PG$|^PG|ALERT|ALERTB|INT[B#N]?\d?$|IRQ|FAULT|FLT|nINT|OVCUR|OC$|CHRG|STDBY|STAT\d?$|STATUS|RDY/BSY).*",
+    re.I,
+)
 STRICT_SUPPLY = re.compile(r"[AD]?V(DD|CC|PP|EE|TT)[A-Z0-9_]*", re.I)
 TWO_WAY_NAME = re.compile(r"(SDA|SCL|SMB|DQ|1W|IO|GPIO|P[A-Z]?\d|D\d|SDIO|ALERT|BUSY)", re.I)
-READ_NAME = re.compile(r"(SDI|DIN|SI|MOSI|SCK|SCLK|CLK|CS|CSN|CSB|NCS|SS|EN|ENA|ENABLE|OE|CE|WE|RD|WR|RST|RESET|NRST|MR|SHDN|WP|HOLD|DIR|SEL|STBY|MCLK|LRCK|BCK|BCLK)", re.I)
+READ_NAME = re.compile(
+    r"(SDI|DIN|SI|MOSI|SCK|SCLK|CLK|CS|CSN|CSB|NCS|SS|EN|ENA|ENABLE|OE|CE|WE|RD|WR|RST|RESET|NRST|MR|SHDN|WP|HOLD|DIR|SEL|STBY|MCLK|LRCK|BCK|BCLK)",
+    re.I,
+)
 DRIVE_NAME = re.compile(r"(SDO|DOUT|SO|MISO|RO|DRDY|BUSY|CLKOUT|Q\d*|RXD_OUT)", re.I)
 
 
@@ -121,7 +130,9 @@ def receive_from(facts: PinFacts, part: PartFacts) -> Receive:
         clamp_high=clamp_high,
         clamp_low=True if facts.clamp_low is None else facts.clamp_low,
         injection_amps=facts.injection_amps,
-        capacitance_farads=Spread(low=farads * 0.6, nominal=farads, high=farads * 1.5) if farads else default.capacitance_farads,
+        capacitance_farads=Spread(low=farads * 0.6, nominal=farads, high=farads * 1.5)
+        if farads
+        else default.capacitance_farads,
         off_tolerant=bool(part.partial_power_down) or facts.vmax_off is not None,
         basis=basis,
         source=describe(part.provenance, part.title),
@@ -191,7 +202,10 @@ def _worst_resistance(worst_ohms: float, known: bool) -> Spread:
 def bipolar_output(outputs: Sequence[OutputPoint]) -> bool:
     """Tell a TTL output stage: at 5 V it guarantees no more than 2.4 to 2.7 V even at half a milliampere."""
     return any(
-        point.voh is not None and 4.4 < point.supply_volts < 5.6 and point.voh.at(point.supply_volts) <= 2.75 and point.ioh_amps <= 0.0011
+        point.voh is not None
+        and 4.4 < point.supply_volts < 5.6
+        and point.voh.at(point.supply_volts) <= 2.75
+        and point.ioh_amps <= 0.0011
         for point in outputs
     )
 
@@ -227,12 +241,16 @@ def model_pins(
             continue
         if kind in ("connector", "test-point"):
             for pin in part.pins:
-                pins[part.reference, pin.number] = _far_end(pin, rails, settings) if kind == "connector" else _plain(pin, "element")
+                pins[part.reference, pin.number] = (
+                    _far_end(pin, rails, settings) if kind == "connector" else _plain(pin, "element")
+                )
             continue
         known = book.part(part)
         if known is not None:
             facts[part.reference] = known
-        modeller = _PartModeller(part, known, rails, settings, regulator=kind == "regulator" or book.regulator(part) is not None)
+        modeller = _PartModeller(
+            part, known, rails, settings, regulator=kind == "regulator" or book.regulator(part) is not None
+        )
         for pin in part.pins:
             pins[part.reference, pin.number] = modeller.model(pin)
     return pins, facts
@@ -271,7 +289,9 @@ def declared_far_end(model: PinModel, declared: PinSetting, rails: Rails) -> Pin
         supply=declared.rail if declared.rail in rails.by_net else "",
         supply_volts=volts,
         drive=far_end_drive(open_drain=bool(declared.open_drain), basis=Basis.DECLARED) if drives else None,
-        receive=_overridden(replace(cmos_receive(), basis=Basis.DECLARED, source="declared far end"), declared) if reads else None,
+        receive=_overridden(replace(cmos_receive(), basis=Basis.DECLARED, source="declared far end"), declared)
+        if reads
+        else None,
         basis=Basis.DECLARED,
         declared_far_end=True,
         why="declared in the settings",
@@ -296,7 +316,9 @@ def far_end_drive(*, open_drain: bool, basis: Basis) -> Drive:
 def _overridden(receive: Receive, setting: PinSetting) -> Receive:
     if setting.tolerates_volts is not None:
         limit = _level(f"{setting.tolerates_volts:g}")
-        receive = replace(receive, vmax=limit, clamp_high=False, basis=Basis.DECLARED, source="declared in the settings")
+        receive = replace(
+            receive, vmax=limit, clamp_high=False, basis=Basis.DECLARED, source="declared in the settings"
+        )
     if setting.vih_volts is not None:
         receive = replace(receive, vih=_level(f"{setting.vih_volts:g}"))
     if setting.vil_volts is not None:
@@ -307,13 +329,17 @@ def _overridden(receive: Receive, setting: PinSetting) -> Receive:
 class _PartModeller:
     """Models the pins of one integrated circuit or module."""
 
-    def __init__(self, part: Part, facts: PartFacts | None, rails: Rails, settings: Settings, *, regulator: bool) -> None:
+    def __init__(
+        self, part: Part, facts: PartFacts | None, rails: Rails, settings: Settings, *, regulator: bool
+    ) -> None:
         self.part = part
         self.facts = facts
         self.rails = rails
         self.settings = settings
         self.regulator = regulator
-        self.supply_pins = [pin for pin in part.pins if self._is_supply(pin) and not rails.is_ground(pin.net) and pin.net]
+        self.supply_pins = [
+            pin for pin in part.pins if self._is_supply(pin) and not rails.is_ground(pin.net) and pin.net
+        ]
 
     def _is_supply(self, pin: Pin) -> bool:
         if self.facts is not None:
@@ -330,9 +356,13 @@ class _PartModeller:
             return _plain(pin, "unused")
         facts = self.facts.pin(pin) if self.facts else PinFacts()
         setting = setting_for(self.settings.pins, pin.part, pin.number)
-        if facts.direction == "ground" or (self.rails.is_ground(pin.net) and facts.direction is None and self._is_supply(pin)):
+        if facts.direction == "ground" or (
+            self.rails.is_ground(pin.net) and facts.direction is None and self._is_supply(pin)
+        ):
             return _plain(pin, "ground")
-        if facts.direction in ("supply", "supply-out") or (self._is_supply(pin) and (facts.direction is None or STRICT_SUPPLY.fullmatch(pin.name))):
+        if facts.direction in ("supply", "supply-out") or (
+            self._is_supply(pin) and (facts.direction is None or STRICT_SUPPLY.fullmatch(pin.name))
+        ):
             return _plain(pin, "supply-out" if facts.direction == "supply-out" or pin.kind == "power_out" else "supply")
         if facts.direction in ("analog", "passive"):
             return replace(_plain(pin, "analog", facts.note), facts=facts)
@@ -353,7 +383,11 @@ class _PartModeller:
             receive = receive_from(facts, self.facts) if self.facts and (facts.vih or facts.vmax) else cmos_receive()
             if setting:
                 receive = _overridden(receive, setting)
-            if direction == "open-drain" and pin.kind != "bidirectional" and not any(TWO_WAY_NAME.match(word) for word in words):
+            if (
+                direction == "open-drain"
+                and pin.kind != "bidirectional"
+                and not any(TWO_WAY_NAME.match(word) for word in words)
+            ):
                 receive = replace(receive, reads=False)
         if direction in ("out", "inout", "open-drain", "open-source"):
             style = {"open-drain": "open-drain", "open-source": "open-source"}.get(direction, "push-pull")
@@ -383,8 +417,12 @@ class _PartModeller:
 
     # -- direction ---------------------------------------------------------------------------------------------------
 
-    def _direction(self, pin: Pin, facts: PinFacts, setting: PinSetting | None, words: Sequence[str]) -> tuple[str, bool, Basis]:
-        if setting is not None and (setting.drives is not None or setting.reads is not None or setting.open_drain is not None):
+    def _direction(
+        self, pin: Pin, facts: PinFacts, setting: PinSetting | None, words: Sequence[str]
+    ) -> tuple[str, bool, Basis]:
+        if setting is not None and (
+            setting.drives is not None or setting.reads is not None or setting.open_drain is not None
+        ):
             if setting.open_drain:
                 return "open-drain", True, Basis.DECLARED
             if setting.drives and setting.reads is not True:
@@ -401,11 +439,19 @@ class _PartModeller:
                 return "open-drain", True, Basis.TRACED
             case "open_emitter":
                 return "open-source", True, Basis.TRACED
-            case "input" if self.facts is not None and self.facts.group == "fpga" and not any(READ_NAME.fullmatch(word) for word in words):
+            case "input" if (
+                self.facts is not None
+                and self.facts.group == "fpga"
+                and not any(READ_NAME.fullmatch(word) for word in words)
+            ):
                 # Symbols of gate arrays are often drawn with every ball an input.
                 return "inout", False, Basis.ASSUMED
             case "input":
-                return ("open-drain", True, Basis.ASSUMED) if re.fullmatch(r"SDA\w?|PGD|PGOOD", first, re.I) else ("in", True, Basis.TRACED)
+                return (
+                    ("open-drain", True, Basis.ASSUMED)
+                    if re.fullmatch(r"SDA\w?|PGD|PGOOD", first, re.I)
+                    else ("in", True, Basis.TRACED)
+                )
             case "output" | "tri_state":
                 if OPEN_DRAIN_NAME.match(first):
                     return "open-drain", True, Basis.ASSUMED
@@ -439,13 +485,16 @@ class _PartModeller:
             matching = [
                 candidate
                 for candidate in self.supply_pins
-                if _named(pattern, candidate) and not (pattern is not IO_SUPPLY_NAMES[0] and _named(NOT_IO_SUPPLY, candidate))
+                if _named(pattern, candidate)
+                and not (pattern is not IO_SUPPLY_NAMES[0] and _named(NOT_IO_SUPPLY, candidate))
             ]
             banked = [candidate for candidate in matching if _same_bank(candidate, pin)]
             chosen = self._one_of(pin, banked or matching)
             if chosen is not None:
                 return chosen
-        chosen = self._one_of(pin, [candidate for candidate in self.supply_pins if not _named(NOT_IO_SUPPLY, candidate)])
+        chosen = self._one_of(
+            pin, [candidate for candidate in self.supply_pins if not _named(NOT_IO_SUPPLY, candidate)]
+        )
         if chosen is not None:
             return chosen
         if not self.supply_pins:
@@ -466,7 +515,11 @@ class _PartModeller:
         if all(abs(volts.nominal - first.nominal) <= 0.04 * first.nominal for _, volts in with_volts):
             return with_volts[0][0], first, ""
         listing = ", ".join(f"{net} {format_volts(volts.nominal)}" for net, volts in with_volts)
-        return "", None, f"{self.part.reference} has several supplies ({listing}) and nothing says which one this pin is on"
+        return (
+            "",
+            None,
+            f"{self.part.reference} has several supplies ({listing}) and nothing says which one this pin is on",
+        )
 
 
 def _named(pattern: re.Pattern[str], pin: Pin) -> bool:

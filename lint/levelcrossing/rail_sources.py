@@ -14,9 +14,10 @@ from collections import defaultdict
 from dataclasses import dataclass
 
 from levelcrossing import units
+from levelcrossing.diodepins import diode_pairs
 from levelcrossing.model import Basis, Evidence, Part, Pin, Provenance, RegulatorFacts, Settings, Spread, SupplyFacts
 from levelcrossing.rail_dividers import feedback_volts, read_divider
-from levelcrossing.rail_links import Joints, across_coil, diode_ways
+from levelcrossing.rail_links import Joints, across_coil
 from levelcrossing.rail_scene import Scene, plain_words
 from levelcrossing.symbolfields import settings_from_fields
 
@@ -384,5 +385,5 @@ def _after_diode(scene: Scene, net: str) -> list[str]:
     found = []
     for pin in scene.pins_on.get(net, ()):
         if scene.kinds[pin.part] == "diode":
-            found += [cathode.net for anode, cathode in diode_ways(scene.parts[pin.part]) if anode.net == net]
+            found += [cathode.net for anode, cathode in diode_pairs(scene.parts[pin.part]) if anode.net == net]
     return [other for other in found if other and other not in scene.grounds]

@@ -8,9 +8,9 @@ from pathlib import Path
 
 from levelcrossing import crossings as crossing_survey
 from levelcrossing import islands as island_survey
+from levelcrossing import offstates, remedies, rulebook, scope, solutions, tradebook, waivers
 from levelcrossing import pins as pin_models
 from levelcrossing import rails as rail_tracing
-from levelcrossing import offstates, remedies, rulebook, scope, solutions, tradebook, waivers
 from levelcrossing.model import (
     Basis,
     Board,
@@ -24,7 +24,6 @@ from levelcrossing.model import (
     Review,
     ReviewedCrossing,
     Settings,
-    SolvedCrossing,
 )
 from levelcrossing.read import read_board
 from levelcrossing.read.places import Places
@@ -71,7 +70,8 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
     survey = crossing_survey.find_crossings(board, rails, pins, facts, islands)
     solved = solutions.solve_crossings(survey.crossings, islands, rails, settings)
     solved = tuple(
-        replace(one, proposal=remedies.propose(one), off_states=offstates.power_down(one, islands, rails)) for one in solved
+        replace(one, proposal=remedies.propose(one), off_states=offstates.power_down(one, islands, rails))
+        for one in solved
     )
     return CaseFile(
         board=board,
@@ -82,7 +82,9 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
         crossings=solved,
         settings=settings,
         not_judged=tuple((pins[entry.part, entry.pin], entry.why) for entry in survey.not_judged)
-        + tuple((pins[part, number], "the level on the other side is not known") for part, number, _ in survey.far_ends),
+        + tuple(
+            (pins[part, number], "the level on the other side is not known") for part, number, _ in survey.far_ends
+        ),
     )
 
 
@@ -137,7 +139,11 @@ def reviewed_crossings(case: CaseFile, findings: Sequence[Finding]) -> tuple[Rev
             outcomes.append(Outcome.UNKNOWN)
         verdict = Outcome.worst(*outcomes)
         deciding = next((findings[number] for number in numbers if findings[number].outcome is verdict), None)
-        condition = deciding.condition if deciding is not None else " and ".join(text for text in (solved.crossing.condition, solved.crossing.inferred) if text)
+        condition = (
+            deciding.condition
+            if deciding is not None
+            else " and ".join(text for text in (solved.crossing.condition, solved.crossing.inferred) if text)
+        )
         result.append(ReviewedCrossing(solved=solved, verdict=verdict, condition=condition, findings=numbers))
     return tuple(result)
 
@@ -155,7 +161,11 @@ def _explained(case: CaseFile, findings: Sequence[Finding]) -> dict[int, list[in
         for place in finding.also:
             for index in places.get(place, ()):
                 here = case.crossings[index].crossing
-                if here.island == head.island or (here.inferred and here.inferred == head.inferred) or (here.inferred and finding.cause.startswith("guess")):
+                if (
+                    here.island == head.island
+                    or (here.inferred and here.inferred == head.inferred)
+                    or (here.inferred and finding.cause.startswith("guess"))
+                ):
                     found.setdefault(index, []).append(number)
     return found
 
@@ -167,7 +177,11 @@ def coverage(case: CaseFile) -> Coverage:
         if not solved.states or solved.why:
             receiver = solved.crossing.receiver
             unjudged.setdefault((receiver.part, receiver.number), solved.why or "the circuit could not be solved")
-    signal = [pin for pin in case.pins.values() if pin.role == "signal" or (pin.role == "far-end" and (pin.part, pin.number) in unjudged)]
+    signal = [
+        pin
+        for pin in case.pins.values()
+        if pin.role == "signal" or (pin.role == "far-end" and (pin.part, pin.number) in unjudged)
+    ]
     return Coverage(
         signal_pins=len(signal),
         judged=sum(1 for pin in signal if (pin.part, pin.number) not in unjudged),

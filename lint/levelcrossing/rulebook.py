@@ -86,7 +86,9 @@ def load_rules(folders: Sequence[Path] = ()) -> tuple[RuleFile, ...]:
                 continue
             rule = _load(path)
             if rule.name in rules:
-                raise RuleFileError(f"rule {rule.name!r} exists already in {rules[rule.name].path}", file=str(path), line=1)
+                raise RuleFileError(
+                    f"rule {rule.name!r} exists already in {rules[rule.name].path}", file=str(path), line=1
+                )
             rules[rule.name] = rule
     return tuple(rules[name] for name in sorted(rules))
 
@@ -101,7 +103,9 @@ def _load(path: Path) -> RuleFile:
         raise RuleFileError(f"is not valid Python: {error.msg}", file=str(path), line=error.lineno or 0) from error
     text = (module.__doc__ or "").strip()
     if not text:
-        raise RuleFileError("has no docstring", file=str(path), line=1, remedy="the docstring is the user's text of the rule")
+        raise RuleFileError(
+            "has no docstring", file=str(path), line=1, remedy="the docstring is the user's text of the rule"
+        )
     for section in SECTIONS:
         if section not in text:
             raise RuleFileError(f"its docstring has no part {section!r}", file=str(path), line=1)
@@ -221,7 +225,8 @@ def consolidate(found: Sequence[Finding], explains: dict[str, tuple[str, ...]], 
             if other_index == index or other_index in absorbed:
                 continue
             same_circuit = head.crossing is not None and (
-                other.crossing == head.crossing or (island_of(other) is not None and island_of(other) == island_of(head) and _shares(head, other, case))
+                other.crossing == head.crossing
+                or (island_of(other) is not None and island_of(other) == island_of(head) and _shares(head, other, case))
             )
             same_rule = other.rule == head.rule and bool(head.cause) and head.cause == other.cause
             if (same_circuit and other.rule in names) or same_rule:
@@ -242,6 +247,16 @@ def _shares(head: Finding, other: Finding, case: CaseFile) -> bool:
 
 def _merged(head: Finding, other: Finding) -> Finding:
     outcome = Outcome.worst(head.outcome, other.outcome)
-    places = [place for place in (*head.also, *([f"{other.part}.{other.pin}"] if other.pin else []), *other.also) if place != f"{head.part}.{head.pin}"]
+    places = [
+        place
+        for place in (*head.also, *([f"{other.part}.{other.pin}"] if other.pin else []), *other.also)
+        if place != f"{head.part}.{head.pin}"
+    ]
     condition = head.condition if head.condition and (other.condition or outcome is head.outcome) else ""
-    return replace(head, outcome=outcome, also=tuple(dict.fromkeys(places)), condition=condition or (other.condition if outcome is other.outcome and head.outcome is not outcome else head.condition))
+    return replace(
+        head,
+        outcome=outcome,
+        also=tuple(dict.fromkeys(places)),
+        condition=condition
+        or (other.condition if outcome is other.outcome and head.outcome is not outcome else head.condition),
+    )

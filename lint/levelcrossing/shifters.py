@@ -45,27 +45,57 @@ def recognise(
         if element.kind in ("mosfet", "bipolar"):
             through = _passes(element, path, driver.net)
             if not through:
-                return Shifter(kind="inverting-stage", parts=(element.part,), title=f"{element.value} from control to output")
+                return Shifter(
+                    kind="inverting-stage", parts=(element.part,), title=f"{element.value} from control to output"
+                )
             kind = "mosfet-pass" if element.kind == "mosfet" else "bipolar-pass"
             return Shifter(kind=kind, parts=(element.part,), title=f"{element.value} between the two sides")
         if element.kind in ("diode", "zener"):
             return Shifter(kind="diode", parts=(element.part,), title=f"{element.value} in series")
     ends = {receiver.net, *(net for element in path for net in element.nets)}
-    to_rail = [element for element in island.elements if any(net in ends for net in element.nets) and any(net in rails.by_net for net in element.nets)]
-    grounded = [element for element in to_rail if element.kind == "resistor" and any(rails.is_ground(net) for net in element.nets)]
+    to_rail = [
+        element
+        for element in island.elements
+        if any(net in ends for net in element.nets) and any(net in rails.by_net for net in element.nets)
+    ]
+    grounded = [
+        element
+        for element in to_rail
+        if element.kind == "resistor" and any(rails.is_ground(net) for net in element.nets)
+    ]
     clamps = [element for element in to_rail if element.kind in ("diode", "zener")]
     if resistors and grounded and any(receiver.net in element.nets for element in grounded):
-        return Shifter(kind="divider", parts=tuple(dict.fromkeys(element.part for element in [*resistors, *grounded])), title="resistor divider")
+        return Shifter(
+            kind="divider",
+            parts=tuple(dict.fromkeys(element.part for element in [*resistors, *grounded])),
+            title="resistor divider",
+        )
     if resistors and clamps:
-        return Shifter(kind="clamp", parts=tuple(dict.fromkeys(element.part for element in [*resistors, *clamps])), title="series resistor and clamp")
+        return Shifter(
+            kind="clamp",
+            parts=tuple(dict.fromkeys(element.part for element in [*resistors, *clamps])),
+            title="series resistor and clamp",
+        )
     if driver.drive is not None and driver.drive.style == "open-drain":
-        pulls = [element for element in to_rail if element.kind == "resistor" and not any(rails.is_ground(net) for net in element.nets)]
-        return Shifter(kind="open-drain", parts=tuple(dict.fromkeys(element.part for element in pulls)), title="open drain and pull-up")
+        pulls = [
+            element
+            for element in to_rail
+            if element.kind == "resistor" and not any(rails.is_ground(net) for net in element.nets)
+        ]
+        return Shifter(
+            kind="open-drain",
+            parts=tuple(dict.fromkeys(element.part for element in pulls)),
+            title="open drain and pull-up",
+        )
     known = facts.get(receiver.part)
     if known is not None and known.group == "logic" and not resistors:
         return Shifter(kind="buffer", parts=(receiver.part,), title=known.title)
     if resistors:
-        return Shifter(kind="series-resistor", parts=tuple(dict.fromkeys(element.part for element in resistors)), title="series resistor")
+        return Shifter(
+            kind="series-resistor",
+            parts=tuple(dict.fromkeys(element.part for element in resistors)),
+            title="series resistor",
+        )
     return Shifter(kind="wire")
 
 

@@ -63,7 +63,9 @@ def planned_states(crossing: Crossing) -> tuple[str, ...]:
     pin = crossing.stage_driver or crossing.driver
     if pin is None or pin.drive is None:
         return ("released",)
-    return {"open-drain": ("released", "low"), "open-source": ("high", "released")}.get(pin.drive.style, ("high", "low"))
+    return {"open-drain": ("released", "low"), "open-source": ("high", "released")}.get(
+        pin.drive.style, ("high", "low")
+    )
 
 
 class _Solver:
@@ -81,7 +83,11 @@ class _Solver:
         if len(island.nets) > MOST_NODES:
             island = neighbourhood(island, crossing)
             if len(island.nets) > MOST_NODES:
-                return SolvedCrossing(crossing=crossing, states={}, why=f"{len(island.nets)} nets hang together here: too large to be a level shifter")
+                return SolvedCrossing(
+                    crossing=crossing,
+                    states={},
+                    why=f"{len(island.nets)} nets hang together here: too large to be a level shifter",
+                )
         states: dict[str, StateResult] = {}
         limits: _Limits | None = None
         partners = combined_drivers(crossing, island)
@@ -92,20 +98,32 @@ class _Solver:
         return _collected(crossing, island, states, limits)
 
     def _tied(self, crossing: Crossing) -> SolvedCrossing:
-        """An input tied straight to a rail: the voltage is the rail's, nothing need be solved."""
+        """Judge an input tied straight to a rail: the voltage is the rail's, nothing need be solved."""
         net = crossing.receiver.net
         volts = self.rails.volts(net)
         assert volts is not None
         variables = [Variable(key=net, spread=volts, unit="V")]
         supply = crossing.receiver.supply_volts
         assert supply is not None
-        variables.append(Variable(key=crossing.receiver_rail or f"supply inside {crossing.receiver.part}", spread=supply, unit="V"))
+        variables.append(
+            Variable(key=crossing.receiver_rail or f"supply inside {crossing.receiver.part}", spread=supply, unit="V")
+        )
         codes = all_corners(2)
         at = np.array([volts.low, volts.nominal, volts.high])[codes[0]]
         supplies = np.array([supply.low, supply.nominal, supply.high])[codes[1]]
         limits = _Limits.of(crossing.receiver, supplies)
         nothing = np.zeros_like(at)
-        answer = _Answer(receiver=at, open=at, clamp=nothing, driver_amps=nothing, driver=at, solved=np.ones(at.shape, bool), floating=False, why="", stresses=())
+        answer = _Answer(
+            receiver=at,
+            open=at,
+            clamp=nothing,
+            driver_amps=nothing,
+            driver=at,
+            solved=np.ones(at.shape, bool),
+            floating=False,
+            why="",
+            stresses=(),
+        )
         result = _judged("released", answer, limits, codes, variables, reads_high=True, reads_low=False)
         return SolvedCrossing(
             crossing=crossing,
@@ -148,12 +166,23 @@ class _Solver:
         supplies = plan.values(supply_key, codes) if supply_key is not None else _nominal_supply(receiver)
         limits = _Limits.of(receiver, supplies)
         reads = receiver.receive is not None and receiver.receive.reads
-        drives_high = state in ("high", "released") and not (state == "released" and pin is not None and pin.drive is not None and pin.drive.style == "open-source")
+        drives_high = state in ("high", "released") and not (
+            state == "released" and pin is not None and pin.drive is not None and pin.drive.style == "open-source"
+        )
         seen_high = drives_high != crossing.inverting
         if others:
             # Several signals meet in one circuit, a gate: which level is meant follows from the level that is there.
             seen_high = bool(answer.receiver[0] >= (limits.vih[0] + limits.vil[0]) / 2)
-        result = _judged(state, answer, limits, codes, variables, reads_high=seen_high and reads, reads_low=not seen_high and reads, influence=influence)
+        result = _judged(
+            state,
+            answer,
+            limits,
+            codes,
+            variables,
+            reads_high=seen_high and reads,
+            reads_low=not seen_high and reads,
+            influence=influence,
+        )
         if receiver.inferred_far_end:
             # What is plugged in there may read as guessed; what it bears is its own affair.
             result = replace(result, rating_margin=None, low_rating_margin=None)
@@ -262,9 +291,9 @@ class _Probe:
         members = codes.shape[1]
         nodes = network.nodes
         if receiver.net not in nodes:
-            floating = np.zeros(members)
+            nothing = np.zeros(members)
             return _Answer(
-                receiver=floating, open=floating, clamp=floating, driver_amps=floating, driver=floating,
+                receiver=nothing, open=nothing, clamp=nothing, driver_amps=nothing, driver=nothing,
                 solved=np.ones(members, bool), floating=True, why=f"{receiver.net} hangs on nothing", stresses=(),
             )  # fmt: skip
         solution = solve_dc(network)
@@ -344,7 +373,14 @@ def _influence(values: Vector, codes: Codes) -> list[float]:
     return out
 
 
-def _margin(value: Vector, limit: Vector, sign: float, codes: Codes, variables: Sequence[Variable], influence: Sequence[float] | None) -> Margin:
+def _margin(
+    value: Vector,
+    limit: Vector,
+    sign: float,
+    codes: Codes,
+    variables: Sequence[Variable],
+    influence: Sequence[float] | None,
+) -> Margin:
     margins = sign * (value - limit)
     worst = int(np.argmin(margins))
     return Margin(
@@ -395,7 +431,9 @@ def _unsolved(state: str, why: str) -> StateResult:
     )  # fmt: skip
 
 
-def _collected(crossing: Crossing, island: Island, states: Mapping[str, StateResult], limits: _Limits | None) -> SolvedCrossing:
+def _collected(
+    crossing: Crossing, island: Island, states: Mapping[str, StateResult], limits: _Limits | None
+) -> SolvedCrossing:
     high = next((result.receiver_volts for result in states.values() if result.high_margin is not None), None)
     low = next((result.receiver_volts for result in states.values() if result.low_margin is not None), None)
     bad = [result.why for result in states.values() if not result.solved]
@@ -430,7 +468,9 @@ def _stresses(island: Island, solution: DcSolution, builder: Builder, members: i
             collector, base, emitter = (at(net) for net in element.nets)
             sign = 1.0 if facts.polarity == "npn" else -1.0
             found.append(_stress(element, "VEB", sign * (emitter - base), facts.vebo_volts, facts.provenance.source))
-            found.append(_stress(element, "VCE", sign * (collector - emitter), facts.vceo_volts, facts.provenance.source))
+            found.append(
+                _stress(element, "VCE", sign * (collector - emitter), facts.vceo_volts, facts.provenance.source)
+            )
     return tuple(found)
 
 
@@ -443,7 +483,11 @@ def with_end(island: Island, crossing: Crossing) -> Island:
 
     The survey may have given a far end its level or a driver its certainty; the circuit must use those.
     """
-    replaced = {(pin.part, pin.number): pin for pin in (crossing.receiver, crossing.driver, crossing.stage_driver) if pin is not None}
+    replaced = {
+        (pin.part, pin.number): pin
+        for pin in (crossing.receiver, crossing.driver, crossing.stage_driver)
+        if pin is not None
+    }
     return replace(island, pins=tuple(replaced.get((pin.part, pin.number), pin) for pin in island.pins))
 
 
@@ -451,11 +495,20 @@ def neighbourhood(island: Island, crossing: Crossing) -> Island:
     """Return the part of a large island that matters to a crossing: the link, its ends and what touches them."""
     pin = crossing.stage_driver or crossing.driver
     on_way = {crossing.receiver.net} | ({pin.net} if pin is not None else set())
-    on_way |= {net for element in island.elements if element.part in crossing.link for net in element.nets if net in island.nets}
+    on_way |= {
+        net
+        for element in island.elements
+        if element.part in crossing.link
+        for net in element.nets
+        if net in island.nets
+    }
     kept = [element for element in island.elements if any(net in on_way for net in element.nets)]
     nets = sorted(on_way | {net for element in kept for net in element.nets if net in island.nets})
     return replace(
-        island, nets=tuple(nets), elements=tuple(kept), pins=tuple(pin for pin in island.pins if pin.net in on_way or pin.net in nets)
+        island,
+        nets=tuple(nets),
+        elements=tuple(kept),
+        pins=tuple(pin for pin in island.pins if pin.net in on_way or pin.net in nets),
     )
 
 
@@ -465,7 +518,9 @@ def network_of(crossing: Crossing, islands: Sequence[Island], rails: Rails, stat
     if len(island.nets) > MOST_NODES:
         island = neighbourhood(island, crossing)
     builder = Builder(island, rails, crossing.stage_driver or crossing.driver, state)
-    return builder.plan.network(all_corners(0) if not builder.plan.variables else one_at_a_time(len(builder.plan.variables))[:, :1])
+    return builder.plan.network(
+        all_corners(0) if not builder.plan.variables else one_at_a_time(len(builder.plan.variables))[:, :1]
+    )
 
 
 __all__ = ["GROUND", "neighbourhood", "network_of", "planned_states", "solve_crossings", "spread_of", "with_end"]
