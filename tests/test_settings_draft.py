@@ -14,6 +14,7 @@ from levelcrossing.model import (
     NotJudged,
     Outcome,
     Part,
+    Pin,
     PinModel,
     Rails,
     Receive,
@@ -51,7 +52,12 @@ def _review(
     unknown: tuple[tuple[str, str], ...], not_judged: tuple[NotJudged, ...], *pairs: tuple[PinModel, PinModel]
 ) -> Review:
     parts = tuple(
-        Part(reference=name, value=f"value of {name}", library="Connector" if name[0] == "J" else "")
+        Part(
+            reference=name,
+            value=f"value of {name}",
+            library="Connector" if name[0] == "J" else "",
+            pins=tuple(Pin(part=name, number=str(number), name="", kind="passive", net="") for number in range(1, 9)),
+        )
         for name in ("J2", "J10", "U3", "U4")
     )
     return Review(
