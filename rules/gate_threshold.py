@@ -6,10 +6,10 @@ leaves 2.9 V: one sample works on the bench, the next batch does not.
 What to do: take a part whose greatest threshold lies well below the gate voltage (at 3.3 V a BSS138, at 1.8 V an FDV301N
 class part).
 
-Speaks when the gate voltage less the driver's low, at the least supply, does not exceed the greatest threshold, and the
-solved low fails at that corner.
+Speaks when the gate voltage less the driver's low, at the least supply, lies less than 0.2 V above the greatest threshold
+(marginal), and when the solved low fails for want of gate voltage.
 
-Stays quiet when the low is reached at every corner of the threshold.
+Stays quiet when the gate has more than that to spare and the low is reached at every corner of the threshold.
 """
 
 from collections.abc import Iterator
@@ -21,6 +21,11 @@ NAME = "gate-threshold"
 OUTCOME = Outcome.MALFUNCTION
 SOURCES = ("VGS(th) rows of the transistor's data sheet", "NXP AN10441 rev. 01")
 EXPLAINS = ("low-not-reached", "margin-thin")
+
+# A threshold is stated at a current of 0.25 mA to 1 mA; below this much more than it, a channel is no switch [V] (practice).
+OVERDRIVE_VOLTS = 0.2
+# Where the low fails, a gate up to this much above the greatest threshold is taken to be the cause [V].
+FAILING_VOLTS = 0.3
 
 
 def check(case: CaseFile) -> Iterator[Finding]:
@@ -40,15 +45,12 @@ def check(case: CaseFile) -> Iterator[Finding]:
         )
         if element is None or element.part in done:
             continue
-        failing = [
-            state
-            for state in solved.states.values()
-            if state.solved and state.low_margin is not None and state.low_margin.spread.low < -1e-6
-        ]
-        if not failing:
+        lows = [state for state in solved.states.values() if state.solved and state.low_margin is not None]
+        if not lows:
             continue
-        state = failing[0]
+        state = min(lows, key=lambda low: low.low_margin.spread.low if low.low_margin is not None else 0.0)
         assert state.low_margin is not None
+        failing = state.low_margin.spread.low < -1e-6
         volts = case.rails.volts(element.nets[1])
         if crossing.shifter.kind == "mosfet-pass" and volts is None:
             continue
@@ -63,12 +65,19 @@ def check(case: CaseFile) -> Iterator[Finding]:
         )
         threshold = element.facts.threshold_volts
         drive = gate - max(state.driver_volts.high, 0.0) if crossing.shifter.kind == "mosfet-pass" else gate
-        if drive > threshold.high + 0.3:
+        if drive > threshold.high + (FAILING_VOLTS if failing else OVERDRIVE_VOLTS):
+            continue
+        if crossing.shifter.kind != "mosfet-pass" and not failing:
             continue
         done.add(element.part)
         text = (
             f"{element.part} ({element.value}) gets {format_volts(drive)} from gate to source, its threshold may be as high as {format_volts(threshold.high)} "
-            f"(usually {format_volts(threshold.nominal)}): {crossing.target} then stays at {format_volts(state.low_margin.at)} where a low ends at {format_volts(state.low_margin.limit)}."
+            f"(usually {format_volts(threshold.nominal)}): "
+            + (
+                f"{crossing.target} then stays at {format_volts(state.low_margin.at)} where a low ends at {format_volts(state.low_margin.limit)}."
+                if failing
+                else f"it conducts with hardly any overdrive; the low of {crossing.target} still ends at {format_volts(state.low_margin.at)}."
+            )
         )
         outcome = Outcome.MALFUNCTION if state.low_margin.spread.nominal < 0 else Outcome.MARGINAL
         yield solved.finding(

@@ -7,12 +7,13 @@ What to do: tie the gate (or the base resistor) to the supply of the low side.
 
 Speaks when the control terminal of a MOSFET or bipolar pass cell is on a rail that is not the lower of the two supplies.
 
-Stays quiet when it is on the lower supply, or driven by a signal (an enable).
+Stays quiet when it is on the lower supply, driven by a signal (an enable), or on a rail that does no harm: levels hold and
+the low side stays at its supply.
 """
 
 from collections.abc import Iterator
 
-from levelcrossing.model import CaseFile, Finding, Outcome, SolvedCrossing
+from levelcrossing.model import CaseFile, Finding, Outcome, SolvedCrossing, StateResult
 from levelcrossing.units import format_volts
 
 NAME = "shifter-reference"
@@ -65,9 +66,7 @@ def check(case: CaseFile) -> Iterator[Finding]:
         what = "gate" if element.kind == "mosfet" else "base"
         # A gate above the lower supply lets the higher level through; one below it may still work: the levels decide.
         troubled = any(
-            (state.rating_margin is not None and state.rating_margin.spread.low < 0)
-            or (state.high_margin is not None and state.high_margin.spread.low < 0)
-            or (state.low_margin is not None and state.low_margin.spread.low < 0)
+            _fails(state) or _lifted(other, state, lower)
             for other in case.crossings
             if element.part in other.crossing.shifter.parts
             for state in other.states.values()
@@ -91,6 +90,21 @@ def check(case: CaseFile) -> Iterator[Finding]:
             remedy=f"Tie the {what} of {element.part} to {rail_low or 'the lower supply'}.",
             cause=f"reference {element.part}",
         )
+
+
+def _fails(state: StateResult) -> bool:
+    """Tell whether a level or a rating fails in a state, at the worst corner."""
+    return any(
+        margin is not None and margin.spread.low < 0
+        for margin in (state.rating_margin, state.high_margin, state.low_margin)
+    )
+
+
+def _lifted(solved: SolvedCrossing, state: StateResult, lower: float) -> bool:
+    """Tell whether the low side rises above its own supply, harm or none."""
+    supply = solved.crossing.receiver.supply_volts
+    on_low_side = supply is not None and supply.nominal <= lower * 1.01
+    return on_low_side and not state.floating and state.open_volts.nominal > lower * 1.05
 
 
 def _control_rail(solved: SolvedCrossing, case: CaseFile, net: str) -> str | None:

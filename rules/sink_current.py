@@ -12,6 +12,7 @@ Stays quiet when the current keeps within the rating at every corner, and when n
 """
 
 from collections.abc import Iterator
+from dataclasses import replace
 
 from levelcrossing.model import CaseFile, Finding, Outcome
 
@@ -45,7 +46,7 @@ def check(case: CaseFile) -> Iterator[Finding]:
             continue
         done.add((pin.part, pin.number))
         text = f"{pin.label} must sink {amps.nominal * 1e3:.2g} mA, {amps.high * 1e3:.2g} mA at worst, to hold {solved.crossing.target} low; {what} {limit * 1e3:.2g} mA."
-        yield solved.finding(
+        found = solved.finding(
             index,
             NAME,
             outcome,
@@ -53,3 +54,5 @@ def check(case: CaseFile) -> Iterator[Finding]:
             remedy="Use larger pull-ups on this line, or a driver rated for the current.",
             cause=f"sink {pin.part}.{pin.number}",
         )
+        # It is the driver that suffers.
+        yield replace(found, part=pin.part, pin=pin.number, net=pin.net)
