@@ -9,6 +9,7 @@ import argparse
 import difflib
 import importlib
 import os
+import re
 import shutil
 import sys
 from collections.abc import Callable, Iterable, Sequence
@@ -52,6 +53,11 @@ class Parser(argparse.ArgumentParser):
     def error(self, message: str) -> NoReturn:
         """Raise instead of printing usage."""
         text = " ".join(message.split())
+        wrong = re.match(r"argument (\S+): invalid choice: '(.*)' \(choose from (.*)\)", text)
+        if wrong:
+            words = [word.strip("' ") for word in wrong[3].split(",")]
+            hint = nearest(wrong[2], words) or f"one of {', '.join(words)}"
+            raise CommandError(f"{wrong[1]} cannot be {show(wrong[2])!r}", remedy=hint)
         raise CommandError(text.removeprefix("argument "), remedy=f"`{self.prog} --help` shows what is possible")
 
     def strict(self, arguments: Sequence[str]) -> argparse.Namespace:
@@ -64,7 +70,9 @@ class Parser(argparse.ArgumentParser):
                 name = word.split("=", 1)[0]
                 remedy = nearest(name, options) or f"`{self.prog} --help` lists the options"
                 raise CommandError(f"unknown option {show(name)}", remedy=remedy)
-            raise CommandError(f"{show(word)} is one argument too many", remedy=f"`{self.prog} --help` shows what is possible")
+            raise CommandError(
+                f"{show(word)} is one argument too many", remedy=f"`{self.prog} --help` shows what is possible"
+            )
         return parsed
 
 
@@ -84,22 +92,49 @@ def one_of(what: str, words: Sequence[str]) -> Callable[[str], str]:
 
 
 def _shared(parser: Parser) -> None:
-    parser.add_argument("--settings", metavar="FILE", help="settings of the board (default: levelcrossing.toml beside it)")
-    parser.add_argument("--facts", metavar="FILE", action="append", default=[], help="further trade data of your own (may be repeated)")
+    parser.add_argument(
+        "--settings", metavar="FILE", help="settings of the board (default: levelcrossing.toml beside it)"
+    )
+    parser.add_argument(
+        "--facts", metavar="FILE", action="append", default=[], help="further trade data of your own (may be repeated)"
+    )
 
 
 def _review_arguments(parser: Parser) -> None:
-    parser.add_argument("paths", metavar="PATH", nargs="+", help="netlist (.net, .xml), top sheet (.kicad_sch) or project folder")
-    parser.add_argument("--as", dest="form", metavar="FORM", type=one_of("form", FORMS), default="text", help=f"{', '.join(FORMS)} (default text)")
+    parser.add_argument(
+        "paths", metavar="PATH", nargs="+", help="netlist (.net, .xml), top sheet (.kicad_sch) or project folder"
+    )
+    parser.add_argument(
+        "--as",
+        dest="form",
+        metavar="FORM",
+        type=one_of("form", FORMS),
+        default="text",
+        help=f"{', '.join(FORMS)} (default text)",
+    )
     parser.add_argument("--to", metavar="FILE", help="write the report there instead of to standard output")
     parser.add_argument(
-        "--stop-at", metavar="OUTCOME", type=one_of("stop level", STOPS),
+        "--stop-at",
+        metavar="OUTCOME",
+        type=one_of("stop level", STOPS),
         help=f"exit with 1 from this outcome on: {', '.join(STOPS)} (default malfunction, or what the settings say)",
     )
     _shared(parser)
-    parser.add_argument("--rules", metavar="DIR", action="append", default=[], help="a folder of house rules; they are programs, name only your own")
-    parser.add_argument("--all", dest="everything", action="store_true", help="show sound crossings and every supply too")
-    parser.add_argument("--changed", action="store_true", help="PATHs are files that changed: review the boards they belong to, each once")
+    parser.add_argument(
+        "--rules",
+        metavar="DIR",
+        action="append",
+        default=[],
+        help="a folder of house rules; they are programs, name only your own",
+    )
+    parser.add_argument(
+        "--all", dest="everything", action="store_true", help="show sound crossings and every supply too"
+    )
+    parser.add_argument(
+        "--changed",
+        action="store_true",
+        help="PATHs are files that changed: review the boards they belong to, each once",
+    )
     parser.add_argument("--decks", metavar="DIR", help="write each solved crossing there as a SPICE deck")
 
 
@@ -113,18 +148,6 @@ def _rules_arguments(parser: Parser) -> None:
     parser.add_argument("--rules", metavar="DIR", action="append", default=[], help="a folder of house rules")
 
 
-def _compare_arguments(parser: Parser) -> None:
-    parser.add_argument("paths", metavar="OLD NEW", nargs="+", help="two boards or saved JSON reviews; with --against the new one alone")
-    parser.add_argument("--against", metavar="REVISION", help="take the old board from this git revision")
-    parser.add_argument("--as", dest="form", metavar="FORM", type=one_of("form", ("text", "json", "markdown")), default="text", help="text, json or markdown (default text)")
-    parser.add_argument("--to", metavar="FILE", help="write the report there instead of to standard output")
-    parser.add_argument("--stop-at", metavar="OUTCOME", type=one_of("stop level", STOPS), help="exit with 1 when something became this bad (default malfunction, or what the old settings say)")
-    parser.add_argument("--accept-new-waivers", action="store_true", help="let waivers that come with the change silence what they name")
-    parser.add_argument("--all", dest="everything", action="store_true", help="show figures that moved while the verdict stayed, too")
-    _shared(parser)
-    parser.add_argument("--rules", metavar="DIR", action="append", default=[], help="a folder of house rules")
-
-
 def _size_arguments(parser: Parser) -> None:
     parser.add_argument("--from", dest="from_volts", metavar="VOLTS", required=True, help="supply of the driver")
     parser.add_argument("--to", dest="to_volts", metavar="VOLTS", required=True, help="supply of the receiver")
@@ -134,25 +157,12 @@ def _size_arguments(parser: Parser) -> None:
 
 def _part_arguments(parser: Parser) -> None:
     parser.add_argument("name", metavar="PART-NUMBER", help="as a schematic would name it, such as 74LVC245APW")
-    parser.add_argument("--facts", metavar="FILE", action="append", default=[], help="further trade data of your own (may be repeated)")
+    parser.add_argument(
+        "--facts", metavar="FILE", action="append", default=[], help="further trade data of your own (may be repeated)"
+    )
 
 
-def _settings_arguments(parser: Parser) -> None:
-    parser.add_argument("path", metavar="PATH", help="netlist, sheet or project folder")
-    parser.add_argument("--to", metavar="FILE", help="write the starting file there; an existing file is never overwritten")
-    _shared(parser)
-
-
-def _waive_arguments(parser: Parser) -> None:
-    parser.add_argument("path", metavar="PATH", help="netlist, sheet or project folder")
-    parser.add_argument("--rule", metavar="NAME", required=True, help="rule of the finding to accept")
-    parser.add_argument("--at", metavar="PLACE", required=True, help="part, pin (U1.3) or net of the finding")
-    parser.add_argument("--reason", metavar="TEXT", required=True, help="why it is acceptable; shown in every report")
-    parser.add_argument("--until", metavar="DAY", help="last day, YYYY-MM-DD")
-    _shared(parser)
-
-
-COMMANDS: dict[str, tuple[str, str, str, Callable[[Parser], None]]] = {
+COMMANDS: dict[str, tuple[str, str, str, Callable[[Parser], None] | None]] = {
     # name: (module whose run(args) does it, line in the list of commands, longer text, arguments)
     "review": (
         "reviewing",
@@ -161,13 +171,48 @@ COMMANDS: dict[str, tuple[str, str, str, Callable[[Parser], None]]] = {
         "could not be judged are counted and named.",
         _review_arguments,
     ),
-    "rails": ("railtree", "show the supply tree with its evidence", "Shows every supply, its voltage and the reason to believe it.", _rails_arguments),
-    "compare": ("compare", "say what a revision changed", "Compares two states of a board: crossings added, removed, better, worse.", _compare_arguments),
-    "size": ("sizing", "work out level shifters for two supplies", "Proposes ways from one supply to another, with computed values, levels, speed and current.", _size_arguments),
-    "rules": ("rulelist", "list the rules, or explain one", "Lists the rules; with a name, says when the rule speaks, when it stays quiet and on whose authority.", _rules_arguments),
-    "part": ("partinfo", "show what the trade library knows of a part", "Shows the row of the trade library that a part number leads to, and its source.", _part_arguments),
-    "settings": ("settings_draft", "write a starting settings file", "Writes a commented levelcrossing.toml from what a review of the board could not know.", _settings_arguments),
-    "waive": ("waive", "accept a finding, with a reason", "Adds a waiver for one finding to levelcrossing.toml.", _waive_arguments),
+    "rails": (
+        "railtree",
+        "show the supply tree with its evidence",
+        "Shows every supply, its voltage and the reason to believe it.",
+        _rails_arguments,
+    ),
+    "compare": (
+        "compare",
+        "say what a revision changed",
+        "Compares two states of a board: crossings added, removed, better, worse.",
+        None,
+    ),
+    "size": (
+        "sizing",
+        "work out level shifters for two supplies",
+        "Proposes ways from one supply to another, with computed values, levels, speed and current.",
+        _size_arguments,
+    ),
+    "rules": (
+        "rulelist",
+        "list the rules, or explain one",
+        "Lists the rules; with a name, says when the rule speaks, when it stays quiet and on whose authority.",
+        _rules_arguments,
+    ),
+    "part": (
+        "partinfo",
+        "show what the trade library knows of a part",
+        "Shows the row of the trade library that a part number leads to, and its source.",
+        _part_arguments,
+    ),
+    "settings": (
+        "settings_draft",
+        "write a starting settings file",
+        "Writes a commented levelcrossing.toml from what a review of the board could not know.",
+        None,
+    ),
+    "waive": (
+        "waive",
+        "accept a finding, with a reason",
+        "Adds a waiver for one finding to levelcrossing.toml.",
+        None,
+    ),
 }
 
 
@@ -176,7 +221,19 @@ def overview() -> str:
     width = max(len(name) for name in COMMANDS)
     lines = [f"  {name.ljust(width)}  {line}" for name, (_, line, _, _) in COMMANDS.items()]
     return "\n".join(
-        ["usage: levelcrossing COMMAND ...", "", ABOUT, "", "Commands:", *lines, "", "  --version, --help", "", AFTERWARDS, ""]
+        [
+            "usage: levelcrossing COMMAND ...",
+            "",
+            ABOUT,
+            "",
+            "Commands:",
+            *lines,
+            "",
+            "  --version, --help",
+            "",
+            AFTERWARDS,
+            "",
+        ]
     )
 
 
@@ -189,18 +246,28 @@ def parse(arguments: Sequence[str]) -> tuple[str, argparse.Namespace]:
         For anything that is not understood, with the nearest right word.
     """
     if not arguments:
-        raise CommandError("no command given", remedy="`levelcrossing review PATH` reviews a board, `levelcrossing --help` lists the commands")
+        raise CommandError(
+            "no command given",
+            remedy="`levelcrossing review PATH` reviews a board, `levelcrossing --help` lists the commands",
+        )
     name = arguments[0]
     if name not in COMMANDS:
         if name.startswith("-"):
-            raise CommandError(f"unknown option {show(name)}", remedy=nearest(name, ["--help", "--version"]) or "the command comes first, such as `levelcrossing review PATH`")
+            raise CommandError(
+                f"unknown option {show(name)}",
+                remedy=nearest(name, ["--help", "--version"])
+                or "the command comes first, such as `levelcrossing review PATH`",
+            )
         remedy = nearest(name, COMMANDS)
         if not remedy and os.path.exists(name):
             remedy = f"`levelcrossing review {show(name)}` reviews it"
         raise CommandError(f"there is no command {show(name)!r}", remedy=remedy or f"one of {', '.join(COMMANDS)}")
-    _, _, text, fill = COMMANDS[name]
+    module, _, text, fill = COMMANDS[name]
     parser = Parser(prog=f"levelcrossing {name}", description=text, allow_abbrev=False, add_help=True)
-    fill(parser)
+    if fill is None:
+        importlib.import_module(f"levelcrossing.{module}").add_arguments(parser)
+    else:
+        fill(parser)
     return name, parser.strict(arguments[1:])
 
 

@@ -43,14 +43,18 @@ def rail_tree(path: str, rails: Rails, width: int = 100) -> str:
     supplies = [rail for rail in every if not rail.ground]
     grounds = [rail.net for rail in every if rail.ground]
     sheet.text(path)
-    sheet.text(f"{count(len(supplies), 'supply', 'supplies')}, {len(rails.unknown)} without a voltage; ground: {', '.join(grounds) or 'none found'}")
+    sheet.text(
+        f"{count(len(supplies), 'supply', 'supplies')}, {len(rails.unknown)} without a voltage; ground: {', '.join(grounds) or 'none found'}"
+    )
     children: dict[str, list[Rail]] = {}
     for rail in supplies:
         if rail.domain and rail.domain != rail.net:
             children.setdefault(rail.domain, []).append(rail)
     known = {rail.net for rail in supplies}
     roots = [rail for rail in supplies if rail.domain == rail.net or rail.domain not in known]
-    for root in sorted(roots, key=lambda rail: (rail.volts is None, -(rail.volts.nominal if rail.volts else 0.0), rail.net)):
+    for root in sorted(
+        roots, key=lambda rail: (rail.volts is None, -(rail.volts.nominal if rail.volts else 0.0), rail.net)
+    ):
         _rail(sheet, root, 0)
         for child in children.get(root.net, []):
             _rail(sheet, child, 4)

@@ -94,8 +94,7 @@ def stop_level(asked: str | None, settings: Settings) -> Outcome | None:
         return None
     if asked is not None:
         return Outcome(asked)
-    # Settings may also say "never", which their reader turns into the best outcome of all.
-    if settings.stop_at is Outcome.SOUND:
+    if settings.stop_at is Outcome.SOUND:  # how the reader of settings says "never"
         return None
     return settings.stop_at or Outcome.MALFUNCTION
 
@@ -157,7 +156,9 @@ def _check_target(target: str, paths: Sequence[str]) -> None:
     if file.is_dir():
         raise CommandError(f"--to {terminal(target)} is a folder", remedy="name a file")
     if not file.parent.is_dir():
-        raise CommandError(f"--to {terminal(target)}: there is no folder {terminal(str(file.parent))}", remedy="create it first")
+        raise CommandError(
+            f"--to {terminal(target)}: there is no folder {terminal(str(file.parent))}", remedy="create it first"
+        )
     if any(os.path.realpath(path) == os.path.realpath(target) for path in paths):
         raise CommandError(f"--to {terminal(target)} would overwrite the reviewed board", remedy="name another file")
 
@@ -169,7 +170,10 @@ def _write_decks(folder: Path, reviews: Sequence[Review]) -> None:
     for number, review in enumerate(reviews, 1):
         files: Mapping[str, str] = deck_files(review)
         for name, text in sorted(files.items()):
-            safe = "".join(character if (character.isalnum() and character.isascii()) or character in "-_." else "_" for character in name)
+            safe = "".join(
+                character if (character.isalnum() and character.isascii()) or character in "-_." else "_"
+                for character in name
+            )
             prefix = f"{number}_" if len(reviews) > 1 else ""
             (folder / f"{prefix}{safe.lstrip('.')}").write_text(text, encoding="utf-8", newline="\n")
 

@@ -31,11 +31,27 @@ def listing(rules: tuple[RuleFile, ...]) -> str:
     width = max((len(rule.name) for rule in rules), default=0)
     ordered = sorted(rules, key=lambda rule: (rule.outcome.rank, rule.name))
     lines = [f"{rule.name.ljust(width)}  {rule.outcome.value:<11}  {rule.title}" for rule in ordered]
-    return "\n".join([*lines, "", f"{len(rules)} rules; the outcome is the worst one each can give.", "`levelcrossing rules NAME` explains one.", ""])
+    return "\n".join(
+        [
+            *lines,
+            "",
+            f"{len(rules)} rules; the outcome is the worst one each can give.",
+            "`levelcrossing rules NAME` explains one.",
+            "",
+        ]
+    )
 
 
 def explanation(rule: RuleFile) -> str:
     """Return the whole text of a rule with its authority."""
     return "\n".join(
-        [f"{rule.name}  (up to {rule.outcome.value})", "", rule.text, "", "Sources:", *(f"  - {source}" for source in rule.sources), ""]
+        [
+            f"{rule.name}  (up to {rule.outcome.value})",
+            "",
+            rule.text,
+            "",
+            "Sources:",
+            *(f"  - {source}" for source in rule.sources),
+            "",
+        ]
     )

@@ -138,7 +138,11 @@ def _crossing(one: ReviewedCrossing) -> dict[str, Any]:
         "from": _end(crossing.driver, crossing.driver_rail),
         "to": _end(crossing.receiver, crossing.receiver_rail),
         "link": list(crossing.link),
-        "shifter": {"kind": crossing.shifter.kind, "parts": list(crossing.shifter.parts), "title": crossing.shifter.title},
+        "shifter": {
+            "kind": crossing.shifter.kind,
+            "parts": list(crossing.shifter.parts),
+            "title": crossing.shifter.title,
+        },
         "verdict": one.verdict.value,
         "condition": one.condition,
         "basis": crossing.basis.value,

@@ -18,10 +18,10 @@ MEANING = {
 }
 
 BASIS = {
-    "declared": "declared by you",
-    "library": "from the trade library",
-    "traced": "traced on the board",
-    "assumed": "assumed, a family default",
+    "declared": "all declared by you",
+    "library": "the weakest from the trade library",
+    "traced": "the weakest traced on the board",
+    "assumed": "the weakest assumed, a family default",
 }
 
 _PREFIXES = ((1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"), (1e-12, "p"))
@@ -41,9 +41,8 @@ def quantity(value: float, unit: str, digits: int = 3) -> str:
         return "?"
     if value == 0:
         return f"0 {unit}"
-    for scale, prefix in _PREFIXES:
-        if abs(value) >= scale * 0.9995:
-            break
+    fitting = (pair for pair in _PREFIXES if abs(value) >= pair[0] * 0.9995)
+    scale, prefix = next(fitting, _PREFIXES[-1])
     shown = f"{value / scale:.{digits}g}"
     if "e" in shown:
         shown = f"{value / scale:.0f}"

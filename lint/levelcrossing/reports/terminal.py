@@ -53,7 +53,9 @@ UNICODE = Glyphs(bar="█", low="▁", between="·", high="▔", over="╳", edg
 ASCII = Glyphs(bar="#", low="_", between=".", high="=", over="x", edge="|", tick="+", rule="-")
 
 
-def plain_report(reviews: Sequence[Review], *, width: int = 100, everything: bool = False, ascii_only: bool = False) -> str:
+def plain_report(
+    reviews: Sequence[Review], *, width: int = 100, everything: bool = False, ascii_only: bool = False
+) -> str:
     """Return the report as plain text.
 
     Parameters
@@ -75,7 +77,9 @@ def plain_report(reviews: Sequence[Review], *, width: int = 100, everything: boo
     return text.encode("ascii", "backslashreplace").decode("ascii") if ascii_only else text
 
 
-def coloured_report(reviews: Sequence[Review], *, width: int, everything: bool = False, ascii_only: bool = False) -> str:
+def coloured_report(
+    reviews: Sequence[Review], *, width: int, everything: bool = False, ascii_only: bool = False
+) -> str:
     """Return the report with the terminal's colours; the arguments are those of ``plain_report``."""
     sheet = compose(reviews, width=width, everything=everything, glyphs=ASCII if ascii_only else UNICODE)
     return coloured(sheet)
@@ -87,7 +91,13 @@ def coloured(sheet: Sheet) -> str:
 
     buffer = io.StringIO()
     console = Console(
-        file=buffer, width=sheet.width, force_terminal=True, color_system="standard", highlight=False, markup=False, emoji=False
+        file=buffer,
+        width=sheet.width,
+        force_terminal=True,
+        color_system="standard",
+        highlight=False,
+        markup=False,
+        emoji=False,
     )
     draw(sheet, console)
     return buffer.getvalue()
@@ -118,7 +128,11 @@ def compose(reviews: Sequence[Review], *, width: int, everything: bool, glyphs: 
 
 
 def _overview(sheet: Sheet, reviews: Sequence[Review]) -> None:
-    total = [(outcome, sum(review.count(outcome) for review in reviews)) for outcome in Outcome if outcome is not Outcome.SOUND]
+    total = [
+        (outcome, sum(review.count(outcome) for review in reviews))
+        for outcome in Outcome
+        if outcome is not Outcome.SOUND
+    ]
     shown = ", ".join(f"{number} {outcome.value}" for outcome, number in total if number) or "nothing found"
     sheet.line((f"{count(len(reviews), 'board')}: {shown}", "title"))
     ranked = sorted(reviews, key=lambda review: [-number for _, number in phrases.outcome_counts(review)])
@@ -153,7 +167,9 @@ class _Board:
         lead = self.glyphs.rule * 2
         used = 4 + cells(title) + (cells(remark) + 2 if remark else 0)
         tail = self.glyphs.rule * max(2, min(self.sheet.width, PROSE_WIDEST) - used)
-        self.sheet.line((lead + " ", "dim"), (title, "title"), (f"  {remark}" if remark else "", "dim"), (" " + tail, "dim"))
+        self.sheet.line(
+            (lead + " ", "dim"), (title, "title"), (f"  {remark}" if remark else "", "dim"), (" " + tail, "dim")
+        )
 
     def _head(self) -> None:
         review, sheet = self.review, self.sheet
@@ -167,7 +183,9 @@ class _Board:
             segments.append(("nothing found", "sound"))
         sheet.line(*segments)
         verdicts = [f"{number} {outcome.value}" for outcome, number in phrases.verdict_counts(review) if number]
-        crossings = f"{count(len(review.crossings), 'crossing')} from one supply to another" + (f": {', '.join(verdicts)}" if verdicts else "")
+        crossings = f"{count(len(review.crossings), 'crossing')} from one supply to another" + (
+            f": {', '.join(verdicts)}" if verdicts else ""
+        )
         cover = review.coverage
         sheet.text(f"{crossings}. {cover.judged} of {count(cover.signal_pins, 'signal pin')} judged.", indent=2)
         sheet.text(f"Read: {phrases.size_of(review)}.", indent=2, style="dim")
@@ -176,12 +194,10 @@ class _Board:
 
     def _findings(self) -> None:
         last: Outcome | None = None
-        number = 0
-        for finding in phrases.open_findings(self.review):
+        for number, finding in enumerate(phrases.open_findings(self.review), 1):
             if finding.outcome is not last:
                 last = finding.outcome
                 self._section(last.value, phrases.MEANING[last])
-            number += 1
             self._finding(number, finding)
 
     def _finding(self, number: int, finding: Finding) -> None:
@@ -189,7 +205,12 @@ class _Board:
         sheet.blank()
         where = self._where(finding)
         at = f"{finding.at.file}:{finding.at.line}" if finding.at and finding.at.line else ""
-        head: list[Segment] = [(f"{number:>3}  ", "dim"), (finding.outcome.value, finding.outcome.value), ("  ", ""), (clean(where), "place")]
+        head: list[Segment] = [
+            (f"{number:>3}  ", "dim"),
+            (finding.outcome.value, finding.outcome.value),
+            ("  ", ""),
+            (clean(where), "place"),
+        ]
         head.append((f"  {finding.rule}", "dim"))
         used = sum(cells(text) for text, _ in head)
         if used > sheet.width:
@@ -207,7 +228,8 @@ class _Board:
             self._labelled("remedy", finding.remedy)
         if finding.also:
             self._labelled("also at", listed(finding.also, 16))
-        self._labelled("rests on", self._grounds(finding))
+        for index, ground in enumerate(self._grounds(finding)):
+            self._labelled("" if index else "rests on", ground)
         self._ladder(number, finding)
 
     def _labelled(self, label: str, text: str) -> None:
@@ -224,13 +246,12 @@ class _Board:
             where += f" on net {finding.net}"
         return where or "the whole board"
 
-    def _grounds(self, finding: Finding) -> str:
-        words = [f"{finding.basis.value} figures ({phrases.BASIS[finding.basis.value]})"]
+    def _grounds(self, finding: Finding) -> list[str]:
         solved = self._solved(finding)
-        if solved is not None:
-            words += _evidence(solved, self.review)
-        words += [source for source in finding.sources if source not in words]
-        return "; ".join(dict.fromkeys(words))
+        words = _evidence(solved, self.review) if solved is not None else []
+        # A source that an end's evidence quotes already would stand there twice.
+        words += [source for source in finding.sources if not any(source in word for word in words)]
+        return [f"figures {phrases.BASIS[finding.basis.value]}", *dict.fromkeys(words)]
 
     def _solved(self, finding: Finding) -> SolvedCrossing | None:
         if finding.crossing is None or not 0 <= finding.crossing < len(self.review.crossings):
@@ -274,7 +295,10 @@ class _Board:
         waived = [finding for finding in self.review.findings if finding.waived is not None]
         if waived:
             self._section("accepted by waiver")
-            rows = [(finding.outcome.value, self._where(finding), finding.rule, f"because: {finding.waived}") for finding in waived]
+            rows = [
+                (finding.outcome.value, self._where(finding), finding.rule, f"because: {finding.waived}")
+                for finding in waived
+            ]
             self.sheet.rows(rows)
 
     def _unknown_rails(self) -> None:
@@ -285,7 +309,9 @@ class _Board:
         lines = paste_lines(self.review)
         if lines:
             self.sheet.blank()
-            self.sheet.text("Put the voltages you know into levelcrossing.toml beside the project, for example:", indent=2)
+            self.sheet.text(
+                "Put the voltages you know into levelcrossing.toml beside the project, for example:", indent=2
+            )
             for line in lines:
                 self.sheet.text(line, indent=4, style="title")
 
@@ -299,7 +325,9 @@ class _Board:
         self.sheet.rows([(str(len(pins)), f"{why}: {listed(pins, 8)}") for why, pins in groups[:most]])
         if most is not None and len(groups) > most:
             rest = sum(len(pins) for _, pins in groups[most:])
-            self.sheet.text(f"and {count(rest, 'pin')} for {count(len(groups) - most, 'other reason')}; --all shows them", indent=2)
+            self.sheet.text(
+                f"and {count(rest, 'pin')} for {count(len(groups) - most, 'other reason')}; --all shows them", indent=2
+            )
 
     def _rails(self) -> None:
         used = {one.solved.crossing.driver_rail for one in self.review.crossings} | {
@@ -308,7 +336,9 @@ class _Board:
         rails = [rail for _, rail in sorted(self.review.rails.by_net.items()) if not rail.ground]
         shown = rails if self.everything else [rail for rail in rails if rail.net in used and rail.volts is not None]
         if shown:
-            self._section("supplies", "" if self.everything else "those that crossings meet; `levelcrossing rails` shows all")
+            self._section(
+                "supplies", "" if self.everything else "those that crossings meet; `levelcrossing rails` shows all"
+            )
             self.sheet.rows([rail_row(rail) for rail in shown])
 
     def _taken(self) -> None:
@@ -367,11 +397,12 @@ def _levels(solved: SolvedCrossing) -> str:
 def _evidence(solved: SolvedCrossing, review: Review) -> list[str]:
     """Return where the figures of a crossing come from: supplies first, then both ends."""
     crossing = solved.crossing
-    words = []
+    rails = []
     for net in dict.fromkeys((crossing.driver_rail, crossing.receiver_rail)):
         rail = review.rails.by_net.get(net)
         if rail is not None and rail.volts is not None:
-            words.append(f"{net} at {phrases.span(rail.volts)} ({rail.basis.value})")
+            rails.append(f"{net} at {phrases.span(rail.volts)} ({rail.basis.value})")
+    words = [", ".join(rails)] if rails else []
     if crossing.driver is not None and crossing.driver.drive is not None and crossing.driver.drive.source:
         words.append(f"{crossing.driver.part} drives as {crossing.driver.drive.source}")
     if crossing.receiver.receive is not None and crossing.receiver.receive.source:
