@@ -445,7 +445,7 @@ class _PartModeller:
                 and not any(READ_NAME.fullmatch(word) for word in words)
             ):
                 # Symbols of gate arrays are often drawn with every ball an input.
-                return "inout", False, Basis.ASSUMED
+                return "inout", False, Basis.LIBRARY
             case "input":
                 return (
                     ("open-drain", True, Basis.ASSUMED)
@@ -465,7 +465,9 @@ class _PartModeller:
                 return "in", True, Basis.ASSUMED
             if DRIVE_NAME.fullmatch(first):
                 return "out", True, Basis.ASSUMED
-        return "inout", False, Basis.ASSUMED
+        # Of a general-purpose pin the library knows that it may be either; of an unknown part nothing is known.
+        general = self.facts is not None and self.facts.group in ("mcu", "fpga", "module")
+        return "inout", False, Basis.LIBRARY if general else Basis.ASSUMED
 
     # -- supply ------------------------------------------------------------------------------------------------------
 
