@@ -128,6 +128,11 @@ class Nets:
         self.nodes: list[_Node] = []
         self.keys: dict[tuple[int, str], int] = {}
         self.buses: dict[str, Bus | None] = {}
+        self.members = Union()
+        self.member_places: list[tuple[int, int]] = []
+        self.members_of: dict[int, list[int]] = {}
+        self.bus_uses: dict[int, int] = {}
+        self.on_members: dict[int, list[int]] = defaultdict(list)
 
     def drawn(self) -> list[DrawnNet]:
         """Return all nets that hold a pin of a part."""
@@ -135,8 +140,11 @@ class Nets:
         self._join_names()
         owns = self._strongest()
         sheet_of = [self.union.find(index) for index in range(len(self.union.parents))]
-        attached = self._join_sheets(owns, sheet_of)
-        return self._named(owns, sheet_of, attached)
+        self._take_members(owns, sheet_of)
+        self._join_sheets(owns, sheet_of)
+        claims = self._claims(owns, sheet_of)
+        self._join_members(claims)
+        return self._named(self._settled(owns, claims))
 
     def _bus(self, text: str) -> Bus | None:
         if "[" not in text and "{" not in text:
@@ -209,50 +217,10 @@ class Nets:
 
     # -------------------------------------------------------------------------------------- across sheets and buses
 
-    def _join_sheets(self, owns: dict[int, list[_Own]], sheet_of: list[int]) -> dict[int, list[tuple[int, int]]]:
-        """Join through sheet pins and buses; return by set the bus members it is."""
-        attached: dict[int, list[tuple[int, int]]] = defaultdict(list)
-
-        def attach(member: int, bus: int, position: int) -> None:
-            attached[sheet_of[member] if member < len(sheet_of) else member].append((bus, position))
-
-        bus_members = self._bus_members(owns, sheet_of, attach)
-        for index, node in enumerate(self.nodes):
-            for label, text in node.labels:
-                if label.kind != "sheet":
-                    continue
-                child = self.uses[node.use].children.get(label.box)
-                below = None if child is None else self.keys.get((child, text))
-                if below is None or not self._has_hierarchical(child, text):
-                    continue
-                above_bus, below_bus = sheet_of[index], sheet_of[below]
-                if above_bus in bus_members and below_bus in bus_members:
-                    self._join_buses(owns, above_bus, below_bus, bus_members)
-                if node.is_bus == (below_bus in bus_members):
-                    self.union.join(index, below)
-        return attached
-
-    def _has_hierarchical(self, use: int | None, text: str) -> bool:
-        return use is not None and (use, text) in self.hierarchical
-
-    @property
-    def hierarchical(self) -> set[tuple[int, str]]:
-        """Uses and texts of the hierarchical labels."""
-        if not hasattr(self, "_hierarchical"):
-            self._hierarchical = {
-                (node.use, text) for node in self.nodes for label, text in node.labels if label.kind == "hierarchical"
-            }
-        return self._hierarchical
-
-    def _bus_members(
-        self, owns: dict[int, list[_Own]], sheet_of: list[int], attach: Callable[[int, int, int], None]
-    ) -> dict[int, list[int]]:
-        """Return by bus the sets of its members, the members of its other names joined to them.
-
-        ``attach`` is told every such set, its bus and its position on it.
-        """
+    def _take_members(self, owns: dict[int, list[_Own]], sheet_of: list[int]) -> None:
+        """Take the members of each bus and find the sets of groups that are on them by their names."""
         use_of = {sheet_of[index]: node.use for index, node in enumerate(self.nodes) if node.is_bus}
-        members: dict[int, list[int]] = {}
+        known: dict[tuple[int, str], int] = {}
         last_of = {owns[root][0].name: root for root in use_of if owns[root]}
         strong = {owns[root][0].name for root in use_of if owns[root] and owns[root][0].strength > SHEET_PIN}
         for root, use in use_of.items():
@@ -260,47 +228,76 @@ class Nets:
             if not names or names[0].bus is None:
                 continue
             first = names[0].bus
+            self.bus_uses[root] = use
+            members = self.members_of[root] = [self.members.add() for _ in first.members]
+            self.member_places.extend((root, position) for position in range(len(members)))
             name = names[0].name
             if names[0].strength == SHEET_PIN and (name in strong or last_of[name] != root):
-                # Another bus of that name is not this one: its members stand for themselves.
-                members[root] = [self.union.add() for _ in first.members]
-            else:
-                members[root] = [self._key(use, member.name) for member in first.members]
-            for position, found in enumerate(members[root]):
-                attach(found, root, position)
-            for other in names[1:]:
-                if other.bus is None or other.strength == SHEET_PIN:
-                    continue
-                for position, member in _matches(first, other.bus):
-                    also = self._key(use, other.bus.members[member].name)
-                    self.union.join(members[root][position], also)
-                    attach(also, root, position)
-        return members
+                continue  # another bus of that name has the nets of its members' names
+            for own in names:
+                if own.bus is not None and (own is names[0] or own.strength > SHEET_PIN):
+                    for position, other in _matches(first, own.bus):
+                        place = (use, own.bus.members[other].name)
+                        self.members.join(members[position], known.setdefault(place, members[position]))
+                        key = self.keys.get(place)
+                        if key is not None and members[position] not in self.on_members[sheet_of[key]]:
+                            self.on_members[sheet_of[key]].append(members[position])
 
-    def _join_buses(self, owns: dict[int, list[_Own]], above: int, below: int, members: dict[int, list[int]]) -> None:
-        first, second = owns[above][0].bus, owns[below][0].bus
-        if first is None or second is None:
-            return
-        for position, other in _matches(first, second):
-            self.union.join(members[above][position], members[below][other])
+    def _join_sheets(self, owns: dict[int, list[_Own]], sheet_of: list[int]) -> None:
+        """Join sheet pins with the hierarchical labels below, and buses member by member."""
+        hierarchical = {
+            (node.use, text) for node in self.nodes for label, text in node.labels if label.kind == "hierarchical"
+        }
+        for index, node in enumerate(self.nodes):
+            for label, text in node.labels:
+                child = self.uses[node.use].children.get(label.box) if label.kind == "sheet" else None
+                if child is None or (child, text) not in hierarchical:
+                    continue
+                above, below = sheet_of[index], sheet_of[self.keys[child, text]]
+                if above in self.members_of and below in self.members_of:
+                    first, second = owns[above][0].bus, owns[below][0].bus
+                    assert first is not None and second is not None
+                    for position, other in _matches(first, second):
+                        self.members.join(self.members_of[above][position], self.members_of[below][other])
+                if node.is_bus == (below in self.members_of):
+                    self.union.join(above, below)
+
+    def _join_members(self, claims: dict[int, _Claim]) -> None:
+        """Join the nets that are one member of a bus.
+
+        A global name on the topmost sheet of the bus is the member's for all. One further down stays where it is, but
+        for the net on the topmost sheet, which takes the first of them.
+        """
+        best = self._best(claims)
+        nets: dict[int, list[int]] = defaultdict(list)
+        for root in claims:
+            for member in self.on_members.get(root, ()):
+                nets[self.members.find(member)].append(root)
+        top: dict[int, int] = {}
+        for member, (bus, _) in enumerate(self.member_places):
+            whole = self.members.find(member)
+            depth = self.uses[self.bus_uses[bus]].depth
+            top[whole] = min(top.get(whole, depth), depth)
+        joins: list[tuple[int, int]] = []
+        for whole, roots in nets.items():
+            shared = [root for root in roots if best[self.union.find(root)].own.strength >= POWER]
+            plain = [root for root in roots if root not in shared]
+            at_top = [root for root in roots if self.uses[claims[root].use].depth == top[whole]]
+            lead = next((root for root in at_top if root in shared), None)
+            if lead is None and shared:
+                joins.extend((shared[0], root) for root in at_top)
+                plain = [root for root in plain if root not in at_top]
+            joins.extend((plain[0] if lead is None else lead, root) for root in plain)
+        for one, other in joins:
+            self.union.join(one, other)
 
     # ---------------------------------------------------------------------------------------------------------- names
 
-    def _named(
-        self, owns: dict[int, list[_Own]], sheet_of: list[int], attached: dict[int, list[tuple[int, int]]]
-    ) -> list[DrawnNet]:
-        bus_names: dict[int, _Own] = {}
-        for root, names in owns.items():
-            if names and names[0].bus is not None:
-                whole = self.union.find(root)
-                if whole not in bus_names or names[0].key < bus_names[whole].key:
-                    bus_names[whole] = names[0]
+    def _named(self, best: dict[int, _Own]) -> list[DrawnNet]:
         sets: dict[int, list[int]] = defaultdict(list)
         for index, node in enumerate(self.nodes):
             if not node.is_bus or node.pins:
                 sets[self.union.find(index)].append(index)
-        claims = self._claims(owns, sheet_of, attached, bus_names, sets)
-        best = self._settled(owns, claims)
         strong: dict[str, list[int]] = defaultdict(list)
         weak: list[tuple[str, list[int]]] = []
         for whole, indices in sets.items():
@@ -315,41 +312,46 @@ class Nets:
                     weak.append((name, indices))
         return self._finish(strong, weak)
 
-    def _claims(
-        self,
-        owns: dict[int, list[_Own]],
-        sheet_of: list[int],
-        attached: dict[int, list[tuple[int, int]]],
-        bus_names: dict[int, _Own],
-        sets: dict[int, list[int]],
-    ) -> dict[int, _Claim]:
+    def _claims(self, owns: dict[int, list[_Own]], sheet_of: list[int]) -> dict[int, _Claim]:
         """Return by set of equal names on a sheet, in the order of the sheets, what it brings into its net."""
+        bus_names: dict[int, _Own] = {}
+        for root in self.members_of:
+            whole = self.union.find(root)
+            if whole not in bus_names or owns[root][0].key < bus_names[whole].key:
+                bus_names[whole] = owns[root][0]
         claims: dict[int, _Claim] = {}
-        for index in sorted(index for indices in sets.values() for index in indices):
+        for index, node in enumerate(self.nodes):
             root = sheet_of[index]
             names = owns.get(root)
-            if not names or root in claims:
+            if not names or root in claims or (node.is_bus and not node.pins):
                 continue
             own = names[0]
-            if own.strength < POWER and root in attached:
+            if own.strength < POWER and root in self.on_members:
                 # The bus gives the name, the net keeps its standing.
-                member = min(
-                    (
-                        self._member_name(owns[bus][0], bus_names[self.union.find(bus)], position)
-                        for bus, position in attached[root]
-                    ),
-                    key=lambda found: found.key,
-                )
-                own = _Own(max(own.strength, HIERARCHICAL), own.depth, member.name, member.short)
-            claims[root] = _Claim(self.nodes[index].use, own)
+                found = []
+                for member in self.on_members[root]:
+                    bus, position = self.member_places[member]
+                    found.append(self._member_name(owns[bus][0], bus_names[self.union.find(bus)], position))
+                member_name = min(found, key=lambda found: found.key)
+                own = _Own(max(own.strength, HIERARCHICAL), own.depth, member_name.name, member_name.short)
+            claims[root] = _Claim(node.use, own)
         return claims
+
+    def _best(self, claims: dict[int, _Claim]) -> dict[int, _Claim]:
+        """Return by net the claim that names it."""
+        best: dict[int, _Claim] = {}
+        for root, claim in claims.items():
+            whole = self.union.find(root)
+            if whole not in best or _across(claim) < _across(best[whole]):
+                best[whole] = claim
+        return best
 
     def _settled(self, owns: dict[int, list[_Own]], claims: dict[int, _Claim]) -> dict[int, _Own]:
         """Return the name of each net, second global names taking along the nets of that name."""
         roots_of: dict[int, list[int]] = defaultdict(list)
         for root in claims:
             roots_of[self.union.find(root)].append(root)
-        best = {whole: min((claims[root] for root in roots), key=_across) for whole, roots in roots_of.items()}
+        best = self._best(claims)
         named: dict[str, list[int]] = defaultdict(list)
         for root in claims:
             if owns[root][0].strength >= POWER:

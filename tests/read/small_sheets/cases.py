@@ -425,6 +425,18 @@ def global_bus(name: str) -> list[Drawing]:
 
 
 @case
+def global_names_below_a_bus(name: str) -> list[Drawing]:
+    """A global name below a bus stays with its sheet, but the topmost net of the member takes it as well."""
+    sheet, below = _bus_pair(name, "M{X Y}", "M{X Y}", ("M.X",), ("M.X", "M.Y"))
+    other = Drawing(f"{name}_below2", number=3)
+    sheet.sheet("other", other, 20, 20, [("M{X Y}", "input", 20, 25)]).bus((20, 5), (15, 5)).bus((0, 5), (0, 25))
+    sheet.bus((0, 25), (20, 25))
+    below.part("own:VCC", "#PWR01", 5, 9, value="VCC")
+    other.hier("M{X Y}", 20, 5).bus((0, 5), (20, 5)).wire((5, 6), (5, 9)).label("M.X", 5, 7).tp(("TP21", 5, 9))
+    return [sheet, below, other.wire((9, 6), (9, 9)).label("M.Y", 9, 7).tp(("TP22", 9, 9))]
+
+
+@case
 def bus_entries(name: str) -> list[Drawing]:
     """A bus entry is a wire, except at the bus; a wire behind it needs a label of its own."""
     sheet = Drawing(name).bus((0, 0), (10, 0)).label("D[0..1]", 1, 0)
