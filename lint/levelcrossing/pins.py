@@ -71,7 +71,8 @@ DRIVE_NAME = re.compile(r"(SDO|DOUT|SO|MISO|RO|DRDY|BUSY|CLKOUT|Q\d*|RXD_OUT)", 
 
 
 @lru_cache(maxsize=256)
-def _level(text: str) -> Level:
+def level_text(text: str) -> Level:
+    """Return the level that an expression of the supply stands for, e.g. ``0.7*V``."""
     return levels.parse(text)
 
 
@@ -85,10 +86,10 @@ def cmos_receive(supply_known: bool = True) -> Receive:
     """
     del supply_known
     return Receive(
-        vih=_level("0.7*V"),
-        vil=_level("0.3*V"),
-        vmax=_level("V+0.3"),
-        vmin=_level("-0.3"),
+        vih=level_text("0.7*V"),
+        vil=level_text("0.3*V"),
+        vmax=level_text("V+0.3"),
+        vmin=level_text("-0.3"),
         vmax_off=None,
         clamp_high=True,
         clamp_low=True,
@@ -125,7 +126,7 @@ def receive_from(facts: PinFacts, part: PartFacts) -> Receive:
         vih=facts.vih or default.vih,
         vil=facts.vil or default.vil,
         vmax=facts.vmax or default.vmax,
-        vmin=facts.vmin or _level("-0.5"),
+        vmin=facts.vmin or level_text("-0.5"),
         vmax_off=facts.vmax_off,
         clamp_high=clamp_high,
         clamp_low=True if facts.clamp_low is None else facts.clamp_low,
@@ -145,8 +146,10 @@ def describe(provenance: Provenance, title: str) -> str:
     return f"{title}: {provenance.source}{sure.get(provenance.certainty, '')}"
 
 
-def drive_from(facts: PinFacts, style: str, part: PartFacts | None) -> Drive:
+def drive_from(facts: PinFacts, style: str, part: PartFacts | None, supply_volts: float | None = None) -> Drive:
     """Return an output from its rated points: the worst resistance is the one the maker guarantees.
+
+    The points nearest to the supply [V] count, those at a milliampere or more before those at microamperes.
 
     Notes
     -----
@@ -156,17 +159,19 @@ def drive_from(facts: PinFacts, style: str, part: PartFacts | None) -> Drive:
     high_worst, low_worst = UNKNOWN_OUTPUT_OHMS.high, UNKNOWN_OUTPUT_OHMS.high
     basis = Basis.ASSUMED if part is None else Basis.LIBRARY
     rated_low: float | None = None
-    high = _level("V")
-    known = False
-    for point in facts.outputs:
-        known = True
-        if point.voh is not None and point.ioh_amps > 0:
-            drop = point.supply_volts - point.voh.at(point.supply_volts)
-            if drop > 0:
-                high_worst = drop / point.ioh_amps
-        if point.vol is not None and point.iol_amps > 0:
-            low_worst = point.vol.at(point.supply_volts) / point.iol_amps
-            rated_low = max(rated_low or 0.0, point.iol_amps)
+    high = level_text("V")
+    points = sorted(facts.outputs, key=lambda point: abs(point.supply_volts - (supply_volts or point.supply_volts)))
+    known = bool(points)
+    highs = [point for point in points if point.voh is not None and point.ioh_amps > 0]
+    lows = [point for point in points if point.vol is not None and point.iol_amps > 0]
+    high_point = next((point for point in highs if point.ioh_amps >= 1e-3), highs[0] if highs else None)
+    low_point = next((point for point in lows if point.iol_amps >= 1e-3), lows[0] if lows else None)
+    if high_point is not None and high_point.voh is not None:
+        drop = high_point.supply_volts - high_point.voh.at(high_point.supply_volts)
+        high_worst = drop / high_point.ioh_amps if drop > 0 else high_worst
+    if low_point is not None and low_point.vol is not None:
+        low_worst = low_point.vol.at(low_point.supply_volts) / low_point.iol_amps
+        rated_low = low_point.iol_amps
     if part is not None and not known:
         basis = Basis.ASSUMED
     weak = part.translator.output_ohms if part is not None and part.translator is not None else None
@@ -174,15 +179,15 @@ def drive_from(facts: PinFacts, style: str, part: PartFacts | None) -> Drive:
         # A weak static driver behind an edge accelerator: its resistance is the maker's own design figure.
         spread = Spread(low=weak * 0.7, nominal=weak, high=weak * 1.3)
         return Drive(
-            style=style, high=high, low=_level("0"), high_ohms=spread, low_ohms=spread, limit_amps=facts.output_amps,
+            style=style, high=high, low=level_text("0"), high_ohms=spread, low_ohms=spread, limit_amps=facts.output_amps,
             rated_low_amps=None, basis=Basis.LIBRARY, source=describe(part.provenance, part.title) if part else "",
         )  # fmt: skip
     if bipolar_output(facts.outputs):
-        high = _level("max(V-1.6, 0)")
+        high = level_text("max(V-1.6, 0)")
     return Drive(
         style=style,
         high=high,
-        low=_level("0"),
+        low=level_text("0"),
         high_ohms=_worst_resistance(high_worst, known),
         low_ohms=_worst_resistance(low_worst, known),
         limit_amps=facts.output_amps,
@@ -302,8 +307,8 @@ def far_end_drive(*, open_drain: bool, basis: Basis) -> Drive:
     """Return the driver beyond a connector: a CMOS output of unknown strength, or an open drain."""
     return Drive(
         style="open-drain" if open_drain else "push-pull",
-        high=_level("V"),
-        low=_level("0"),
+        high=level_text("V"),
+        low=level_text("0"),
         high_ohms=UNKNOWN_OUTPUT_OHMS,
         low_ohms=UNKNOWN_OUTPUT_OHMS,
         limit_amps=None,
@@ -315,14 +320,14 @@ def far_end_drive(*, open_drain: bool, basis: Basis) -> Drive:
 
 def _overridden(receive: Receive, setting: PinSetting) -> Receive:
     if setting.tolerates_volts is not None:
-        limit = _level(f"{setting.tolerates_volts:g}")
+        limit = level_text(f"{setting.tolerates_volts:g}")
         receive = replace(
             receive, vmax=limit, clamp_high=False, basis=Basis.DECLARED, source="declared in the settings"
         )
     if setting.vih_volts is not None:
-        receive = replace(receive, vih=_level(f"{setting.vih_volts:g}"))
+        receive = replace(receive, vih=level_text(f"{setting.vih_volts:g}"))
     if setting.vil_volts is not None:
-        receive = replace(receive, vil=_level(f"{setting.vil_volts:g}"))
+        receive = replace(receive, vil=level_text(f"{setting.vil_volts:g}"))
     return receive
 
 
@@ -391,7 +396,10 @@ class _PartModeller:
                 receive = replace(receive, reads=False)
         if direction in ("out", "inout", "open-drain", "open-source"):
             style = {"open-drain": "open-drain", "open-source": "open-source"}.get(direction, "push-pull")
-            drive = replace(drive_from(facts, style, self.facts), tristate=pin.kind == "tri_state")
+            drive = replace(
+                drive_from(facts, style, self.facts, volts.nominal if volts is not None else None),
+                tristate=pin.kind == "tri_state",
+            )
         if direction == "out" and pin.kind != "tri_state":
             receive = None
         when = ""
