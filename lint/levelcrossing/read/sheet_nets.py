@@ -8,7 +8,13 @@ The way:
 3. Sheet pins meet hierarchical labels of the same text; buses meet member by member, vectors by position, groups by
    name. What is joined so takes the name of the strongest, then the one nearest the root, then the first in the
    alphabet. A member of a bus is named by its bus unless something global drives it.
-4. Nets of one name are one net. Names that only pins give are kept apart by ``_1``, ``_2`` ...
+4. A net that has a second global name takes the nets of that name along, on whatever sheet they are.
+5. Nets of one name are one net. Names that only pins give are kept apart by ``_1``, ``_2`` ...
+
+All of it was found by drawing small sheets and comparing with what KiCad 9 exports for them; tests/read/small_sheets
+holds those that show one rule each. Two things are left to chance in KiCad itself and may differ: to which of several
+wires a label belongs that stands where they cross, and which of several equal sheet pins without a label below keeps
+its name without a number.
 """
 
 from __future__ import annotations
