@@ -19,7 +19,7 @@ from levelcrossing import __version__
 from levelcrossing.errors import CommandError, LevelcrossingError
 
 if TYPE_CHECKING:
-    from levelcrossing.reviewing import Screen
+    from levelcrossing.reports.screen import Screen
 
 PIPE_WIDTH = 100
 FORMS = ("text", "json", "sarif", "markdown", "workflow", "page", "junit", "quality")
@@ -319,7 +319,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
 
 def screen() -> Screen:
     """Describe standard output: a terminal has its width and colours, a pipe a fixed width and none."""
-    from levelcrossing.reviewing import Screen
+    from levelcrossing.reports.screen import Screen
 
     encoding = (getattr(sys.stdout, "encoding", None) or "ascii").lower().replace("-", "")
     looks = sys.stdout.isatty()

@@ -4,26 +4,28 @@ from __future__ import annotations
 
 import argparse
 import datetime
-import importlib
 import os
-from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, replace
+from collections.abc import Sequence
+from dataclasses import replace
 from pathlib import Path
 
 from levelcrossing.errors import CommandError, InputError
 from levelcrossing.model import Outcome, Review, Settings
+from levelcrossing.read import read_board
 from levelcrossing.reports.clean import terminal
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Screen:
-    """What the command line knows of its output, and how it shows progress and complaints while a command runs."""
-
-    width: int = 100
-    colour: bool = False
-    ascii_only: bool = False
-    progress: Callable[[str], None] = lambda text: None
-    tell: Callable[[str], None] = lambda text: None
+from levelcrossing.reports.jsonform import json_report
+from levelcrossing.reports.junit import junit_report
+from levelcrossing.reports.markdown import markdown_report
+from levelcrossing.reports.page import page_report
+from levelcrossing.reports.quality import quality_report
+from levelcrossing.reports.sarif import sarif_report
+from levelcrossing.reports.screen import Screen
+from levelcrossing.reports.terminal import coloured_report, plain_report
+from levelcrossing.reports.workflow import workflow_report
+from levelcrossing.review import open_case, review
+from levelcrossing.rulebook import RuleFile, load_rules
+from levelcrossing.settings import load_settings
+from levelcrossing.symbolfields import settings_from_fields
 
 
 def run(args: argparse.Namespace) -> tuple[str, int]:
@@ -43,8 +45,6 @@ def run(args: argparse.Namespace) -> tuple[str, int]:
     LevelcrossingError
         When the only board cannot be used, or the settings, the rules or the trade data.
     """
-    from levelcrossing.review import review
-
     screen: Screen = args.screen
     paths = list(dict.fromkeys(args.paths))
     if args.changed:
@@ -77,8 +77,8 @@ def run(args: argparse.Namespace) -> tuple[str, int]:
         stops.append(stop_level(args.stop_at, settings))
     screen.progress("")
     if args.decks is not None:
-        _write_decks(Path(args.decks), reviews)
-    text = report(reviews, args.form, args) if reviews else ""
+        _write_decks(Path(args.decks), paths, args)
+    text = report(reviews, stops, args) if reviews else ""
     status = 2 if failed else int(any(reaches(one, stop) for one, stop in zip(reviews, stops, strict=True)))
     if args.form == "workflow":
         _step_summary(reviews)
@@ -99,43 +99,37 @@ def stop_level(asked: str | None, settings: Settings) -> Outcome | None:
     return settings.stop_at or Outcome.MALFUNCTION
 
 
-def reaches(review: Review, stop: Outcome | None) -> bool:
+def reaches(done: Review, stop: Outcome | None) -> bool:
     """Tell whether a review holds something at or above the stop level; waived findings do not count."""
     if stop is None:
         return False
-    if any(finding.outcome.rank <= stop.rank for finding in review.findings if finding.waived is None):
+    if any(finding.outcome.rank <= stop.rank for finding in done.findings if finding.waived is None):
         return True
-    return stop is Outcome.UNKNOWN and any(one.verdict is Outcome.UNKNOWN for one in review.crossings)
+    return stop is Outcome.UNKNOWN and any(one.verdict is Outcome.UNKNOWN for one in done.crossings)
 
 
-def report(reviews: Sequence[Review], form: str, args: argparse.Namespace) -> str:
+def report(reviews: Sequence[Review], stops: Sequence[Outcome | None], args: argparse.Namespace) -> str:
     """Return the report in the form asked for."""
     base = os.getcwd()
-    if form == "text":
+    if args.form == "text":
         return _text(reviews, args)
-    if form == "json":
-        from levelcrossing.reports.jsonform import json_report
-
+    if args.form == "json":
         return json_report(reviews)
-    if form in ("sarif", "page"):
-        from levelcrossing.rulebook import load_rules
+    if args.form == "junit":
+        return junit_report(reviews, stops=stops)
+    if args.form == "sarif":
+        return sarif_report(reviews, _rules(args), base=base)
+    if args.form == "page":
+        return page_report(reviews, _rules(args))
+    plain = {"markdown": markdown_report, "workflow": workflow_report, "quality": quality_report}
+    return plain[args.form](reviews, base=base)
 
-        rules = load_rules([Path(folder) for folder in args.rules])
-        if form == "sarif":
-            from levelcrossing.reports.sarif import sarif_report
 
-            return sarif_report(reviews, rules, base=base)
-        from levelcrossing.reports.page import page_report
-
-        return page_report(reviews, rules, everything=args.everything)
-    module = importlib.import_module(f"levelcrossing.reports.{form}")
-    make: Callable[..., str] = getattr(module, f"{form}_report")
-    return make(reviews, base=base)
+def _rules(args: argparse.Namespace) -> tuple[RuleFile, ...]:
+    return load_rules([Path(folder) for folder in args.rules])
 
 
 def _text(reviews: Sequence[Review], args: argparse.Namespace) -> str:
-    from levelcrossing.reports.terminal import coloured_report, plain_report
-
     screen: Screen = args.screen
     if args.to is not None:
         return plain_report(reviews, everything=args.everything)
@@ -144,8 +138,6 @@ def _text(reviews: Sequence[Review], args: argparse.Namespace) -> str:
 
 
 def _settings(path: str, explicit: str | None) -> Settings:
-    from levelcrossing.settings import load_settings
-
     # The core has no clock: the day on which waivers end is told to it here.
     return replace(load_settings(path, explicit), today=datetime.date.today().isoformat())
 
@@ -163,26 +155,26 @@ def _check_target(target: str, paths: Sequence[str]) -> None:
         raise CommandError(f"--to {terminal(target)} would overwrite the reviewed board", remedy="name another file")
 
 
-def _write_decks(folder: Path, reviews: Sequence[Review]) -> None:
-    from levelcrossing.decks import deck_files
+def _write_decks(folder: Path, paths: Sequence[str], args: argparse.Namespace) -> None:
+    from levelcrossing import tradebook
+    from levelcrossing.deckfiles import deck_files
 
     folder.mkdir(parents=True, exist_ok=True)
-    for number, review in enumerate(reviews, 1):
-        files: Mapping[str, str] = deck_files(review)
-        for name, text in sorted(files.items()):
-            safe = "".join(
-                character if (character.isalnum() and character.isascii()) or character in "-_." else "_"
-                for character in name
-            )
-            prefix = f"{number}_" if len(reviews) > 1 else ""
-            (folder / f"{prefix}{safe.lstrip('.')}").write_text(text, encoding="utf-8", newline="\n")
+    book = tradebook.load(extra=tuple(Path(file) for file in args.facts))
+    for number, path in enumerate(paths, 1):
+        try:
+            board = read_board(path)
+        except InputError:
+            continue  # the review has told
+        case = open_case(board, settings_from_fields(board, _settings(path, args.settings)), book)
+        prefix = f"{number}_" if len(paths) > 1 else ""
+        for name, text in deck_files(case).items():
+            (folder / (prefix + name)).write_text(text, encoding="utf-8", newline="\n")
 
 
 def _step_summary(reviews: Sequence[Review]) -> None:
     """Append the Markdown summary to the file that a build host names for it."""
     target = os.environ.get("GITHUB_STEP_SUMMARY")
     if target and reviews:
-        from levelcrossing.reports.markdown import markdown_report
-
         with open(target, "a", encoding="utf-8", newline="\n") as file:
             file.write(markdown_report(reviews, base=os.getcwd()) + "\n")

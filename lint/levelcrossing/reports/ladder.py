@@ -12,8 +12,11 @@ from levelcrossing.model import SolvedCrossing as Solved
 from levelcrossing.model import Spread, StateResult
 from levelcrossing.reports.phrases import span, volts
 
-# The pin is drawn as "over" from this much above its limit; below, it is rounding [V].
+# Beyond a limit by less than this is rounding [V].
 _HAIR_VOLTS = 5e-3
+
+COMFORTABLE_VOLTS = 0.2
+"""A margin above this is not worth a remark under a ladder [V]."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -75,7 +78,9 @@ class Ladder:
     limits : tuple of (str, float)
         ``VIL``, ``VIH`` and ``max`` [V] at their least favourable corner, rising; those that are known.
     notes : tuple of str
-        What stands against what, in words.
+        Margins that are gone or thin, in words.
+    source : str
+        What drives when no pin does, else empty.
     """
 
     bottom: float
@@ -86,6 +91,7 @@ class Ladder:
     reader: str
     limits: tuple[tuple[str, float], ...]
     notes: tuple[str, ...]
+    source: str = ""
 
     def marks(self) -> tuple[float, ...]:
         """Return the voltages that the scale names."""
@@ -125,14 +131,14 @@ def ladder(solved: Solved) -> Ladder | None:
         source = f"{crossing.driver_rail} through {crossing.link[0]}" if crossing.link else crossing.driver_rail
         sent = ()
         source_row: tuple[Row, ...] = ()
-        label = f"from {source}"
+        label = source
     else:
         source = f"{crossing.driver.part}.{crossing.driver.number}"
         source_row = (Row(label="sent", who=source, bars=sent, figures=_figures(sent)),) if sent else ()
         label = ""
     reader = f"{crossing.receiver.part}.{crossing.receiver.number}"
     arrival = Row(label="arrives", who=reader, bars=arrives, figures=_figures(arrives))
-    notes = _notes(solved, vil, vih, vmax)
+    notes = _notes(solved)
     limits = [(name, value) for name, value in (("VIL", vil), ("VIH", vih), ("max", vmax)) if value is not None]
     return Ladder(
         bottom=bottom,
@@ -142,7 +148,8 @@ def ladder(solved: Solved) -> Ladder | None:
         zones=_zones(bottom, top, vil, vih, vmax),
         reader=reader,
         limits=tuple(sorted(limits, key=lambda limit: limit[1])),
-        notes=((label, *notes) if label else notes),
+        notes=notes,
+        source=label,
     )
 
 
@@ -189,13 +196,29 @@ def _zones(bottom: float, top: float, vil: float | None, vih: float | None, vmax
     return tuple(zones)
 
 
-def _notes(solved: Solved, vil: float | None, vih: float | None, vmax: float | None) -> tuple[str, ...]:
+def _notes(solved: Solved) -> tuple[str, ...]:
+    """Say which margins are gone or thin, in the solver's own figures.
+
+    A supply moves both what is sent and what is taken, so the ends of two bars need not belong to one corner; the margins
+    do.
+    """
     notes = []
-    most = max((state.open_volts.high for state in solved.states.values() if state.solved), default=None)
-    if most is not None and vmax is not None and most > vmax + _HAIR_VOLTS:
-        notes.append(f"{volts(most - vmax)} V above the limit of {volts(vmax)} V")
-    if solved.high is not None and vih is not None and solved.high.low < vih - 1e-6:
-        notes.append(f"the high may be {volts(vih - solved.high.low)} V short of VIH {volts(vih)} V")
-    if solved.low is not None and vil is not None and solved.low.high > vil + 1e-6:
-        notes.append(f"the low may be {volts(solved.low.high - vil)} V above VIL {volts(vil)} V")
+    for name, state in sorted(solved.states.items()):
+        if not state.solved:
+            continue
+        if state.floating:
+            notes.append(f"driver {name}: nothing sets the voltage at the receiver")
+            continue
+        for margin, lost, spare in (
+            (state.rating_margin, "above what the receiver bears", "below what the receiver bears"),
+            (state.low_rating_margin, "below what the receiver bears", "above the least the receiver bears"),
+            (state.high_margin, "short of a guaranteed high", "above VIH"),
+            (state.low_margin, "above a guaranteed low", "below VIL"),
+        ):
+            if margin is None or margin.spread.low >= COMFORTABLE_VOLTS:
+                continue
+            short = margin.spread.low < -_HAIR_VOLTS
+            size = f"{volts(abs(margin.spread.low))} V {lost if short else spare}"
+            corner = f" ({margin.worst_corner})" if margin.worst_corner else ""
+            notes.append(f"driver {name}: {size}{corner}" if short else f"driver {name}: only {size}{corner}")
     return tuple(notes)

@@ -248,7 +248,7 @@ class _Board:
 
     def _grounds(self, finding: Finding) -> list[str]:
         solved = self._solved(finding)
-        words = _evidence(solved, self.review) if solved is not None else []
+        words = evidence(solved, self.review) if solved is not None else []
         # A source that an end's evidence quotes already would stand there twice.
         words += [source for source in finding.sources if not any(source in word for word in words)]
         return [f"figures {phrases.BASIS[finding.basis.value]}", *dict.fromkeys(words)]
@@ -262,13 +262,14 @@ class _Board:
 
     def _ladder(self, number: int, finding: Finding) -> None:
         solved = self._solved(finding)
-        if solved is None or finding.crossing is None or finding.outcome in (Outcome.UNKNOWN, Outcome.SOUND):
+        if solved is None or finding.crossing is None or finding.outcome is Outcome.SOUND:
             return
         if finding.crossing in self.drawn:
             self._labelled("ladder", f"drawn at finding {self.drawn[finding.crossing]}")
             return
         drawing = ladder(solved)
-        if drawing is not None:
+        # Comfortable levels are not what the finding is about; a ladder would only distract.
+        if drawing is not None and drawing.notes:
             self.drawn[finding.crossing] = number
             self.sheet.blank()
             draw_ladder(self.sheet, drawing, self.glyphs)
@@ -288,8 +289,8 @@ class _Board:
             self.sheet.line(("     ", ""), (clean(_way(one)), "place"))
             if one.condition:
                 self._labelled("only if", one.condition)
-            self._labelled("levels", _levels(one.solved))
-            self._labelled("rests on", "; ".join(_evidence(one.solved, self.review)) or one.solved.crossing.basis.value)
+            self._labelled("levels", crossing_levels(one.solved))
+            self._labelled("rests on", "; ".join(evidence(one.solved, self.review)) or one.solved.crossing.basis.value)
 
     def _waived(self) -> None:
         waived = [finding for finding in self.review.findings if finding.waived is not None]
@@ -383,7 +384,8 @@ def _way(one: ReviewedCrossing) -> str:
     return f"{crossing.source} to {crossing.target}{link} ({crossing.shifter.title or crossing.shifter.kind})"
 
 
-def _levels(solved: SolvedCrossing) -> str:
+def crossing_levels(solved: SolvedCrossing) -> str:
+    """Return what arrives at a receiver against its limits, in one line."""
     words = []
     if solved.high is not None:
         words.append(f"high {phrases.span(solved.high)}" + (f" (VIH {volts(solved.vih.high)})" if solved.vih else ""))
@@ -394,7 +396,7 @@ def _levels(solved: SolvedCrossing) -> str:
     return ", ".join(words) or "not solved"
 
 
-def _evidence(solved: SolvedCrossing, review: Review) -> list[str]:
+def evidence(solved: SolvedCrossing, review: Review) -> list[str]:
     """Return where the figures of a crossing come from: supplies first, then both ends."""
     crossing = solved.crossing
     rails = []
@@ -412,8 +414,10 @@ def _evidence(solved: SolvedCrossing, review: Review) -> list[str]:
 
 def draw_ladder(sheet: Sheet, drawing: Ladder, glyphs: Glyphs) -> None:
     """Draw a ladder with characters: a scale, the levels sent and arriving, and what the receiver makes of them."""
-    lead, tail = 22, 20
-    room = max(24, min(sheet.width - lead - tail, 72))
+    names = [clean(row.who) for row in drawing.rows] + [clean(drawing.reader)]
+    lead = 15 + min(max(cells(name) for name in names), 12)
+    tail = 2 + max(cells(row.figures) for row in drawing.rows)
+    room = max(24, min(sheet.width - lead - tail - 1, 72))
     reach = drawing.top - drawing.bottom
 
     def column(value: float) -> int:
@@ -457,6 +461,8 @@ def draw_ladder(sheet: Sheet, drawing: Ladder, glyphs: Glyphs) -> None:
     sheet.line((_fit(f"     takes    {clean(drawing.reader)}", lead), ""), *_joined(view))
     limits = "   ".join(f"{name} {volts(value)}" for name, value in drawing.limits)
     sheet.line((" " * lead, ""), (f"{limits} V, each at its least favourable corner", "dim"))
+    if drawing.source:
+        sheet.text(f"set by {drawing.source}", indent=lead)
     for note in drawing.notes:
         sheet.text(note, indent=lead, style="over")
 
