@@ -313,13 +313,7 @@ class _Finder:
                 continue
             channels: dict[str, dict[str, PinModel]] = defaultdict(dict)
             for (part, _), pin in self.pins.items():
-                if (
-                    part == reference
-                    and pin.facts is not None
-                    and pin.facts.channel
-                    and pin.facts.side
-                    and pin.net in self.by_net
-                ):
+                if part == reference and pin.facts is not None and pin.facts.side and pin.net in self.by_net:
                     channels[pin.facts.channel][pin.facts.side] = pin
             for _, sides in sorted(channels.items()):
                 if set(sides) == {"a", "b"}:

@@ -1187,6 +1187,15 @@ class SolvedCrossing:
         receive = crossing.receiver.receive
         if receive is not None and receive.basis is Basis.ASSUMED and not crossing.receiver.inferred_far_end:
             conditions.append(f"{crossing.receiver.part} is an ordinary CMOS part (no data on it)")
+        drive = crossing.driver.drive if crossing.driver is not None else None
+        if (
+            drive is not None
+            and drive.basis is Basis.ASSUMED
+            and crossing.driver is not None
+            and crossing.driver.role == "signal"
+            and crossing.driver.facts is None
+        ):
+            conditions.append(f"{crossing.driver.part} drives like an ordinary CMOS part (no data on it)")
         if crossing.inferred:
             conditions.append(crossing.inferred)
             outcome = Outcome.UNKNOWN

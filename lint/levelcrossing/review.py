@@ -7,8 +7,8 @@ from dataclasses import replace
 from pathlib import Path
 
 from levelcrossing import crossings as crossing_survey
+from levelcrossing import directions, offstates, remedies, rulebook, scope, solutions, tradebook, waivers
 from levelcrossing import islands as island_survey
-from levelcrossing import offstates, remedies, rulebook, scope, solutions, tradebook, waivers
 from levelcrossing import pins as pin_models
 from levelcrossing import rails as rail_tracing
 from levelcrossing.model import (
@@ -65,6 +65,7 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
     """Trace, model, cut, pair and solve: everything that the rules judge."""
     rails = rail_tracing.trace_rails(board, book, settings)
     pins, facts = pin_models.model_pins(board, rails, book, settings)
+    pins = directions.settle_directions(pins, facts, rails)
     elements = island_survey.find_elements(board, book, facts, settings)
     islands = island_survey.find_islands(board, rails, pins, elements)
     survey = crossing_survey.find_crossings(board, rails, pins, facts, islands)

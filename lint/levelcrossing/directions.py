@@ -1,0 +1,87 @@
+"""A tied direction pin settles which side of a transceiver drives and which side reads."""
+
+from __future__ import annotations
+
+import re
+from collections import defaultdict
+from collections.abc import Mapping
+from dataclasses import replace
+
+from levelcrossing.model import PartFacts, PinModel, Rails
+
+# Direction pins of plain transceivers (74xx245 and kin): high is A to B (data sheets of the family).
+PLAIN_DIRECTION = re.compile(r"(\d?)(?:DIR|T/?~?R|A->B)(\d?)", re.IGNORECASE)
+
+
+def settle_directions(
+    pins: Mapping[tuple[str, str], PinModel], facts: Mapping[str, PartFacts], rails: Rails
+) -> dict[tuple[str, str], PinModel]:
+    """Return the pins with the sides of transceivers settled where their direction pin is tied to a rail.
+
+    Parameters
+    ----------
+    pins : mapping
+        (reference, number) to PinModel.
+    facts : mapping
+        Reference to the part's row.
+    rails : Rails
+
+    Returns
+    -------
+    dict
+        All pins; those of a settled side without the drive or the receiver that the direction rules out.
+    """
+    settled = dict(pins)
+    by_part: dict[str, list[PinModel]] = defaultdict(list)
+    for pin in pins.values():
+        if pin.part in facts and facts[pin.part].translator is not None:
+            by_part[pin.part].append(pin)
+    for reference, members in by_part.items():
+        sided = [pin for pin in members if pin.facts is not None and pin.facts.side and pin.facts.direction == "inout"]
+        if not sided:
+            continue
+        for control in members:
+            found = _direction_of(control, facts[reference], rails)
+            if found is None:
+                continue
+            mark, a_to_b = found
+            for pin in sided:
+                if mark and not _belongs(pin, mark):
+                    continue
+                assert pin.facts is not None
+                reads = (pin.facts.side == "a") == a_to_b
+                settled[reference, pin.number] = (
+                    replace(pin, drive=None, when="") if reads else replace(pin, receive=None, when="")
+                )
+    return settled
+
+
+def _direction_of(pin: PinModel, known: PartFacts, rails: Rails) -> tuple[str, bool] | None:
+    """Return (channel mark, direction is A to B) of a direction pin that is tied to a rail, None for any other pin."""
+    if pin.net not in rails.by_net:
+        return None
+    plain = re.sub(r"[~{}]", "", pin.name)
+    match = PLAIN_DIRECTION.fullmatch(plain)
+    active_high, meaning = True, "a-to-b"
+    if known.translator is not None:
+        control = next(
+            (
+                control
+                for control in known.translator.controls
+                if control.use == "direction" and re.fullmatch(control.pins, plain, re.IGNORECASE)
+            ),
+            None,
+        )
+        if control is not None:
+            active_high, meaning = control.active == "H", control.meaning or "a-to-b"
+        elif match is None:
+            return None
+    high = not rails.is_ground(pin.net)
+    digits = re.findall(r"\d+", plain)
+    return (digits[0] if digits else ""), (high == active_high) == (meaning == "a-to-b")
+
+
+def _belongs(pin: PinModel, mark: str) -> bool:
+    """Tell whether a pin is of the channel or bank that a numbered direction pin steers: ``DIR2`` A2, ``1DIR`` 1A4."""
+    plain = re.sub(r"[~{}]", "", pin.name)
+    return plain.startswith(mark) or (pin.facts is not None and pin.facts.channel == mark)
