@@ -105,7 +105,7 @@ def _finding(finding: Finding, base: str) -> list[str]:
         further.append(f"  - remedy: {clean(finding.remedy)}")
     if finding.also:
         further.append(f"  - also at: {clean(phrases.listed(finding.also, 12))}")
-    further.append(f"  - figures: {phrases.BASIS[finding.basis.value]}")
+    further.append(f"  - rests on: {phrases.BASIS[finding.basis.value]}")
     if path and finding.at and finding.at.line:
         further.append(f"  - at: {code_span(f'{path}:{finding.at.line}')}")
     return [*lines, "", *further]

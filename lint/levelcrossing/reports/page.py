@@ -131,7 +131,7 @@ class _Page:
         items.append(("rule", f'<a href="#rule-{clean(finding.rule)}">{clean(finding.rule)}</a>'))
         grounds = evidence(one.solved, self.review) if one is not None else []
         grounds += [source for source in finding.sources if not any(source in ground for ground in grounds)]
-        grounds = [f"figures {phrases.BASIS[finding.basis.value]}", *dict.fromkeys(grounds)]
+        grounds = [phrases.BASIS[finding.basis.value], *dict.fromkeys(grounds)]
         items.append(("rests on", "<br>".join(clean(ground) for ground in grounds)))
         if finding.at is not None and finding.at.line:
             items.append(("stands at", _code(f"{finding.at.file}:{finding.at.line}")))

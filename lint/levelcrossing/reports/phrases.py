@@ -18,10 +18,10 @@ MEANING = {
 }
 
 BASIS = {
-    "declared": "all declared by you",
-    "library": "the weakest from the trade library",
-    "traced": "the weakest traced on the board",
-    "assumed": "the weakest assumed, a family default",
+    "declared": "every figure declared by you",
+    "library": "weakest figure: from the trade library",
+    "traced": "weakest figure: traced on the board",
+    "assumed": "weakest figure: assumed, a family default",
 }
 
 _PREFIXES = ((1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"), (1e-12, "p"))

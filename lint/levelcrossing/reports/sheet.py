@@ -110,7 +110,8 @@ class Sheet:
         cleaned = [[terminal(cell) for cell in row] for row in rows]
         if not cleaned:
             return
-        most = max(12, (self.width - indent) // 3)
+        fixed = len(cleaned[0]) - 1
+        most = max(6, min((self.width - indent) // 2, (self.width - indent - 20) // max(fixed, 1) - 2))
         widths = [min(most, max(cells(row[index]) for row in cleaned)) for index in range(len(cleaned[0]) - 1)]
         lead = indent + sum(widths) + 2 * len(widths)
         for row in cleaned:

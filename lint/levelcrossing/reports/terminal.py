@@ -165,11 +165,13 @@ class _Board:
     def _section(self, title: str, remark: str = "") -> None:
         self.sheet.blank()
         lead = self.glyphs.rule * 2
-        used = 4 + cells(title) + (cells(remark) + 2 if remark else 0)
-        tail = self.glyphs.rule * max(2, min(self.sheet.width, PROSE_WIDEST) - used)
-        self.sheet.line(
-            (lead + " ", "dim"), (title, "title"), (f"  {remark}" if remark else "", "dim"), (" " + tail, "dim")
-        )
+        room = min(self.sheet.width, PROSE_WIDEST)
+        beside = 6 + cells(title) + 2 + cells(remark) + 3 <= room
+        shown = f"  {remark}" if remark and beside else ""
+        tail = self.glyphs.rule * max(2, room - 4 - cells(title) - cells(shown))
+        self.sheet.line((lead + " ", "dim"), (title, "title"), (shown, "dim"), (" " + tail, "dim"))
+        if remark and not beside:
+            self.sheet.text(remark, indent=3, style="dim")
 
     def _head(self) -> None:
         review, sheet = self.review, self.sheet
@@ -251,7 +253,7 @@ class _Board:
         words = evidence(solved, self.review) if solved is not None else []
         # A source that an end's evidence quotes already would stand there twice.
         words += [source for source in finding.sources if not any(source in word for word in words)]
-        return [f"figures {phrases.BASIS[finding.basis.value]}", *dict.fromkeys(words)]
+        return [phrases.BASIS[finding.basis.value], *dict.fromkeys(words)]
 
     def _solved(self, finding: Finding) -> SolvedCrossing | None:
         if finding.crossing is None or not 0 <= finding.crossing < len(self.review.crossings):
@@ -286,7 +288,7 @@ class _Board:
         self._section("sound", "holds at every corner")
         for one in sound:
             self.sheet.blank()
-            self.sheet.line(("     ", ""), (clean(_way(one)), "place"))
+            self.sheet.text(_way(one), indent=5, style="place")
             if one.condition:
                 self._labelled("only if", one.condition)
             self._labelled("levels", crossing_levels(one.solved))
@@ -417,7 +419,8 @@ def draw_ladder(sheet: Sheet, drawing: Ladder, glyphs: Glyphs) -> None:
     names = [clean(row.who) for row in drawing.rows] + [clean(drawing.reader)]
     lead = 15 + min(max(cells(name) for name in names), 12)
     tail = 2 + max(cells(row.figures) for row in drawing.rows)
-    room = max(24, min(sheet.width - lead - tail - 1, 72))
+    beside = sheet.width - lead - tail - 1 >= 26  # else the figures get lines of their own
+    room = min(sheet.width - lead - (tail + 1 if beside else 6), 72)
     reach = drawing.top - drawing.bottom
 
     def column(value: float) -> int:
@@ -444,7 +447,9 @@ def draw_ladder(sheet: Sheet, drawing: Ladder, glyphs: Glyphs) -> None:
                 over = row.label == "arrives" and limit is not None and drawing.bottom + at / room * reach > limit
                 paint[at] = (glyphs.bar, "over" if over else "bar")
         label = f"     {row.label:<8} {clean(row.who)}"
-        sheet.line((_fit(label, lead), ""), *_joined(paint), ("  " + row.figures, ""))
+        sheet.line((_fit(label, lead), ""), *_joined(paint), ("  " + row.figures if beside else "", ""))
+        if not beside:
+            sheet.text(row.figures, indent=lead)
     marks = {"low": glyphs.low, "between": glyphs.between, "high": glyphs.high, "over": glyphs.over}
     view: list[Segment] = [(" ", "") for _ in range(room + 1)]
     for zone in drawing.zones:
@@ -460,7 +465,7 @@ def draw_ladder(sheet: Sheet, drawing: Ladder, glyphs: Glyphs) -> None:
         view[column(value)] = (glyphs.edge, "")
     sheet.line((_fit(f"     takes    {clean(drawing.reader)}", lead), ""), *_joined(view))
     limits = "   ".join(f"{name} {volts(value)}" for name, value in drawing.limits)
-    sheet.line((" " * lead, ""), (f"{limits} V, each at its least favourable corner", "dim"))
+    sheet.text(f"{limits} V, each at its least favourable corner", indent=lead, style="dim")
     if drawing.source:
         sheet.text(f"set by {drawing.source}", indent=lead)
     for note in drawing.notes:
