@@ -65,17 +65,20 @@ def test_a_board_done_right_has_no_finding(name: str) -> None:
 def test_every_fault_is_explained_once_by_its_rule() -> None:
     """The table in the faulty board's README says which rule explains which fault, and where."""
     table = (BOARDS / "tide_gauge_faulty" / "README.md").read_text(encoding="utf-8")
-    rows = re.findall(r"^\|[^|]+\|[^|]+\| `([a-z-]+)` \| ([A-Z]+\d+)", table, re.MULTILINE)
+    rows = re.findall(r"^\|[^|]+\|[^|]+\| `([a-z-]+)` \| ([A-Z]+\d+(?:\.\d+)?)", table, re.MULTILINE)
     findings = reviewed("tide_gauge_faulty")["findings"]
     assert len(rows) == len(findings) >= 14
-    for rule, part in rows:
+    for rule, place in rows:
         here = [
             finding
             for finding in findings
             if finding["rule"] == rule
-            and (finding["part"] == part or any(place.startswith(f"{part}.") for place in finding["also"]))
+            and any(
+                spot.split(".")[0] == place or spot == place
+                for spot in (f"{finding['part']}.{finding['pin']}", *finding["also"])
+            )
         ]
-        assert len(here) == 1, (rule, part)
+        assert len(here) == 1, (rule, place)
 
 
 @pytest.mark.parametrize("name", NAMES)
