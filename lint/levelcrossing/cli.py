@@ -8,6 +8,7 @@ from __future__ import annotations
 import argparse
 import difflib
 import importlib
+import importlib.util
 import os
 import re
 import shutil
@@ -216,10 +217,20 @@ COMMANDS: dict[str, tuple[str, str, str, Callable[[Parser], None] | None]] = {
 }
 
 
+def available() -> dict[str, str]:
+    """Return the commands whose modules are there, each with its line for the list."""
+    return {
+        name: line
+        for name, (module, line, _, _) in COMMANDS.items()
+        if importlib.util.find_spec(f"levelcrossing.{module}") is not None
+    }
+
+
 def overview() -> str:
     """Return the text of ``levelcrossing --help``."""
-    width = max(len(name) for name in COMMANDS)
-    lines = [f"  {name.ljust(width)}  {line}" for name, (_, line, _, _) in COMMANDS.items()]
+    commands = available()
+    width = max(len(name) for name in commands)
+    lines = [f"  {name.ljust(width)}  {line}" for name, line in commands.items()]
     return "\n".join(
         [
             "usage: levelcrossing COMMAND ...",
@@ -251,17 +262,18 @@ def parse(arguments: Sequence[str]) -> tuple[str, argparse.Namespace]:
             remedy="`levelcrossing review PATH` reviews a board, `levelcrossing --help` lists the commands",
         )
     name = arguments[0]
-    if name not in COMMANDS:
+    known = available()
+    if name not in known:
         if name.startswith("-"):
             raise CommandError(
                 f"unknown option {show(name)}",
                 remedy=nearest(name, ["--help", "--version"])
                 or "the command comes first, such as `levelcrossing review PATH`",
             )
-        remedy = nearest(name, COMMANDS)
+        remedy = nearest(name, known)
         if not remedy and os.path.exists(name):
             remedy = f"`levelcrossing review {show(name)}` reviews it"
-        raise CommandError(f"there is no command {show(name)!r}", remedy=remedy or f"one of {', '.join(COMMANDS)}")
+        raise CommandError(f"there is no command {show(name)!r}", remedy=remedy or f"one of {', '.join(known)}")
     module, _, text, fill = COMMANDS[name]
     parser = Parser(prog=f"levelcrossing {name}", description=text, allow_abbrev=False, add_help=True)
     if fill is None:
@@ -341,12 +353,23 @@ def _print(text: str) -> None:
     sys.stdout.flush()
 
 
-def _progress(text: str) -> None:
-    """Show a line that the next one replaces; nothing when nobody looks."""
-    if sys.stderr.isatty():
+class Progress:
+    """A line on standard error that the next one replaces; nothing when nobody looks."""
+
+    def __init__(self) -> None:
+        self._shown = False
+
+    def __call__(self, text: str) -> None:
+        """Show a line; an empty text clears it."""
+        if (not text and not self._shown) or not sys.stderr.isatty() or os.environ.get("TERM") == "dumb":
+            return
         width = shutil.get_terminal_size((80, 24)).columns - 1
         sys.stderr.write("\r\x1b[K" + show(text, width))
         sys.stderr.flush()
+        self._shown = bool(text)
+
+
+_progress = Progress()
 
 
 def _tell(text: str) -> None:

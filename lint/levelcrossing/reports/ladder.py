@@ -15,6 +15,9 @@ from levelcrossing.reports.phrases import span, volts
 # Beyond a limit by less than this is rounding [V].
 _HAIR_VOLTS = 5e-3
 
+# A clamp diode that takes less does not act on the level [A].
+_CLAMP_AMPS = 10e-6
+
 COMFORTABLE_VOLTS = 0.2
 """A margin above this is not worth a remark under a ladder [V]."""
 
@@ -220,5 +223,7 @@ def _notes(solved: Solved) -> tuple[str, ...]:
             short = margin.spread.low < -_HAIR_VOLTS
             size = f"{volts(abs(margin.spread.low))} V {lost if short else spare}"
             corner = f" ({margin.worst_corner})" if margin.worst_corner else ""
+            if margin is state.rating_margin and state.clamp_amps.high > _CLAMP_AMPS:
+                corner += ", its own clamp diode left aside"
             notes.append(f"driver {name}: {size}{corner}" if short else f"driver {name}: only {size}{corner}")
     return tuple(notes)
