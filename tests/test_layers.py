@@ -30,7 +30,7 @@ LAYERS: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "settings": (("declared", "symbolfields", "settings"), WORDS),
     "reading": (("read", "read.*"), WORDS),
     "rails": (("rail_*", "rails"), FACTS),
-    "pins": (("pins",), FACTS),
+    "pins": (("pins", "directions"), FACTS),
     "islands": (("islands",), FACTS),
     "crossings": (("crossings", "shifters"), (*FACTS, "pins", "islands")),
     # The numerical core solves circuits and has never heard of boards: of the vocabulary it knows types alone.
