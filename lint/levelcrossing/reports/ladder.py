@@ -209,8 +209,9 @@ def _notes(solved: Solved) -> tuple[str, ...]:
     for name, state in sorted(solved.states.items()):
         if not state.solved:
             continue
+        lead = "" if solved.crossing.driver is None else f"driver {name}: "
         if state.floating:
-            notes.append(f"driver {name}: nothing sets the voltage at the receiver")
+            notes.append(f"{lead}nothing sets the voltage at the receiver")
             continue
         for margin, lost, spare in (
             (state.rating_margin, "above what the receiver bears", "below what the receiver bears"),
@@ -225,5 +226,5 @@ def _notes(solved: Solved) -> tuple[str, ...]:
             corner = f" ({margin.worst_corner})" if margin.worst_corner else ""
             if margin is state.rating_margin and state.clamp_amps.high > _CLAMP_AMPS:
                 corner += ", its own clamp diode left aside"
-            notes.append(f"driver {name}: {size}{corner}" if short else f"driver {name}: only {size}{corner}")
+            notes.append(f"{lead}{'' if short else 'only '}{size}{corner}")
     return tuple(notes)

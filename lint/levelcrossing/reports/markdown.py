@@ -75,7 +75,7 @@ def _board(review: Review, base: str) -> list[str]:
     reasons = phrases.reasons(review)
     if reasons:
         lines += ["### Not judged", ""]
-        lines += [f"- {len(pins)}: {clean(why)} ({clean(phrases.listed(pins, 6))})" for why, pins in reasons[:12]]
+        lines += [f"- {len(pins)}: {clean(why)} ({clean(phrases.places(pins, 6))})" for why, pins in reasons[:12]]
         if len(reasons) > 12:
             lines.append(f"- and {phrases.count(len(reasons) - 12, 'other reason')}")
         lines.append("")
@@ -104,8 +104,9 @@ def _finding(finding: Finding, base: str) -> list[str]:
     if finding.remedy:
         further.append(f"  - remedy: {clean(finding.remedy)}")
     if finding.also:
-        further.append(f"  - also at: {clean(phrases.listed(finding.also, 12))}")
-    further.append(f"  - rests on: {phrases.BASIS[finding.basis.value]}")
+        further.append(f"  - also at: {clean(phrases.places(finding.also, 12))}")
+    if phrases.grounds_known(finding):
+        further.append(f"  - rests on: {phrases.BASIS[finding.basis.value]}")
     if path and finding.at and finding.at.line:
         further.append(f"  - at: {code_span(f'{path}:{finding.at.line}')}")
     return [*lines, "", *further]

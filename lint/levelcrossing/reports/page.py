@@ -127,12 +127,13 @@ class _Page:
     def _finding(self, number: int, finding: Finding) -> list[str]:
         one = self._crossing(finding)
         items = [("only if", clean(finding.condition)), ("remedy", clean(finding.remedy))]
-        items.append(("also at", clean(phrases.listed(finding.also, 24))))
+        items.append(("also at", clean(phrases.places(finding.also, 24))))
         items.append(("rule", f'<a href="#rule-{clean(finding.rule)}">{clean(finding.rule)}</a>'))
         grounds = evidence(one.solved, self.review) if one is not None else []
         grounds += [source for source in finding.sources if not any(source in ground for ground in grounds)]
         grounds = [phrases.BASIS[finding.basis.value], *dict.fromkeys(grounds)]
-        items.append(("rests on", "<br>".join(clean(ground) for ground in grounds)))
+        if phrases.grounds_known(finding):
+            items.append(("rests on", "<br>".join(clean(ground) for ground in grounds)))
         if finding.at is not None and finding.at.line:
             items.append(("stands at", _code(f"{finding.at.file}:{finding.at.line}")))
         lines = [
@@ -215,7 +216,7 @@ class _Page:
         lines: list[str] = []
         reasons = phrases.reasons(review)
         if reasons:
-            rows = [(str(len(pins)), clean(why), clean(phrases.listed(pins, 40))) for why, pins in reasons]
+            rows = [(str(len(pins)), clean(why), clean(phrases.places(pins, 40))) for why, pins in reasons]
             lines += ["<h2>Not judged</h2>", *_table(("pins", "reason", "which"), rows)]
         for title, texts in (
             ("Taken for granted", review.assumptions),

@@ -6,13 +6,14 @@ import math
 from collections.abc import Iterable
 
 from levelcrossing.model import Finding, Outcome, Review, Spread
+from levelcrossing.units import natural_key
 
 NOTICE = "This is a review of logic levels, not a safety approval: what it did not judge is yours to judge."
 
 MEANING = {
     Outcome.DAMAGE: "a rating is exceeded",
     Outcome.MALFUNCTION: "a level is not guaranteed",
-    Outcome.MARGINAL: "holds nominally, not at every corner",
+    Outcome.MARGINAL: "holds nominally, with too little to spare",
     Outcome.UNKNOWN: "could not be judged",
     Outcome.SOUND: "holds at every corner",
 }
@@ -65,11 +66,52 @@ def count(number: int, word: str, words: str = "") -> str:
     return f"{number} {word if number == 1 else words or word + 's'}"
 
 
-def listed(items: Iterable[str], most: int = 12) -> str:
-    """Return items with commas; what is beyond ``most`` is counted."""
-    everything = list(items)
-    shown = ", ".join(everything[:most])
-    return shown + (f" and {len(everything) - most} more" if len(everything) > most else "")
+def places(names: Iterable[str], most: int = 12) -> str:
+    """Return places in few words: pins of one part together, runs of three numbers and more as a range.
+
+    ``places(["J1.1", "J1.2", "J1.3", "U2.7"])`` is ``J1 pins 1 to 3, U2.7``; what is beyond ``most`` items is counted.
+    """
+    pins: dict[str, list[str]] = {}
+    for name in dict.fromkeys(names):
+        part, dot, pin = name.rpartition(".")
+        pins.setdefault(part if dot else name, []).extend([pin] if dot else [])
+    words: list[tuple[str, int]] = []
+    for part, numbers in pins.items():
+        runs = _runs(sorted(numbers, key=natural_key))
+        for index, (text, size) in enumerate(runs):
+            if len(numbers) < 2:
+                words.append((f"{part}.{text}", 1))
+            else:
+                words.append((text if index else f"{part} pins {text}", size))
+        if not numbers:
+            words.append((part, 1))
+    shown = ", ".join(word for word, _ in words[:most])
+    rest = sum(size for _, size in words[most:])
+    return shown + (f" and {rest} more" if rest else "")
+
+
+def _runs(numbers: list[str]) -> list[tuple[str, int]]:
+    """Return pin numbers with runs of three and more as ``1 to 3``, each with how many pins it stands for."""
+    runs: list[list[str]] = []
+    for number in numbers:
+        previous = runs[-1][-1] if runs else ""
+        if _counts(number) and _counts(previous) and int(number) == int(previous) + 1:
+            runs[-1].append(number)
+        else:
+            runs.append([number])
+    texts: list[tuple[str, int]] = []
+    for run in runs:
+        texts += [(f"{run[0]} to {run[-1]}", len(run))] if len(run) > 2 else [(number, 1) for number in run]
+    return texts
+
+
+def _counts(number: str) -> bool:
+    return number.isascii() and number.isdigit() and len(number) < 6
+
+
+def grounds_known(finding: Finding) -> bool:
+    """Tell whether a finding rests on figures at all; that something is not known rests on none."""
+    return not (finding.outcome is Outcome.UNKNOWN and finding.crossing is None and not finding.sources)
 
 
 def spot(finding: Finding) -> str:

@@ -112,7 +112,7 @@ def message(finding: Finding) -> str:
     if finding.remedy:
         lines.append(f"Remedy: {clean(finding.remedy)}")
     if finding.also:
-        lines.append(f"Also at {clean(phrases.listed(finding.also, 16))}.")
+        lines.append(f"Also at {clean(phrases.places(finding.also, 16))}.")
     return "\n".join(lines)
 
 

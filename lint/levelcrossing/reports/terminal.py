@@ -10,7 +10,7 @@ from levelcrossing.model import Finding, Outcome, Rail, Review, ReviewedCrossing
 from levelcrossing.reports import phrases
 from levelcrossing.reports.clean import terminal as clean
 from levelcrossing.reports.ladder import Ladder, ladder
-from levelcrossing.reports.phrases import NOTICE, count, listed, spot, volts
+from levelcrossing.reports.phrases import NOTICE, count, spot, volts
 from levelcrossing.reports.sheet import Segment, Sheet, cells
 
 STYLES = {
@@ -229,8 +229,8 @@ class _Board:
         if finding.remedy:
             self._labelled("remedy", finding.remedy)
         if finding.also:
-            self._labelled("also at", listed(finding.also, 16))
-        for index, ground in enumerate(self._grounds(finding)):
+            self._labelled("also at", phrases.places(finding.also))
+        for index, ground in enumerate(self._grounds(finding) if phrases.grounds_known(finding) else ()):
             self._labelled("" if index else "rests on", ground)
         self._ladder(number, finding)
 
@@ -325,7 +325,7 @@ class _Board:
             self.sheet.text(f"{cover.better_than_assumed} of them on better than assumed figures.", indent=2)
         most = None if self.everything else 8
         groups = phrases.reasons(self.review)
-        self.sheet.rows([(str(len(pins)), f"{why}: {listed(pins, 8)}") for why, pins in groups[:most]])
+        self.sheet.rows([(str(len(pins)), f"{why}: {phrases.places(pins, 8)}") for why, pins in groups[:most]])
         if most is not None and len(groups) > most:
             rest = sum(len(pins) for _, pins in groups[most:])
             self.sheet.text(
@@ -373,7 +373,7 @@ def paste_lines(review: Review) -> list[str]:
     nets = [net for net, _ in review.rails.unknown]
     if not nets:
         return []
-    return ["[rails]", *(f'{_toml(net)} = "?"  # volts' for net in nets[:12])]
+    return ["[rails]", *(f'{_toml(net)} = "?" # volts' for net in nets[:12])]
 
 
 def _toml(text: str) -> str:
@@ -464,8 +464,8 @@ def draw_ladder(sheet: Sheet, drawing: Ladder, glyphs: Glyphs) -> None:
     for _, value in drawing.limits:
         view[column(value)] = (glyphs.edge, "")
     sheet.line((_fit(f"     takes    {clean(drawing.reader)}", lead), ""), *_joined(view))
-    limits = "   ".join(f"{name} {volts(value)}" for name, value in drawing.limits)
-    sheet.text(f"{limits} V, each at its least favourable corner", indent=lead, style="dim")
+    limits = ", ".join(f"{name} {volts(value)}" for name, value in drawing.limits)
+    sheet.text(f"{limits} V (each at its least favourable corner)", indent=lead, style="dim")
     if drawing.source:
         sheet.text(f"set by {drawing.source}", indent=lead)
     for note in drawing.notes:

@@ -76,6 +76,6 @@ def _command(level: str, finding: Finding, review: Review, base: str) -> str:
     if finding.remedy:
         texts.append(f"Remedy: {visible(finding.remedy)}")
     if finding.also:
-        texts.append(f"Also at {visible(phrases.listed(finding.also, 12))}.")
+        texts.append(f"Also at {visible(phrases.places(finding.also, 12))}.")
     written = ",".join(f"{name}={annotation_property(value)}" for name, value in properties)
     return f"::{level} {written}::{annotation(chr(10).join(texts))}"
