@@ -51,7 +51,7 @@ def test_the_rest_is_said_too() -> None:
     text = report()
     for words in (
         'VMOT  [rails] "VMOT" = "24"',
-        '"VMOT" = "?" # volts',
+        '"VMOT" = "?"',
         "17 of 20 signal pins judged",
         "2  the level on the other side is not known: J1 pins 1, 2",
         "accepted by waiver",

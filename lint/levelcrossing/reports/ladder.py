@@ -6,11 +6,12 @@ One scale for all rows. ``terminal.py`` draws it with characters, ``page.py`` as
 from __future__ import annotations
 
 import math
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 from levelcrossing.model import SolvedCrossing as Solved
 from levelcrossing.model import Spread, StateResult
-from levelcrossing.reports.phrases import span, volts
+from levelcrossing.reports.phrases import volts
 
 # Beyond a limit by less than this is rounding [V].
 _HAIR_VOLTS = 5e-3
@@ -30,13 +31,13 @@ class Bar:
     ----------
     low, high : float
         Ends [V].
-    name : str
-        ``high`` or ``low``.
+    over : bool
+        It passes what the receiver bears, at some corner.
     """
 
     low: float
     high: float
-    name: str
+    over: bool = False
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -119,7 +120,7 @@ def ladder(solved: Solved) -> Ladder | None:
         return None
     crossing = solved.crossing
     sent = _bars(states, lambda state: state.driver_volts)
-    arrives = _bars(states, lambda state: state.open_volts)
+    arrives = _bars(states, lambda state: state.open_volts, _passes)
     if not arrives:
         return None
     vil = solved.vil.low if solved.vil else None
@@ -156,24 +157,32 @@ def ladder(solved: Solved) -> Ladder | None:
     )
 
 
-def _bars(states: list[StateResult], pick: object) -> tuple[Bar, ...]:
-    assert callable(pick)
-    bars = []
-    for state in states:
-        spread: Spread = pick(state)
-        if not all(math.isfinite(value) for value in (spread.low, spread.nominal, spread.high)):
-            continue
-        name = "released" if state.state == "released" else state.state
-        bars.append(Bar(low=spread.low, high=spread.high, name=name))
-    return tuple(sorted(bars, key=lambda bar: (bar.low, bar.high)))
+def _passes(state: StateResult) -> bool:
+    margin = state.rating_margin
+    return margin is not None and margin.spread.low < -_HAIR_VOLTS
+
+
+def _bars(
+    states: Sequence[StateResult],
+    pick: Callable[[StateResult], Spread],
+    over: Callable[[StateResult], bool] = lambda state: False,
+) -> tuple[Bar, ...]:
+    """Return the ranges of all states from low to high; ranges that overlap are one."""
+    bars: list[Bar] = []
+    found = [(pick(state), over(state)) for state in states if not state.floating]
+    finite = [(spread, passes) for spread, passes in found if math.isfinite(spread.low) and math.isfinite(spread.high)]
+    for spread, passes in sorted(finite, key=lambda pair: (pair[0].low, pair[0].high)):
+        if bars and spread.low <= bars[-1].high:
+            last = bars.pop()
+            bars.append(Bar(low=last.low, high=max(last.high, spread.high), over=last.over or passes))
+        else:
+            bars.append(Bar(low=spread.low, high=spread.high, over=passes))
+    return tuple(bars)
 
 
 def _figures(bars: tuple[Bar, ...]) -> str:
-    texts = []
-    for bar in bars:
-        spread = Spread(low=bar.low, nominal=bar.low, high=bar.high)
-        texts.append(span(spread, "").strip().replace("  ", " ").replace(" to ", "..").rstrip())
-    return ", ".join(texts) + " V"
+    ends = [(volts(bar.low), volts(bar.high)) for bar in bars]
+    return ", ".join(low if low == high else f"{low}..{high}" for low, high in ends) + " V"
 
 
 def _step(reach: float) -> float:

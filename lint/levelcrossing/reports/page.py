@@ -14,7 +14,7 @@ from levelcrossing.reports.page_style import STYLE
 from levelcrossing.reports.terminal import crossing_levels, evidence, paste_lines
 from levelcrossing.rulebook import RuleFile
 
-_LEFT, _RIGHT, _WIDE = 120, 600, 740  # edges of the scale and width of the picture [picture units]
+_LEFT, _RIGHT, _WIDE = 120, 560, 800  # edges of the scale and width of the picture [picture units]
 
 
 def page_report(reviews: Sequence[Review], rules: Sequence[RuleFile]) -> str:
@@ -205,9 +205,9 @@ class _Page:
             ]
             lines += ["<h2>Supplies</h2>", *_table(("net", "voltage", "basis", "evidence"), rows)]
         if self.review.rails.unknown:
-            rows2 = [(_code(net), clean(settle)) for net, settle in self.review.rails.unknown]
+            rows2 = [(_code(net), clean(phrases.settling(settle))) for net, settle in self.review.rails.unknown]
             lines += ["<h2>Supplies without a voltage</h2>", *_table(("net", "what would settle it"), rows2)]
-            lines.append("<p>Lines for levelcrossing.toml, to be completed:</p>")
+            lines.append("<p>Lines for levelcrossing.toml; put the volts, or a range such as 4.4..5.25:</p>")
             lines.append("<pre>" + "\n".join(clean(line) for line in paste_lines(self.review)) + "</pre>")
         return lines
 
@@ -262,7 +262,6 @@ def picture(drawing: Ladder) -> list[str]:
 
     top = 26
     floor = top + 30 * (len(drawing.rows) + 1)
-    limit = next((value for name, value in drawing.limits if name == "max"), None)
     shapes: list[str] = []
     words = {"low": "low", "between": "?", "high": "high", "over": "too much"}
     for zone in drawing.zones:
@@ -285,10 +284,9 @@ def picture(drawing: Ladder) -> list[str]:
         y = top + 8 + 30 * number
         shapes.append(f'<text x="0" y="{y + 11}">{row.label} {clean(_short(row.who))}</text>')
         for bar in row.bars:
-            over = row.label == "arrives" and limit is not None and bar.high > limit
             width = max(3.0, round(x(bar.high) - x(bar.low), 1))
             shapes.append(
-                f'<rect class="bar{" over" if over else ""}" x="{x(bar.low)}" y="{y}" width="{width}" height="14" rx="2"/>'
+                f'<rect class="bar{" over" if bar.over else ""}" x="{x(bar.low)}" y="{y}" width="{width}" height="14" rx="2"/>'
             )
         shapes.append(f'<text x="{_RIGHT + 14}" y="{y + 11}">{clean(row.figures)}</text>')
     shapes.append(f'<text x="0" y="{floor - 9}">takes {clean(_short(drawing.reader))}</text>')

@@ -33,7 +33,7 @@ dl { display: grid; grid-template-columns: 6rem 1fr; gap: .15rem .8rem; margin: 
 dt { color: var(--soft); } dd { margin: 0; }
 a { color: inherit; }
 figure { margin: .8rem 0 0; overflow-x: auto; } figcaption { color: var(--soft); font-size: .9rem; }
-svg { display: block; width: 100%; min-width: 34rem; height: auto; max-width: 46rem; }
+svg { display: block; width: 100%; min-width: 36rem; height: auto; max-width: 50rem; }
 svg text { font: 12px system-ui, sans-serif; fill: var(--ink); } svg .quiet { fill: var(--soft); }
 svg .bar { fill: var(--bar); } svg .bar.over { fill: var(--damage); } svg .axis { stroke: var(--line); }
 svg .limit { stroke: var(--ink); stroke-dasharray: 3 2; }

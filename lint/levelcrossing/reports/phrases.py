@@ -109,6 +109,12 @@ def _counts(number: str) -> bool:
     return number.isascii() and number.isdigit() and len(number) < 6
 
 
+def settling(settle: str) -> str:
+    """Return what would settle a supply's voltage, without the settings line that stands ready to paste elsewhere."""
+    head, _, rest = settle.partition("; ")
+    return rest if rest and head.startswith("under [rails]") else settle
+
+
 def grounds_known(finding: Finding) -> bool:
     """Tell whether a finding rests on figures at all; that something is not known rests on none."""
     return not (finding.outcome is Outcome.UNKNOWN and finding.crossing is None and not finding.sources)

@@ -308,12 +308,13 @@ class _Board:
         unknown = self.review.rails.unknown
         if unknown:
             self._section("supplies without a voltage", "what would settle each")
-            self.sheet.rows([(net, settle) for net, settle in unknown])
+            self.sheet.rows([(net, phrases.settling(settle)) for net, settle in unknown])
         lines = paste_lines(self.review)
         if lines:
             self.sheet.blank()
             self.sheet.text(
-                "Put the voltages you know into levelcrossing.toml beside the project, for example:", indent=2
+                "Lines for levelcrossing.toml beside the project; put the volts, or a range such as 4.4..5.25:",
+                indent=2,
             )
             for line in lines:
                 self.sheet.text(line, indent=4, style="title")
@@ -373,7 +374,7 @@ def paste_lines(review: Review) -> list[str]:
     nets = [net for net, _ in review.rails.unknown]
     if not nets:
         return []
-    return ["[rails]", *(f'{_toml(net)} = "?" # volts' for net in nets[:12])]
+    return ["[rails]", *(f'{_toml(net)} = "?"' for net in nets[:12])]
 
 
 def _toml(text: str) -> str:
@@ -444,7 +445,7 @@ def draw_ladder(sheet: Sheet, drawing: Ladder, glyphs: Glyphs) -> None:
         for bar in row.bars:
             first, last = column(bar.low), column(bar.high)
             for at in range(first, max(last, first) + 1):
-                over = row.label == "arrives" and limit is not None and drawing.bottom + at / room * reach > limit
+                over = bar.over and limit is not None and drawing.bottom + at / room * reach > limit
                 paint[at] = (glyphs.bar, "over" if over else "bar")
         label = f"     {row.label:<8} {clean(row.who)}"
         sheet.line((_fit(label, lead), ""), *_joined(paint), ("  " + row.figures if beside else "", ""))
