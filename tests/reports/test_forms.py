@@ -20,9 +20,12 @@ from levelcrossing.reports.page import page_report
 from levelcrossing.reports.quality import quality_report
 from levelcrossing.reports.sarif import sarif_report
 from levelcrossing.reports.workflow import workflow_report
+from levelcrossing.review import review
 from levelcrossing.rulebook import load_rules
+from levelcrossing.settings import load_settings
 
 RULES = load_rules()
+CHECKOUT = Path(__file__).resolve().parents[2]
 
 
 def many(outcome: Outcome, count: int) -> Review:
@@ -113,6 +116,14 @@ def test_sarif_fits_the_published_schema(reviews: list[Review]) -> None:
     log = json.loads(sarif_report(reviews, RULES))
     assert [error.message for error in VALIDATOR.iter_errors(log)] == []
     assert len(log["runs"]) == 1
+
+
+@pytest.mark.parametrize("path", sorted((CHECKOUT / "sample_boards").rglob("*.net")), ids=lambda path: path.stem)
+def test_sarif_of_the_sample_boards_fits_the_published_schema(path: Path) -> None:
+    done = review(str(path), load_settings(str(path)))
+    log = json.loads(sarif_report([done], RULES, base=str(CHECKOUT)))
+    assert [error.message for error in VALIDATOR.iter_errors(log)] == []
+    assert len(log["runs"][0]["results"]) == len(done.findings)
 
 
 def test_the_schema_refuses_what_is_wrong() -> None:

@@ -32,7 +32,7 @@ code, .place { font-family: ui-monospace, monospace; font-size: .92em; }
 dl { display: grid; grid-template-columns: 6rem 1fr; gap: .15rem .8rem; margin: .5rem 0 0; }
 dt { color: var(--soft); } dd { margin: 0; }
 a { color: inherit; }
-figure { margin: .8rem 0 0; overflow-x: auto; } figcaption { color: var(--soft); font-size: .9rem; }
+figure { margin: .8rem 0 0; overflow-x: auto; } figcaption { color: var(--soft); font-size: .88em; }
 svg { display: block; width: 100%; min-width: 36rem; height: auto; max-width: 50rem; }
 svg text { font: 12px system-ui, sans-serif; fill: var(--ink); } svg .quiet { fill: var(--soft); }
 svg .bar { fill: var(--bar); } svg .bar.over { fill: var(--damage); } svg .axis { stroke: var(--line); }
@@ -42,7 +42,7 @@ svg .zone-between { fill: var(--zone-between); } svg .zone-over { fill: var(--zo
 .wide { overflow-x: auto; }
 table { border-collapse: collapse; width: 100%; font-size: .93rem; background: var(--card); }
 th, td { text-align: left; vertical-align: top; padding: .3rem .6rem; border: 1px solid var(--line); }
-th { font-weight: 600; }
+th { font-weight: 600; } th, td { overflow-wrap: normal; } td code, td .place { overflow-wrap: anywhere; }
 pre { white-space: pre-wrap; background: var(--card); border: 1px solid var(--line); padding: .7rem; border-radius: .4rem; }
 details { margin: .4rem 0; } summary { cursor: pointer; }
 .notice { margin-top: 2.5rem; border-top: 1px solid var(--line); padding-top: .8rem; color: var(--soft); }
