@@ -14,7 +14,7 @@ from markdown_it import MarkdownIt
 from sample_review import sample_review
 
 from levelcrossing.railtree import rail_tree
-from levelcrossing.reports.clean import annotation, annotation_property, place_path, visible
+from levelcrossing.reports.clean import annotation, annotation_property, markdown, place_path, visible
 from levelcrossing.reports.jsonform import json_report
 from levelcrossing.reports.junit import junit_report
 from levelcrossing.reports.markdown import markdown_report
@@ -30,6 +30,19 @@ RULES = load_rules()
 BASE = "/home/guest/board"
 
 every_text = pytest.mark.parametrize("text", HOSTILE, ids=range(len(HOSTILE)))
+
+
+@pytest.mark.parametrize(
+    "text", ["1. one", "2) two", "- item", "-", "---", "===", "+ plus", "# head", "> quote", "    code", "1.", "10)"]
+)
+def test_no_sentence_begins_a_block(text: str) -> None:
+    tokens = MarkdownIt("commonmark").enable("table").parse(f"above\n\n{markdown(text)}\n\nabove\n{markdown(text)}\n")
+    assert {token.type for token in tokens} == {"paragraph_open", "inline", "paragraph_close"}
+
+
+def test_plain_sentences_stay_readable() -> None:
+    sentence = "U1.5 (TX) gives 3.13 V against 3.67 V at worst; add a 2-input gate."
+    assert markdown(sentence) == "`U1.5` (TX) gives 3.13 V against 3.67 V at worst; add a `2-input` gate."
 
 
 def test_there_are_enough_of_them() -> None:

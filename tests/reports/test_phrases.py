@@ -16,6 +16,8 @@ from levelcrossing.reports.phrases import places, plain_number, quantity, span
         (["J1.1", "J1.2", "J1.3", "U2.7"], "J1 pins 1 to 3, U2.7"),
         (["J1.2", "J1.1"], "J1 pins 1, 2"),
         (["J1.10", "J1.9", "J1.8", "J1.A4"], "J1 pins 8 to 10, A4"),
+        (["P1.A2", "P1.A3", "P1.A4", "P1.B5", "P1.C6"], "P1 pins A2 to A4, B5, C6"),
+        (["P1.01", "P1.02", "P1.03"], "P1 pins 01, 02, 03"),
         (["5.0V/3.3V1.4"], "5.0V/3.3V1.4"),
         (["R7", "R8"], "R7, R8"),
         (["U1.1", "U1.1"], "U1.1"),

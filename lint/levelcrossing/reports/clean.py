@@ -94,7 +94,8 @@ def annotation_property(text: str) -> str:
 
 _PLAIN_WORD = re.compile(r"[A-Za-z]+(?:['’-][A-Za-z]+)*|[+-]?[0-9]+(?:\.[0-9]+)?|[%±≤≥=×·…Ωµ°-]|[–—]")
 _EDGES = re.compile(r"^([(\"']*)(.*?)([)\"',;:.!?]*)$", re.DOTALL)
-_PUNCTUATION = re.compile(r"([!-/:-@\[-`{-~])")
+# What Markdown may act on within a line; brackets that open nothing, full stops and the like stay readable.
+_ACTIVE = re.compile(r"([\\`*_{}\[\]<>#+!|~&$@:^])")
 
 
 def code_span(text: str) -> str:
@@ -115,16 +116,22 @@ def markdown(text: str) -> str:
     alone still become links where a host looks for bare addresses after parsing.
     """
     words: list[str] = []
-    for word in visible(text).split(" "):
+    for word in visible(text).strip().split(" "):
         match = _EDGES.match(word)
         assert match is not None
         before, core, after = match.groups()
         if not core or _PLAIN_WORD.fullmatch(core):
-            words.append(_PUNCTUATION.sub(r"\\\1", word))
+            words.append(_ACTIVE.sub(r"\\\1", word))
         else:
-            words.append(_PUNCTUATION.sub(r"\\\1", before) + code_span(core) + _PUNCTUATION.sub(r"\\\1", after))
-    # Two code spans in a row would run together ("`a``b`") only without the space that always stands between words.
-    return " ".join(words)
+            words.append(_ACTIVE.sub(r"\\\1", before) + code_span(core) + _ACTIVE.sub(r"\\\1", after))
+    text = " ".join(words)
+    # At the start of a block these would begin a list or underline a heading.
+    return re.sub(r"^(\s*)(?:([-=])|(\d{1,9})([.)]))(?=\W|$)", _inactive, text)
+
+
+def _inactive(match: re.Match[str]) -> str:
+    space, dash, number, mark = match.groups()
+    return f"{space}\\{dash}" if dash else f"{space}{number}\\{mark}"
 
 
 def place_path(file: str, base: str = "") -> str | None:

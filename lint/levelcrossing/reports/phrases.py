@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Iterable
 
 from levelcrossing.model import Finding, Outcome, Review, Spread
@@ -94,8 +95,7 @@ def _runs(numbers: list[str]) -> list[tuple[str, int]]:
     """Return pin numbers with runs of three and more as ``1 to 3``, each with how many pins it stands for."""
     runs: list[list[str]] = []
     for number in numbers:
-        previous = runs[-1][-1] if runs else ""
-        if _counts(number) and _counts(previous) and int(number) == int(previous) + 1:
+        if runs and _follows(runs[-1][-1], number):
             runs[-1].append(number)
         else:
             runs.append([number])
@@ -105,8 +105,13 @@ def _runs(numbers: list[str]) -> list[tuple[str, int]]:
     return texts
 
 
-def _counts(number: str) -> bool:
-    return number.isascii() and number.isdigit() and len(number) < 6
+_COUNTING = re.compile(r"([A-Za-z]{0,3})(0|[1-9][0-9]{0,4})")
+
+
+def _follows(previous: str, number: str) -> bool:
+    """Tell whether one pin number comes right after another: ``A4`` after ``A3``."""
+    one, two = _COUNTING.fullmatch(previous), _COUNTING.fullmatch(number)
+    return one is not None and two is not None and one[1] == two[1] and int(two[2]) == int(one[2]) + 1
 
 
 def settling(settle: str) -> str:
