@@ -42,8 +42,10 @@ def check(case: CaseFile) -> Iterator[Finding]:
 
 
 def _open_drain(solved: SolvedCrossing) -> bool:
-    driver = solved.crossing.driver
-    return driver is not None and driver.drive is not None and (driver.drive.style == "open-drain" or not driver.when)
+    ends = (solved.crossing.driver, solved.crossing.receiver)
+    return any(
+        pin is not None and pin.drive is not None and (pin.drive.style == "open-drain" or not pin.when) for pin in ends
+    )
 
 
 def _fails(solved: SolvedCrossing) -> bool:

@@ -418,7 +418,9 @@ class _Tracing:
                 continue
             supplied = [pin for net in nets for pin in self.scene.supplies(net) if self._matters(pin.part)]
             pulled = [net for net in nets if self.scene.pulled_supply(net)]
-            if not (supplied and self._sources_on(nets)) and not pulled:
+            # What one part alone hangs on may be its own inner supply; several parts share a rail.
+            shared = len({pin.part for pin in supplied}) > 1
+            if not (supplied and (shared or self._sources_on(nets))) and not pulled:
                 continue
             net = self._chief([net for net in nets if net in by_net])
             whom = [f"{pin.part} ({pin.name or pin.number})" for pin in supplied]

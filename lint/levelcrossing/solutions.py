@@ -309,7 +309,9 @@ class _Probe:
             if self.state != "released" and pin.drive is not None:
                 driver_amps = _wide(solution.branch_amps(f"output of {pin.part}.{pin.number}")[1], members)
         loose = bare.floats.get(receiver.net)
-        floating = bool(loose is not None and bool(_wide_flag(loose, members)[0]))
+        # Once its own clamp is left aside, a pin that nothing else touches hangs in the air.
+        alone = receiver.net not in bare.network.nodes
+        floating = alone or bool(loose is not None and bool(_wide_flag(loose, members)[0]))
         return _Answer(
             receiver=volts,
             open=opened,
