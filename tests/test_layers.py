@@ -39,7 +39,7 @@ LAYERS: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
         WORDS,
     ),
     "circuits": (("corners", "circuits"), (*WORDS, "numerics")),
-    "solutions": (("solutions", "offstates", "remedies"), SOLVING),
+    "solutions": (("solutions", "offstates", "remedies", "speeds", "busrates"), (*SOLVING, "kinds of parts")),
     "judging": (("rulebook", "scope", "likeness", "waivers"), (*WORDS, "settings")),
     "review": (
         ("review",),
@@ -64,7 +64,7 @@ OUTSIDE = {
     "rich": ("reports.terminal", "reports.screen"),
     "numpy": (
         *("network", "elimination", "arrays", "solve", "waveforms", "transient", "bitrate"),
-        *("corners", "circuits", "solutions", "offstates"),
+        *("corners", "circuits", "solutions", "offstates", "speeds"),
     ),
 }
 # Part of the standard library: the modules that may import it. No network at all.

@@ -7,7 +7,7 @@ from dataclasses import replace
 from pathlib import Path
 
 from levelcrossing import crossings as crossing_survey
-from levelcrossing import directions, offstates, remedies, rulebook, scope, solutions, tradebook, waivers
+from levelcrossing import directions, offstates, remedies, rulebook, scope, solutions, speeds, tradebook, waivers
 from levelcrossing import islands as island_survey
 from levelcrossing import pins as pin_models
 from levelcrossing import rails as rail_tracing
@@ -70,6 +70,7 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
     islands = island_survey.find_islands(board, rails, pins, elements)
     survey = crossing_survey.find_crossings(board, rails, pins, facts, islands)
     solved = solutions.solve_crossings(survey.crossings, islands, rails, settings)
+    solved = speeds.with_speeds(solved, islands, rails, book.buses, settings)
     solved = tuple(
         replace(one, proposal=remedies.propose(one), off_states=offstates.power_down(one, islands, rails))
         for one in solved

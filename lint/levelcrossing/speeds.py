@@ -1,0 +1,276 @@
+"""How fast each crossing is good for, and how fast it must be.
+
+The circuit is that of the DC solution with its capacitances: pins, transistors, diodes, stray. A driver's two states are
+two paths that open and close; an open drain has the lower one only.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+import numpy.typing as npt
+
+from levelcrossing import busrates, devices
+from levelcrossing.bitrate import Timing, TimingJob, timings
+from levelcrossing.circuits import MOST_NODES, Builder, level_at
+from levelcrossing.corners import HIGH, LOW, NOMINAL, Codes, Variable
+from levelcrossing.model import (
+    BusFacts,
+    Crossing,
+    Element,
+    Island,
+    PinModel,
+    Rails,
+    Settings,
+    SolvedCrossing,
+    Speed,
+    Spread,
+    TranslatorFacts,
+)
+from levelcrossing.network import Network
+from levelcrossing.solutions import neighbourhood, with_end
+from levelcrossing.units import format_si
+
+Vector = npt.NDArray[np.float64]
+HIGH_PATH, LOW_PATH = "high output", "low output"
+
+
+def with_speeds(
+    solved: Sequence[SolvedCrossing],
+    islands: Sequence[Island],
+    rails: Rails,
+    buses: Sequence[BusFacts],
+    settings: Settings,
+) -> tuple[SolvedCrossing, ...]:
+    """Time every crossing whose levels are reached at the usual values.
+
+    Parameters
+    ----------
+    solved : sequence of SolvedCrossing
+        With their DC states.
+    islands : sequence of Island
+    rails : Rails
+    buses : sequence of BusFacts
+        To recognise what a line must carry.
+    settings : Settings
+        Rates by net, stray capacitance.
+
+    Returns
+    -------
+    tuple of SolvedCrossing
+        In the order given; ``speed`` stays None where nothing can be timed.
+    """
+    jobs: list[TimingJob] = []
+    wanted: list[tuple[int, Island, float]] = []
+    seen: dict[tuple[object, ...], int] = {}
+    job_of: dict[int, int] = {}
+    for index, one in enumerate(solved):
+        if not _levels_hold(one):
+            continue
+        made = _job(one.crossing, islands, rails, settings)
+        if made is None:
+            continue
+        job, island, load, key = made
+        if key not in seen:
+            seen[key] = len(jobs)
+            jobs.append(job)
+        job_of[index] = seen[key]
+        wanted.append((index, island, load))
+    try:
+        found = timings(jobs) if jobs else []
+    except (ValueError, np.linalg.LinAlgError):
+        return tuple(solved)
+    result = list(solved)
+    for index, island, load in wanted:
+        speed = _speed(solved[index].crossing, island, found[job_of[index]], load, buses, settings)
+        if speed is not None:
+            result[index] = replace(solved[index], speed=speed)
+    return tuple(result)
+
+
+def _levels_hold(one: SolvedCrossing) -> bool:
+    pin = one.crossing.stage_driver or one.crossing.driver
+    if pin is None or pin.drive is None or pin.drive.style == "open-source" or one.crossing.island < 0 or one.why:
+        return False
+    if _accelerated(one):
+        return False
+    margins = [margin for state in one.states.values() for margin in (state.high_margin, state.low_margin) if margin]
+    both = one.high is not None and one.low is not None
+    return both and len(one.states) == 2 and all(margin.spread.nominal > 0 for margin in margins)
+
+
+def _accelerated(one: SolvedCrossing) -> bool:
+    """Tell a translator with edge accelerators: its static circuit says nothing of its speed."""
+    pin = one.crossing.stage_driver
+    weak = pin is not None and pin.drive is not None and pin.drive.low_ohms.nominal >= 500
+    passed = any(
+        isinstance(element.facts, TranslatorFacts) and element.facts.kind == "auto-pass"
+        for element in one.elements
+        if element.part in one.crossing.link
+    )
+    return weak or passed
+
+
+def _job(
+    crossing: Crossing, islands: Sequence[Island], rails: Rails, settings: Settings
+) -> tuple[TimingJob, Island, float, tuple[object, ...]] | None:
+    pin = crossing.stage_driver or crossing.driver
+    assert pin is not None and pin.drive is not None and pin.supply_volts is not None
+    island = with_end(islands[crossing.island], crossing)
+    if len(island.nets) > MOST_NODES:
+        island = neighbourhood(island, crossing)
+    builder = Builder(island, rails, pin, "released", with_capacitance=True, stray_farads=settings.stray_farads)
+    supply = builder.supply_key(pin)
+    reads = builder.supply_key(crossing.receiver)
+    output = builder.plan.variable(f"output of {pin.part}.{pin.number}", Spread(low=0, nominal=1, high=2))
+    if builder.plan.missing or pin.net not in island.nets:
+        return None
+    variables = builder.plan.variables
+    codes = slow_corners(variables, {key for key in (supply, reads) if key is not None})
+    row = next(position for position, variable in enumerate(variables) if variable.key == output)
+    network = builder.plan.network(codes)
+    drive = pin.drive
+    supplies = (
+        builder.plan.values(supply, codes) if supply is not None else np.full(codes.shape[1], pin.supply_volts.nominal)
+    )
+    branches = list(network.branches)
+    fixed = dict(network.fixed)
+    gates = [LOW_PATH]
+    branches.append(devices.gated(LOW_PATH, pin.net, "0", _values(drive.low_ohms, codes[row])))
+    if drive.style == "push-pull":
+        gates.append(HIGH_PATH)
+        fixed["level inside the driver"] = level_at(drive.high, supplies)
+        branches.append(
+            devices.gated(HIGH_PATH, pin.net, "level inside the driver", _values(drive.high_ohms, codes[row]))
+        )
+    low = {devices.gate_of(LOW_PATH): devices.GATE_ON_VOLTS}
+    high = {devices.gate_of(LOW_PATH): devices.GATE_OFF_VOLTS}
+    if HIGH_PATH in gates:
+        low[devices.gate_of(HIGH_PATH)] = devices.GATE_OFF_VOLTS
+        high[devices.gate_of(HIGH_PATH)] = devices.GATE_ON_VOLTS
+    for gate, volts in low.items():
+        fixed[gate] = volts
+    receive = crossing.receiver.receive
+    assert receive is not None and crossing.receiver.supply_volts is not None
+    at = (
+        builder.plan.values(reads, codes)
+        if reads is not None
+        else np.full(codes.shape[1], crossing.receiver.supply_volts.nominal)
+    )
+    job = TimingJob(
+        network=Network(branches=tuple(branches), fixed=fixed),
+        low=low,
+        high=high,
+        watch=crossing.receiver.net,
+        vih_volts=level_at(receive.vih, at),
+        vil_volts=level_at(receive.vil, at),
+    )
+    farads = [
+        branch.values["farads"]
+        for branch in branches
+        if branch.kind == "capacitor" and crossing.receiver.net in branch.nodes
+    ]
+    load = float(sum(float(np.ravel(value)[0]) for value in farads))
+    return job, island, load, _key(job)
+
+
+def _key(job: TimingJob) -> tuple[object, ...]:
+    """Return what makes two circuits the same, names apart."""
+    plain, names = job.network.canonical()
+    new = {old: name for name, old in names.items()}
+    parts: list[object] = [new[job.watch]]
+    for branch in plain.branches:
+        parts.append((branch.kind, branch.nodes))
+        parts += [(name, np.asarray(value, dtype=float).tobytes()) for name, value in sorted(branch.values.items())]
+    parts += [(node, np.asarray(value, dtype=float).tobytes()) for node, value in sorted(plain.fixed.items())]
+    parts += [np.asarray(job.vih_volts).tobytes(), np.asarray(job.vil_volts).tobytes()]
+    return tuple(parts)
+
+
+def _values(ohms: Spread, codes: Codes) -> Vector:
+    return np.array([ohms.low, ohms.nominal, ohms.high])[codes]
+
+
+def slow_corners(variables: Sequence[Variable], rails: set[str]) -> Codes:
+    """Return the corners that matter for time: usual, fast, and slow at each end of the two supplies.
+
+    Slow is: resistances high, gains low, thresholds high. Shape (variables, members); member 0 is nominal.
+    """
+
+    def code(variable: Variable, slow: bool) -> int:
+        if "gain" in variable.key:
+            return LOW if slow else HIGH
+        return HIGH if slow else LOW
+
+    columns = [[NOMINAL] * len(variables), [code(variable, False) for variable in variables]]
+    for ends in ((LOW, LOW), (LOW, HIGH), (HIGH, LOW), (HIGH, HIGH)):
+        by_rail = dict(zip(sorted(rails), ends, strict=False))
+        columns.append(
+            [
+                by_rail.get(
+                    variable.key,
+                    NOMINAL
+                    if variable.unit == "V" and variable.key not in rails and "threshold" not in variable.key
+                    else code(variable, True),
+                )
+                for variable in variables
+            ]
+        )
+    return np.array(columns, dtype=np.int8).T.reshape(len(variables), len(columns))
+
+
+def _spread(values: Vector) -> Spread:
+    finite = values[np.isfinite(values)]
+    most = float(values.max())
+    least = float(finite.min()) if finite.size else most
+    return Spread(low=least, nominal=float(values[0]), high=most)
+
+
+def _speed(
+    crossing: Crossing, island: Island, timing: Timing, load: float, buses: Sequence[BusFacts], settings: Settings
+) -> Speed | None:
+    if not bool(np.all(timing.solved)) or not math.isfinite(float(timing.bit_s[0])):
+        return None
+    needed = busrates.needed(crossing, buses, settings)
+    worst = float(timing.bit_s.max())
+    usual = float(timing.bit_s[0])
+    return Speed(
+        rise_s=_spread(timing.rise_s),
+        fall_s=_spread(timing.fall_s),
+        delay_high_s=_spread(timing.delay_high_s),
+        delay_low_s=_spread(timing.delay_low_s),
+        usable_bit_s=1.0 / worst if math.isfinite(worst) and worst > 0 else 0.0,
+        nominal_bit_s=1.0 / usual if usual > 0 else 0.0,
+        needed_bit_s=needed.bits_per_second if needed is not None else None,
+        needed_why=needed.why if needed is not None else "",
+        load_farads=load,
+        limit=_limit(crossing, island, timing),
+        rise_30_70_s=_spread(timing.rise_30_70_s),
+    )
+
+
+def _limit(crossing: Crossing, island: Island, timing: Timing) -> str:
+    """Say which edge limits, and through what it runs."""
+    slow_high = float(np.nanmax(timing.delay_high_s)) >= float(np.nanmax(timing.delay_low_s))
+    edge = "rise" if slow_high else "fall"
+    pin = crossing.stage_driver or crossing.driver
+    if bool(np.any(timing.remembers)):
+        return f"what {', '.join(crossing.shifter.parts)} remembers of the bits before"
+    through = _resistor_on(crossing, island, pin, slow_high)
+    if through is not None and through.ohms is not None:
+        return f"the {edge} through {through.part} ({format_si(through.ohms.nominal, 'Ω')})"
+    return f"the {edge} through the output of {pin.part}" if pin is not None else f"the {edge}"
+
+
+def _resistor_on(crossing: Crossing, island: Island, pin: PinModel | None, slow_high: bool) -> Element | None:
+    """Return the resistor that an edge runs through: in the link, or the pull-up of the receiver's net for a rise."""
+    own = [element for element in island.elements if element.kind == "resistor" and element.ohms is not None]
+    series = [element for element in own if element.part in crossing.link]
+    pulls = [element for element in own if crossing.receiver.net in element.nets and element.part not in crossing.link]
+    released = pin is not None and pin.drive is not None and pin.drive.style == "open-drain"
+    passing = crossing.shifter.kind in ("mosfet-pass", "bipolar-pass", "diode", "inverting-stage", "open-drain")
+    candidates = pulls if slow_high and (released or passing) and pulls else series
+    return max(candidates, key=lambda element: element.ohms.nominal if element.ohms else 0.0, default=None)
