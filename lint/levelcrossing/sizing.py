@@ -161,7 +161,8 @@ def solve(
         for one in ends
         if one.crossing.driver and one.crossing.driver.part == "U1" and one.crossing.receiver.part == "U2"
     ]
-    return (through or ends or [None])[0]
+    best = through or ends
+    return best[0] if best else None
 
 
 def _described(candidate: Candidate, solved: SolvedCrossing | None, needed_bit_s: float | None) -> list[str]:
