@@ -35,7 +35,13 @@ def board_of(text: str) -> Board:
             number, pin_name, kind, *net = pin_text.split()
             net_name = " ".join(net)
             pins.append(
-                Pin(part=reference, number=number, name="" if pin_name == "-" else pin_name, kind="" if kind == "-" else kind, net=net_name)
+                Pin(
+                    part=reference,
+                    number=number,
+                    name="" if pin_name == "-" else pin_name,
+                    kind="" if kind == "-" else kind,
+                    net=net_name,
+                )
             )
             if net_name:
                 nets[net_name].append((reference, number))

@@ -101,11 +101,9 @@ def family_facts(
             values["direction"] = "open-drain"
         elif outputs_clamp and direction in ("out", "inout"):
             # the inputs of this family have no diode to the supply, its outputs have
-            values.update(vmax=parsed("V+0.5"), vmax_off=levels.fixed(0.5), clamp_high=True)
+            values.update(vmax=parsed("V+0.5"), vmax_off=None, clamp_high=True)
         if direction == "analog":
-            values.update(
-                vih=None, vil=None, outputs=(), vmax=parsed("V+0.5"), vmax_off=levels.fixed(0.5), clamp_high=True
-            )
+            values.update(vih=None, vil=None, outputs=(), vmax=parsed("V+0.5"), vmax_off=None, clamp_high=True)
         return replace(base, **values)
 
     return PartFacts(
@@ -115,7 +113,7 @@ def family_facts(
         supplies=supplies,
         pin=remembered(pin_facts),
         translator=translator,
-        partial_power_down={"all": True, "inputs": True, "none": False}[off],
+        partial_power_down={"all": True, "inputs": None, "none": False}[off],
         matched=where,
         doubtful=row.get("doubtful", ""),
         note=row.get("note", ""),
@@ -142,11 +140,7 @@ def family_pin(row: Row) -> PinFacts:
         vih=vih,
         vil=vil,
         vmax=most,
-        vmax_off=most
-        if tolerant and off_state in ("all", "inputs")
-        else levels.at_zero(most)
-        if not tolerant
-        else None,
+        vmax_off=most if tolerant and off_state in ("all", "inputs") else None,
         vmin=levels.fixed(-0.5),
         clamp_high=not tolerant,
         clamp_low=row.get("clamp") != "none",

@@ -23,6 +23,8 @@ from levelcrossing.trade_pins import (
 )
 from levelcrossing.trade_rows import Row
 
+_POWER_DOWN = {"always": True, "powered": False, "never": False}
+
 
 def part_facts(row: Row, text: str, where: str, names: Sequence[Row] = ()) -> PartFacts:
     """Return what a ``[[part]]`` row says.
@@ -60,7 +62,9 @@ def part_facts(row: Row, text: str, where: str, names: Sequence[Row] = ()) -> Pa
         provenance=row.provenance,
         supplies=supplies,
         pin=remembered(pin_facts),
-        partial_power_down={"always": True, "powered": False, "never": False}.get(tolerant or ""),
+        partial_power_down=None
+        if any("tolerant" in item for _, item in exceptions)
+        else _POWER_DOWN.get(tolerant or ""),
         matched=where,
         doubtful=row.get("doubtful", ""),
         note=row.get("note", ""),
@@ -126,7 +130,10 @@ def _base(row: Row) -> PinFacts:
 
 
 def _ceiling(values: Mapping[str, Any]) -> tuple[Level | None, Level | None, bool | None]:
-    """Return the greatest input voltage, the one with the supply off, and whether a diode leads to the supply."""
+    """Return the greatest input voltage, the one with the supply off, and whether a diode leads to the supply.
+
+    A pin with a diode to its supply needs no limit of its own for the supply off: it follows from the first.
+    """
     pieces = values.get("input_max_by_supply")
     if pieces:
         most: Level | None = levels.by_supply(
@@ -134,21 +141,19 @@ def _ceiling(values: Mapping[str, Any]) -> tuple[Level | None, Level | None, boo
         )
     else:
         most = level(values.get("input_max_volts"))
-    off = level(values.get("input_max_off_volts"))
     if most is None:
-        return None, off, None
+        return None, None, None
+    off = level(values.get("input_max_off_volts"))
     tolerant = values.get("tolerant")
     moves = "V" in most.text and not pieces
-    if pieces and off is None:
-        off = levels.fixed(most.at(0.0))
     if tolerant == "always":
-        return most, off or (None if moves else most), False
+        return most, off or (levels.at_zero(most) if moves else most), False
     if tolerant == "powered":
+        if off is None and (moves or pieces):
+            off = levels.fixed(most.at(0.0))
         return most, off, False
-    if off is None and moves:
-        off = levels.at_zero(most)
-    # a limit that follows the supply means a diode to it; a fixed limit says nothing about one
-    return most, off, True if moves else (True if tolerant == "never" else None)
+    # a limit that follows the supply means a diode to it; a fixed one says nothing about a diode
+    return most, None, True if moves or tolerant == "never" else None
 
 
 def excepted(base: PinFacts, values: Mapping[str, Any], row: Row) -> PinFacts:
@@ -177,5 +182,7 @@ def excepted(base: PinFacts, values: Mapping[str, Any], row: Row) -> PinFacts:
         merged.update(
             {key: values[key] for key in ("input_max_volts", "tolerant", "input_max_off_volts") if key in values}
         )
+        if merged.get("tolerant") == "powered" and "input_max_off_volts" in row.data:
+            merged.setdefault("input_max_off_volts", row.get("input_max_off_volts"))
         changes["vmax"], changes["vmax_off"], changes["clamp_high"] = _ceiling(merged)
     return replace(base, **changes)

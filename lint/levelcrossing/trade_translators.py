@@ -161,7 +161,7 @@ def _side_pin(row: Row, family: Row | None, side: str, whole: TranslatorFacts) -
         vih=None if passes else vih or start.vih,
         vil=None if passes else vil or start.vil,
         vmax=most,
-        vmax_off=(levels.at_zero(most) if moves and most else most) if row.get("partial_power_down") or moves else None,
+        vmax_off=most if row.get("partial_power_down") and not moves else None,
         clamp_high=moves if most is not None else None,
         clamp_low=True,
         outputs=() if passes else output_points(row.get("outputs", ())) or start.outputs,
