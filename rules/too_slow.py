@@ -27,6 +27,15 @@ def check(case: CaseFile) -> Iterator[Finding]:
         speed = solved.speed
         if speed is None or speed.needed_bit_s is None:
             continue
+        rise, most = speed.rise_30_70_s, speed.rise_30_70_max_s
+        if rise is not None and most is not None and rise.high > most * (1 + 1e-9):
+            text = (
+                f"The line from {solved.crossing.source} to {solved.crossing.target} rises from 30 % to 70 % in {format_si(rise.nominal, 's', 2)}, "
+                f"{format_si(rise.high, 's', 2)} at worst, into {format_si(speed.load_farads, 'F', 2)}; its bus allows {format_si(most, 's', 2)} ({speed.needed_why})."
+            )
+            outcome = Outcome.MALFUNCTION if rise.nominal > most else Outcome.MARGINAL
+            yield solved.finding(index, NAME, outcome, text, remedy="Use a smaller pull-up, or shorten the line.")
+            continue
         if speed.usable_bit_s >= speed.needed_bit_s * (1 - 1e-9):
             continue
         usual = speed.nominal_bit_s < speed.needed_bit_s * (1 - 1e-9)

@@ -1098,6 +1098,7 @@ class Speed:
     load_farads: float
     limit: str = ""
     rise_30_70_s: Spread | None = None
+    rise_30_70_max_s: float | None = None
     sensitivity: str = ""
 
 

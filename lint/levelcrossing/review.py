@@ -111,6 +111,7 @@ def review_board(
         assumptions=assumptions(settings),
         out_of_scope=scope.out_of_scope(case),
         remarks=(*remarks, *waiver_remarks),
+        suggestions=unknown_parts(case),
     )
 
 
@@ -170,6 +171,20 @@ def _explained(case: CaseFile, findings: Sequence[Finding]) -> dict[int, list[in
                 ):
                     found.setdefault(index, []).append(number)
     return found
+
+
+def unknown_parts(case: CaseFile) -> tuple[str, ...]:
+    """Name the parts of which no row is known although signals were judged on them, each with what teaches them."""
+    values = {part.reference: part.value for part in case.board.parts}
+    by_value: dict[str, list[str]] = {}
+    for pin in case.pins.values():
+        if pin.role == "signal" and pin.part not in case.facts and pin.part not in by_value.get(values[pin.part], ()):
+            by_value.setdefault(values[pin.part], []).append(pin.part)
+    return tuple(
+        f"{', '.join(parts)} ({value}): no trade data, taken as ordinary CMOS; `levelcrossing part {value.split()[0] if value.split() else value}` "
+        "prints a row to fill in for --facts"
+        for value, parts in sorted(by_value.items())
+    )
 
 
 def coverage(case: CaseFile) -> Coverage:

@@ -45,3 +45,15 @@ def test_a_serial_line_is_asked_for_its_usual_rate(ohms: str, speaks: bool) -> N
         + resistor("R1", ohms, "+5V", "/UART_TX")
     )
     assert bool(named(findings_of(text), "too-slow")) is speaks
+
+
+@pytest.mark.parametrize(("ohms", "speaks"), [("10k", False), ("33k", False), ("47k", True)])
+def test_an_i2c_line_rises_within_its_mode_s_limit(ohms: str, speaks: bool) -> None:
+    """Standard mode: 1000 ns from 30 % to 70 %, 0.8473 R C (UM10204 table 11 and section 7.1); 30 pF here."""
+    text = (
+        SUPPLIES
+        + CONTROLLER
+        + ("U3 DS1307Z+ Timer_RTC:DS1307Z+ | 8 VCC power_in +5V | 4 GND power_in GND | 5 SDA bidirectional /SDA\n")
+        + resistor("R1", ohms, "+3V3", "/SDA")
+    )
+    assert any("30 %" in finding.text for finding in named(findings_of(text), "too-slow")) is speaks
