@@ -551,6 +551,8 @@ def _held(drivers: Sequence[PinModel], nets: Sequence[str]) -> bool:
     return any(
         pin.net in nets
         and not pin.when
+        # A general-purpose pin lets go at reset, even where it is the only one that can drive.
+        and pin.receive is None
         and pin.role == "signal"
         and pin.drive is not None
         and pin.drive.style == "push-pull"
