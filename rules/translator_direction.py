@@ -5,8 +5,8 @@ channel round at random.
 
 What to do: tie the direction pin to the level that fits the signal, on the supply its threshold belongs to.
 
-Speaks when a direction pin hangs on nothing, or is tied to a rail below the high level of its supply; and when both pins of
-a channel whose direction is settled are driven, or neither is, by parts that are sure outputs.
+Speaks when a direction pin hangs on nothing, or is tied to a rail below the high level of its supply; and when a
+channel's output side meets another sure output.
 
 Stays quiet when the direction pin is driven by a signal, and when direction and driver fit.
 """

@@ -25,7 +25,6 @@ SOURCES = (
     "TI PCA9306 SCPS113M: EN and VREF2 together through 200 kΩ to the upper supply",
 )
 EXPLAINS = ("input-floating", "input-overvoltage", "high-not-reached")
-REFERENCE_OHMS = (50_000.0, 500_000.0)
 
 
 def check(case: CaseFile) -> Iterator[Finding]:

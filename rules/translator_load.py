@@ -33,35 +33,34 @@ def check(case: CaseFile) -> Iterator[Finding]:
             if pin.facts is None or not pin.facts.side:
                 continue
             found = _pull(case, pin)
-            if found is None or found[1] >= translator.pull_least_ohms * 0.999:
+            drains = _open_drains(case, pin) if not translator.open_drain_ok else []
+            strong = found is not None and found[1] < translator.pull_least_ohms * 0.999
+            if not strong and not drains:
+                continue
+            if found is None or not strong:
+                yield _on_open_drain(case, reference, pin, drains[0])
                 continue
             resistor, ohms = found
             failing = [
                 index
                 for index, solved in enumerate(case.crossings)
-                if reference in solved.crossing.through and solved.crossing.stage_driver is not None and solved.crossing.stage_driver.number == pin.number
+                if reference in solved.crossing.through and solved.crossing.stage_driver is not None and (solved.crossing.stage_driver.part, solved.crossing.stage_driver.number) == (pin.part, pin.number)
                 and any(
                     margin is not None and margin.spread.nominal < 0
                     for state in solved.states.values()
                     for margin in (state.low_margin, state.high_margin)
                 )
             ]  # fmt: skip
-            drains = [
-                other for island in case.islands if pin.net in island.nets for other in island.pins
-                if other.drive is not None and other.drive.style == "open-drain" and other.role == "signal"
-            ]  # fmt: skip
             text = (
                 f"{resistor} pulls {pin.label} ({facts.title}) with {format_si(ohms, 'Ω')}; "
                 f"it works with {format_si(translator.pull_least_ohms, 'Ω')} or more."
             )
-            if drains and not translator.open_drain_ok:
+            if drains:
                 text += f" {drains[0].label} is an open drain, which this kind of translator cannot carry."
             ends = [case.crossings[index].crossing.receiver for index in failing]
             yield Finding(
                 rule=NAME,
-                outcome=Outcome.MALFUNCTION
-                if failing or (drains and not translator.open_drain_ok)
-                else Outcome.MARGINAL,
+                outcome=Outcome.MALFUNCTION if failing or drains else Outcome.MARGINAL,
                 text=text,
                 remedy=f"Take {resistor} off, or use a translator made for open-drain lines (MOSFET pair, pass-transistor type) there.",
                 part=reference,
@@ -73,6 +72,34 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 sources=(facts.provenance.source,),
                 cause=f"load {reference}.{pin.number}",
             )
+
+
+def _open_drains(case: CaseFile, pin: PinModel) -> list[PinModel]:
+    """Return the open-drain outputs on the island of a pin."""
+    return [
+        other
+        for island in case.islands
+        if pin.net in island.nets
+        for other in island.pins
+        if other.drive is not None and other.drive.style == "open-drain" and other.role == "signal"
+    ]
+
+
+def _on_open_drain(case: CaseFile, reference: str, pin: PinModel, drain: PinModel) -> Finding:
+    facts = case.facts[reference]
+    return Finding(
+        rule=NAME,
+        outcome=Outcome.MALFUNCTION,
+        text=f"{drain.label} is an open drain on {pin.label} ({facts.title}), which this kind of translator cannot carry: it needs a driver that makes both levels.",
+        remedy="Use a translator made for open-drain lines there (MOSFET pair, pass-transistor type).",
+        part=reference,
+        pin=pin.number,
+        net=pin.net,
+        basis=Basis.weakest(Basis.LIBRARY, drain.basis),
+        also=(f"{drain.part}.{drain.number}",),
+        sources=(facts.provenance.source,),
+        cause=f"load {reference}.{pin.number}",
+    )
 
 
 def _pull(case: CaseFile, pin: PinModel) -> tuple[str, float] | None:

@@ -217,5 +217,6 @@ def house_row(number: str) -> str:
         f'id = "{number}"\nmatch = [\'{number}\']\nexamples = ["{number}"]\ngroup = "other"\n'
         "supplies = [ { pins = 'VDD|VCC', volts = [3.0, 3.6], role = \"io\" } ]\nio_supply = 'VDD|VCC'\n"
         'vih_volts = "0.7*V"\nvil_volts = "0.3*V"\ninput_max_volts = "V+0.3"\n'
-        'source = "data sheet, table"\ncertainty = "datasheet"\n'
+        'source = "not looked up yet: name the data sheet and its table"\n'
+        'certainty = "practice"   # datasheet, once the figures above come from one\n'
     )

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 from gauge_cells import CONTROLLER, INVERTER_5V, SUPPLIES, resistor
-from small_boards import findings_of, named
+from small_boards import case_of, findings_of, named
 
 from levelcrossing.model import Outcome, PinSetting, Settings
 
@@ -31,10 +31,10 @@ def test_a_weak_driver_against_a_pull_up_speaks_with_the_maker_s_figure() -> Non
         )
         + resistor("R1", "4.7k", "+3V3", "/SDA")
     )
-    (finding,) = [finding for finding in named(findings_of(text), "low-not-reached") if finding.part == "U1"] or named(
-        findings_of(text), "translator-load"
-    )
-    assert finding.outcome is Outcome.MALFUNCTION
+    (finding,) = [finding for finding in named(findings_of(text), "translator-load") if finding.pin == "2"]
+    assert finding.outcome is Outcome.MALFUNCTION and "4.7 kΩ" in finding.text
+    low = next(one.low for one in case_of(text).crossings if one.crossing.receiver.part == "U1")
+    assert low is not None and low.nominal == pytest.approx(3.3 * 4.0 / (4.7 + 4.0), rel=0.01)
 
 
 def test_stays_quiet_when_the_low_is_held_at_every_corner() -> None:

@@ -42,3 +42,10 @@ def test_it_stands_for_the_low_that_it_spoils() -> None:
 def test_an_open_drain_type_stays_quiet() -> None:
     text = SUPPLIES + CONTROLLER + CLOCK_5V + TXB.format(value="TXS0104E") + resistor("R1", "4.7k", "+5V", "/SDA5")
     assert not named(findings_of(text), "translator-load")
+
+
+@pytest.mark.parametrize("pull", ["", resistor("R1", "100k", "+5V", "/SDA5")])
+def test_an_open_drain_on_an_auto_direction_buffer_speaks_whatever_the_pull(pull: str) -> None:
+    """Not for open-drain lines (TI TXB0104 SCES650, application information)."""
+    text = SUPPLIES + CONTROLLER + CLOCK_5V + TXB.format(value="TXB0104D") + pull
+    assert [finding.outcome for finding in named(findings_of(text), "translator-load")] == [Outcome.MALFUNCTION]
