@@ -47,3 +47,21 @@ def test_a_step_up_needs_no_room() -> None:
         "C1 22u Device:C | 1 - passive VOUT1 | 2 - passive GND"
     )
     assert not remarks(3.7, boost)
+
+
+@pytest.mark.parametrize(
+    ("part", "volts", "kinds"),
+    [
+        # one row, members with limits of their own: Micrel data sheets, 16 V and 5.5 V; TPS715 24 V, TPS7A05 5.5 V
+        ("MIC5205-3.3YM5", 12.0, []),
+        ("MIC5504-3.3YM5", 12.0, ["input-range"]),
+        ("TPS71533DCK", 12.0, []),
+        ("TPS7A0533PDBV", 12.0, ["input-range"]),
+        # a member whose limit is not known has none
+        ("AP2138N-3.3", 12.0, []),
+    ],
+)
+def test_the_members_of_a_row_have_limits_of_their_own(part: str, volts: float, kinds: list[str]) -> None:
+    pins = {"MIC": ("IN", "OUT"), "TPS": ("IN", "OUT"), "AP2": ("VIN", "VOUT")}[part[:3]]
+    line = f"U8 {part} Local:LDO | 1 {pins[0]} power_in VX | 2 GND power_in GND | 5 {pins[1]} power_out +3V3"
+    assert [remark.kind for remark in remarks(volts, line)] == kinds

@@ -205,7 +205,7 @@ def regulator_facts(row: Row, found: re.Match[str] | None, text: str, defaults: 
             output = Spread(low=-output.high, nominal=-output.nominal, high=-output.low)
     else:
         reference = _reference(row, text)
-    return _regulator(row, output, reference, defaults)
+    return _regulator(row, output, reference, defaults, _by_part(row, "input_max_by_part", text))
 
 
 def regulator_of_value(volts: float, row: Row) -> RegulatorFacts:
@@ -213,7 +213,9 @@ def regulator_of_value(volts: float, row: Row) -> RegulatorFacts:
     return _regulator(row, Spread.around(volts, 0.03), None, row)
 
 
-def _regulator(row: Row, output: Spread | None, reference: Spread | None, defaults: Row | None) -> RegulatorFacts:
+def _regulator(
+    row: Row, output: Spread | None, reference: Spread | None, defaults: Row | None, input_max: float | None = None
+) -> RegulatorFacts:
     def pins(key: str) -> str:
         return str(row.get(key) or (defaults.get(key) if defaults else "") or "")
 
@@ -230,7 +232,7 @@ def _regulator(row: Row, output: Spread | None, reference: Spread | None, defaul
         switch_pins=str(row.get("switch_pins", ""))
         or (pins("switch_pins") if row.get("through_inductor") or row.get("boost") else ""),
         through_inductor=bool(row.get("through_inductor", False)),
-        input_max_volts=row.get("input_max_volts"),
+        input_max_volts=row.get("input_max_volts") if input_max is None else input_max,
         dropout_volts=row.get("dropout_volts"),
         isolated=bool(row.get("isolated", False)),
         provenance=row.provenance,
@@ -261,13 +263,17 @@ def decoded(code: str, kind: str, table: dict[str, float]) -> float | None:
 
 
 def _reference(row: Row, text: str) -> Spread:
-    nominal = float(row.get("reference_volts"))
-    own = row.get("reference_by_part", {})
-    named = [name for name in own if normal(name) in text]
-    if named:
-        nominal = float(own[max(named, key=len)])
+    own = _by_part(row, "reference_by_part", text)
+    nominal = float(row.get("reference_volts")) if own is None else own
     limits = row.get("reference_range_volts")
-    if limits and not named:
+    if limits and own is None:
         return Spread(low=limits[0], nominal=nominal, high=limits[1])
     reach = abs(nominal) * row.get("tolerance_percent", 2) / 100
     return Spread(low=nominal - reach, nominal=nominal, high=nominal + reach)
+
+
+def _by_part(row: Row, key: str, text: str) -> float | None:
+    """Return what a row that stands for several parts says of this one: the longest name found in ``text`` counts."""
+    own = row.get(key, {})
+    named = [name for name in own if normal(name) in text]
+    return float(own[max(named, key=len)]) if named else None

@@ -61,6 +61,7 @@ _REGULATOR = {
     "boost": "flag",
     "isolated": "flag",
     "input_max_volts": "number",
+    "input_max_by_part": "names",
     "dropout_volts": "number",
     "output_max_milliamperes": "number",
     "tolerance_percent": "number",
