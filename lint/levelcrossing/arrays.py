@@ -87,11 +87,7 @@ class Arrays:
 
     def taken(self, members: Index) -> Arrays:
         """Return the arrays of some members only."""
-        changes = {
-            name: getattr(self, name)[:, members]
-            for name in _BATCHED
-            if getattr(self, name).shape[1] > 1
-        }
+        changes = {name: getattr(self, name)[:, members] for name in _BATCHED if getattr(self, name).shape[1] > 1}
         twin = object.__new__(Arrays)
         for name in _SLOTS:
             setattr(twin, name, changes.get(name, getattr(self, name)))

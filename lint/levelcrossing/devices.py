@@ -314,9 +314,7 @@ def bipolar(
 # --------------------------------------------------------------------------------------------------------------- mosfet
 
 
-def mosfet_values(
-    facts: MosfetFacts, *, threshold: Extreme = "nominal", gain: Extreme = "nominal"
-) -> dict[str, float]:
+def mosfet_values(facts: MosfetFacts, *, threshold: Extreme = "nominal", gain: Extreme = "nominal") -> dict[str, float]:
     """Return the values of a ``mosfet`` branch; the arguments choose an extreme of each spread.
 
     The stated threshold is used as the square law's: it is stated at some 0.25 mA, which lies 40 to 60 mV above, a
