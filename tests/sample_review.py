@@ -145,8 +145,6 @@ def sample_review(text: str | None = None, path: str | None = None) -> Review:
             delay_low_s=Spread.exactly(5e-9),
             usable_bit_s=23_456_789.0,
             nominal_bit_s=3e7,
-            needed_bit_s=None,
-            needed_why="",
             load_farads=20e-12,
             limit=t("the rise through R1"),
         ),

@@ -80,4 +80,5 @@ def test_a_weak_auto_direction_buffer_is_not_timed_by_its_static_resistance() ->
 
 def test_an_i2c_line_is_recognised_by_its_name_and_asked_for_100_kbit_per_second() -> None:
     speed = timed(BUS + PULL_UPS + MOSFET_PAIR, "U1.18").speed
-    assert speed is not None and speed.needed_bit_s == 100e3 and "I2C" in speed.needed_why
+    assert speed is not None and speed.needed_bit_s == 100e3
+    assert speed.line is not None and "I2C" in speed.line.why

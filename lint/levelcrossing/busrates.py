@@ -1,72 +1,120 @@
-"""What a line must carry: the rate from the settings, else from a bus that its names give away."""
+"""What each net must carry: the rate from the settings, else from the bus that names, pins and parts give away.
+
+A bus is told by the last component of a net's name, freed of the suffixes of shifted copies (``_5V``, ``_LV``); by names
+that only mean something together (a clock with a data line of the same group); by a pin of a part that speaks nothing
+else (the DIN of an addressable LED); or by an open-drain pin of a bus of open drains.
+"""
 
 from __future__ import annotations
 
 import fnmatch
 import re
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections import defaultdict
+from collections.abc import Iterable, Mapping, Sequence
 
-from levelcrossing.model import BusFacts, Crossing, Settings
+from levelcrossing.model import Board, BusFacts, LineRate, PinModel, Settings
 from levelcrossing.pinnames import pin_words
+from levelcrossing.units import format_si
 
-# Buses whose usual least rate is a safe thing to ask of a line by its name alone; of others only settings speak.
-BY_NAME = ("i2c", "uart")
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Needed:
-    """A rate with its reason: bit/s, the longest 30-70 % rise [s] where the bus limits it, and why."""
-
-    bits_per_second: float
-    why: str
-    rise_30_70_max_s: float | None = None
+# What names of shifted copies of a line add, and what names its owner: common practice in schematics.
+_SUFFIX = re.compile(
+    r"((?:[_-](?:3V3|3\.3V|5V0?|1V8|2V5|LV|HV|LOW|HIGH|BUF|LS|SHIFTED|ISO|A|B))+|5V|3V3|1V8)$", re.IGNORECASE
+)
+_OWNER = re.compile(r"^(MCU|ESP|ESP32|CPU|RPI|PI|ARD|ARDUINO|FPGA|EXT|AUX|MAIN)[_-]", re.IGNORECASE)
 
 
-def needed(crossing: Crossing, buses: Sequence[BusFacts], settings: Settings) -> Needed | None:
-    """Return the rate that a crossing must carry, None when nothing tells.
+def line_rates(
+    board: Board, pins: Mapping[tuple[str, str], PinModel], buses: Sequence[BusFacts], settings: Settings
+) -> dict[str, LineRate]:
+    """Return what each net must carry; nets of which nothing tells are absent.
 
     Parameters
     ----------
-    crossing : Crossing
+    board : Board
+    pins : mapping from part and pin number to PinModel
     buses : sequence of BusFacts
+        From the trade data; the first one that fits counts.
     settings : Settings
+        Its rates by net come before any bus.
 
     Returns
     -------
-    Needed or None
+    dict
+        Net name to LineRate.
     """
-    nets = [crossing.receiver.net, crossing.driver.net if crossing.driver else ""]
-    for pattern, rate in settings.rates:
-        if any(net and fnmatch.fnmatchcase(net, pattern) for net in nets):
-            return Needed(bits_per_second=rate, why=f"the settings ask {pattern} for it")
-    for bus in buses:
-        if bus.name in BY_NAME and _named(bus, crossing, nets):
-            limit = bus.modes[0].rise_max_s if bus.open_drain and bus.modes else None
-            return Needed(
-                bits_per_second=bus.bits_per_second,
-                why=f"the names say {bus.name.upper()}, whose usual least rate it is",
-                rise_30_70_max_s=limit,
+    told: dict[str, tuple[BusFacts, str]] = {}
+    for bus in (one for one in buses if one.bits_per_second is not None):
+        for net, group in _lines_of(bus, board, pins):
+            told.setdefault(net, (bus, group))
+    rates: dict[str, LineRate] = {}
+    for one in board.nets:
+        stated = next(((name, rate) for name, rate in settings.rates if fnmatch.fnmatchcase(one.name, name)), None)
+        bus_group = told.get(one.name)
+        if stated is not None:
+            rise = _rise_limit(bus_group[0], stated[1]) if bus_group is not None else None
+            rates[one.name] = LineRate(
+                needed_bit_s=stated[1],
+                why=f"the settings ask {stated[0]} for it",
+                rise_30_70_max_s=rise,
+                open_drain=bus_group is not None and bus_group[0].open_drain,
             )
-    return None
+        elif bus_group is not None:
+            bus, group = bus_group
+            usual = bus.bits_per_second or 0.0
+            rates[one.name] = LineRate(
+                needed_bit_s=bus.least_bits_per_second,
+                why=f"{bus.title}: {bus.least_why}" if bus.least_why else "",
+                usual_bit_s=usual,
+                usual_why=f"{bus.title} usually runs at {format_si(usual, 'bit/s', 2)}",
+                rise_30_70_max_s=_rise_limit(bus, bus.least_bits_per_second or usual),
+                bus=bus.name,
+                group=group,
+                open_drain=bus.open_drain,
+            )
+    return rates
 
 
-def _named(bus: BusFacts, crossing: Crossing, nets: Sequence[str]) -> bool:
-    """Tell whether net and pin names agree on a role of the bus."""
-    names = [re.sub(r"[~{}]", "", net.rsplit("/", 1)[-1]) for net in nets if net]
-    names = [re.sub(r"([_-](3V3|5V|1V8|2V5|LV|HV)|5V|3V3)$", "", name, flags=re.IGNORECASE) for name in names]
-    for _, pattern in bus.nets:
-        wanted = re.compile(pattern, re.IGNORECASE)
-        if any(wanted.fullmatch(name) for name in names):
-            return True
-    if bus.name != "i2c":
-        return False
-    words = [word for pin in (crossing.driver, crossing.receiver) if pin is not None for word in pin_words(pin.name)]
-    return any(
-        re.fullmatch(pattern, word, re.IGNORECASE)
-        for _, pattern in bus.pins
-        for word in words
-        if "SD" in word.upper() or "SC" in word.upper()
-    ) and all(
-        pin is not None and pin.drive is not None and pin.drive.style == "open-drain" for pin in (crossing.driver,)
-    )
+def _rise_limit(bus: BusFacts, bits_per_second: float) -> float | None:
+    """Return the longest 30-70 % rise in the slowest mode that runs at a rate [s]."""
+    if not bus.open_drain:
+        return None
+    fitting = [mode for mode in bus.modes if mode.bits_per_second >= bits_per_second * (1 - 1e-9)]
+    return fitting[0].rise_max_s if fitting else None
+
+
+def _lines_of(bus: BusFacts, board: Board, pins: Mapping[tuple[str, str], PinModel]) -> Iterable[tuple[str, str]]:
+    """Return the nets of one bus, each with the group that shares its clock."""
+    groups: dict[str, dict[str, list[str]]] = defaultdict(lambda: defaultdict(list))
+    for net in board.nets:
+        name, path = _plain(net.name)
+        for role, pattern in bus.nets:
+            if re.fullmatch(pattern, name, re.IGNORECASE):
+                groups[path + re.split(r"[_-](?=[^_-]*$)", name)[0] if re.search("[_-]", name) else path][role].append(
+                    net.name
+                )
+                break
+    for group, roles in groups.items():
+        if not bus.together or any(all(role in roles for role in wanted) for wanted in bus.together):
+            yield from ((net, group) for nets in roles.values() for net in nets)
+    yield from _told_by_pins(bus, board, pins)
+
+
+def _told_by_pins(bus: BusFacts, board: Board, pins: Mapping[tuple[str, str], PinModel]) -> Iterable[tuple[str, str]]:
+    patterns = [re.compile(pattern, re.IGNORECASE) for _, pattern in bus.pins]
+    speaks_it = {
+        part.reference
+        for part in board.parts
+        if bus.parts and any(re.search(bus.parts, text, re.IGNORECASE) for text in (part.value, part.symbol))
+    }
+    for pin in pins.values():
+        drains = bus.open_drain and not bus.parts and pin.drive is not None and pin.drive.style == "open-drain"
+        if not (pin.net and (pin.part in speaks_it or drains)):
+            continue
+        if any(pattern.fullmatch(word) for pattern in patterns for word in (pin.name, *pin_words(pin.name))):
+            yield pin.net, pin.part
+
+
+def _plain(net: str) -> tuple[str, str]:
+    """Return the last component of a net's name without overbars and the marks of copies, and what stands before it."""
+    path, _, name = re.sub(r"~?\{|\}|~", "", net).rpartition("/")
+    return _OWNER.sub("", _SUFFIX.sub("", name)), path

@@ -406,8 +406,8 @@ class TranslatorFacts:
         On-resistance [ohm] and threshold [V] of a pass switch.
     pass_level : Level or None
         Highest level that a switch passes [V], as an expression of its supply.
-    rates : tuple of (float, float or None, float)
-        (supply a [V], supply b [V] or None, bit rate [bit/s]).
+    rates : tuple of RatePoint
+        Data rates that the maker states.
     load_most_farads : float or None
         Largest load [F].
     partial_power_down : bool
@@ -432,11 +432,41 @@ class TranslatorFacts:
     switch_ohms: float | None = None
     switch_threshold_volts: float | None = None
     pass_level: Level | None = None
-    rates: tuple[tuple[float, float | None, float], ...] = ()
+    rates: tuple[RatePoint, ...] = ()
     load_most_farads: float | None = None
     partial_power_down: bool = False
     inverting: bool = False
     notes: tuple[str, ...] = ()
+
+    def rate_at(self, a_volts: float | None, b_volts: float | None, *, open_drain: bool) -> float | None:
+        """Return the data rate that the maker states at these supplies [bit/s], None when it states none.
+
+        A point holds from its supplies upwards (5 % below them still counts), of several that hold the fastest. Below
+        all of them the part is slower than the slowest point, which is then the answer.
+        """
+        drains = [point for point in self.rates if point.open_drain]
+        points = drains if open_drain and drains else [point for point in self.rates if not point.open_drain]
+        holding = [
+            point
+            for point in points
+            if all(
+                need is None or have is None or have >= 0.95 * need
+                for need, have in ((point.a_volts, a_volts), (point.b_volts, b_volts))
+            )
+        ]
+        if holding:
+            return max(point.bits_per_second for point in holding)
+        return min((point.bits_per_second for point in points), default=None)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class RatePoint:
+    """A data rate that a translator's maker states [bit/s], the supplies it holds at [V], and whether for open drains."""
+
+    bits_per_second: float
+    a_volts: float | None = None
+    b_volts: float | None = None
+    open_drain: bool = False
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -619,12 +649,18 @@ class BusFacts:
 
     Parameters
     ----------
-    name : str
-        ``i2c``, ``spi``, ``uart`` ...
+    name, title : str
+        ``i2c``, ``spi``, ``uart`` ..., and how people write it.
     nets, pins : tuple of (str, str)
         Role (``scl``) and regular expression on net names (last component) and on pin names.
-    bits_per_second : float
-        Rate to assume when nothing is said [bit/s].
+    bits_per_second : float or None
+        Usual rate [bit/s]; None where no rate can be said.
+    least_bits_per_second : float or None
+        Slowest rate that the bus is used at, or the rate that its standard fixes [bit/s]; ``least_why`` says which.
+    together : tuple of tuple of str
+        Roles that must be there together before names tell the bus; empty when one name is enough.
+    parts : str
+        Regular expression on values and symbols of parts whose pins tell the bus.
     rise_max_s : float or None
         Longest 10-90 % rise that the bus allows [s] (30-70 % for I2C).
     rise_fraction : float or None
@@ -638,7 +674,7 @@ class BusFacts:
     name: str
     nets: tuple[tuple[str, str], ...]
     pins: tuple[tuple[str, str], ...]
-    bits_per_second: float
+    bits_per_second: float | None
     rise_max_s: float | None
     rise_fraction: float | None
     open_drain: bool
@@ -646,6 +682,41 @@ class BusFacts:
     modes: tuple[BusMode, ...]
     notes: tuple[str, ...]
     provenance: Provenance
+    title: str = ""
+    least_bits_per_second: float | None = None
+    least_why: str = ""
+    together: tuple[tuple[str, ...], ...] = ()
+    parts: str = ""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class LineRate:
+    """What a net must carry.
+
+    Parameters
+    ----------
+    needed_bit_s : float or None
+        Rate that it is judged against [bit/s]: stated, or the least of its bus.
+    why : str
+        Where that rate comes from.
+    usual_bit_s : float or None
+        Rate that its bus usually runs at, when nothing states one [bit/s]; ``usual_why`` says so in words.
+    rise_30_70_max_s : float or None
+        Longest 30-70 % rise that its bus allows [s].
+    bus, group : str
+        The bus that names or parts gave away, and what its lines have in common.
+    open_drain : bool
+        Every driver of that bus only pulls low.
+    """
+
+    needed_bit_s: float | None
+    why: str
+    usual_bit_s: float | None = None
+    usual_why: str = ""
+    rise_30_70_max_s: float | None = None
+    bus: str = ""
+    group: str = ""
+    open_drain: bool = False
 
 
 # --------------------------------------------------------------------------------------------------------------- rails
@@ -1093,13 +1164,17 @@ class Speed:
     delay_low_s: Spread
     usable_bit_s: float
     nominal_bit_s: float
-    needed_bit_s: float | None
-    needed_why: str
     load_farads: float
     limit: str = ""
     rise_30_70_s: Spread | None = None
-    rise_30_70_max_s: float | None = None
-    sensitivity: str = ""
+    loaded_bit_s: float | None = None
+    accuracy: str = ""
+    line: LineRate | None = None
+
+    @property
+    def needed_bit_s(self) -> float | None:
+        """Rate that the line is judged against [bit/s]."""
+        return self.line.needed_bit_s if self.line is not None else None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -1313,6 +1388,7 @@ class CaseFile:
     crossings: tuple[SolvedCrossing, ...]
     settings: Settings
     not_judged: tuple[tuple[PinModel, str], ...] = ()
+    line_rates: Mapping[str, LineRate] = field(default_factory=dict)
 
     def pins_of(self, part: str) -> Iterator[PinModel]:
         """Yield the pins of one part."""

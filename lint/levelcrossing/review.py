@@ -6,8 +6,19 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import replace
 from pathlib import Path
 
+from levelcrossing import (
+    busrates,
+    directions,
+    offstates,
+    remedies,
+    rulebook,
+    scope,
+    solutions,
+    speeds,
+    tradebook,
+    waivers,
+)
 from levelcrossing import crossings as crossing_survey
-from levelcrossing import directions, offstates, remedies, rulebook, scope, solutions, speeds, tradebook, waivers
 from levelcrossing import islands as island_survey
 from levelcrossing import pins as pin_models
 from levelcrossing import rails as rail_tracing
@@ -70,7 +81,8 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
     islands = island_survey.find_islands(board, rails, pins, elements)
     survey = crossing_survey.find_crossings(board, rails, pins, facts, islands)
     solved = solutions.solve_crossings(survey.crossings, islands, rails, settings)
-    solved = speeds.with_speeds(solved, islands, rails, book.buses, settings)
+    rates = busrates.line_rates(board, pins, book.buses, settings)
+    solved = speeds.with_speeds(solved, islands, rails, rates, settings)
     solved = tuple(
         replace(one, proposal=remedies.propose(one), off_states=offstates.power_down(one, islands, rails))
         for one in solved
@@ -83,6 +95,7 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
         islands=islands,
         crossings=solved,
         settings=settings,
+        line_rates=rates,
         not_judged=tuple((pins[entry.part, entry.pin], entry.why) for entry in survey.not_judged)
         + tuple(
             (pins[part, number], "the level on the other side is not known") for part, number, _ in survey.far_ends
@@ -222,4 +235,6 @@ def assumptions(settings: Settings) -> tuple[str, ...]:
         f"{settings.stray_farads * 1e12:g} pF of stray capacitance per net",
         "parts without data are ordinary CMOS: inputs at 0.7 and 0.3 of their supply, rated 0.3 V beyond it",
         "every supply is up and settled",
+        "the models: levels within 20 mV of parts that have these parameters; rates within about 10 % where resistors and loads "
+        "decide, twice where the capacitance of a MOSFET does, ten times where a bipolar transistor saturates",
     )

@@ -7,21 +7,21 @@ two paths that open and close; an open drain has the lower one only.
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 
 import numpy as np
 import numpy.typing as npt
 
-from levelcrossing import busrates, devices
+from levelcrossing import devices
 from levelcrossing.bitrate import Timing, TimingJob, timings
 from levelcrossing.circuits import MOST_NODES, Builder, level_at
 from levelcrossing.corners import HIGH, LOW, NOMINAL, Codes, Variable
 from levelcrossing.model import (
-    BusFacts,
     Crossing,
     Element,
     Island,
+    LineRate,
     PinModel,
     Rails,
     Settings,
@@ -30,22 +30,26 @@ from levelcrossing.model import (
     Spread,
     TranslatorFacts,
 )
-from levelcrossing.network import Network
+from levelcrossing.network import GROUND, Network, Value
 from levelcrossing.solutions import neighbourhood, with_end
 from levelcrossing.units import format_si
 
 Vector = npt.NDArray[np.float64]
 HIGH_PATH, LOW_PATH = "high output", "low output"
+# By how much more load the sensitivity to it is worked out [F].
+MORE_FARADS = 10e-12
 
 
 def with_speeds(
     solved: Sequence[SolvedCrossing],
     islands: Sequence[Island],
     rails: Rails,
-    buses: Sequence[BusFacts],
+    line_rates: Mapping[str, LineRate],
     settings: Settings,
 ) -> tuple[SolvedCrossing, ...]:
     """Time every crossing whose levels are reached at the usual values.
+
+    On a bus of open drains every driver only pulls low, whatever its pin could do.
 
     Parameters
     ----------
@@ -53,10 +57,10 @@ def with_speeds(
         With their DC states.
     islands : sequence of Island
     rails : Rails
-    buses : sequence of BusFacts
-        To recognise what a line must carry.
+    line_rates : mapping from net to LineRate
+        What each line must carry, where something tells.
     settings : Settings
-        Rates by net, stray capacitance.
+        Stray capacitance.
 
     Returns
     -------
@@ -70,7 +74,8 @@ def with_speeds(
     for index, one in enumerate(solved):
         if not _levels_hold(one):
             continue
-        made = _job(one.crossing, islands, rails, settings)
+        line = _line(one.crossing, line_rates)
+        made = _job(one.crossing, islands, rails, settings, drains=line is not None and line.open_drain)
         if made is None:
             continue
         job, island, load, key = made
@@ -81,14 +86,27 @@ def with_speeds(
         wanted.append((index, island, load))
     try:
         found = timings(jobs) if jobs else []
+        loaded = _with_more_load(jobs, found)
     except (ValueError, np.linalg.LinAlgError):
         return tuple(solved)
     result = list(solved)
     for index, island, load in wanted:
-        speed = _speed(solved[index].crossing, island, found[job_of[index]], load, buses, settings)
+        speed = _speed(solved[index].crossing, island, found[job_of[index]], load, line_rates)
         if speed is not None:
+            speed = replace(speed, loaded_bit_s=loaded.get(job_of[index]))
             result[index] = replace(solved[index], speed=speed)
     return tuple(result)
+
+
+def _with_more_load(jobs: Sequence[TimingJob], found: Sequence[Timing]) -> dict[int, float]:
+    """Return, by the position of a job, the rate at its slowest corner with 10 pF more at the receiver [bit/s]."""
+    more = {position: one for position, job in enumerate(jobs) if (one := _loaded(job, found[position])) is not None}
+    again = timings(list(more.values()), confirm=False) if more else []
+    return {
+        position: float(timing.bit_rate[0])
+        for position, timing in zip(more, again, strict=True)
+        if bool(timing.solved[0])
+    }
 
 
 def _levels_hold(one: SolvedCrossing) -> bool:
@@ -114,8 +132,13 @@ def _accelerated(one: SolvedCrossing) -> bool:
     return weak or passed
 
 
+def _line(crossing: Crossing, line_rates: Mapping[str, LineRate]) -> LineRate | None:
+    nets = (crossing.receiver.net, crossing.driver.net if crossing.driver is not None else "")
+    return next((line_rates[net] for net in nets if net in line_rates), None)
+
+
 def _job(
-    crossing: Crossing, islands: Sequence[Island], rails: Rails, settings: Settings
+    crossing: Crossing, islands: Sequence[Island], rails: Rails, settings: Settings, *, drains: bool
 ) -> tuple[TimingJob, Island, float, tuple[object, ...]] | None:
     pin = crossing.stage_driver or crossing.driver
     assert pin is not None and pin.drive is not None and pin.supply_volts is not None
@@ -140,7 +163,7 @@ def _job(
     fixed = dict(network.fixed)
     gates = [LOW_PATH]
     branches.append(devices.gated(LOW_PATH, pin.net, "0", _values(drive.low_ohms, codes[row])))
-    if drive.style == "push-pull":
+    if drive.style == "push-pull" and not drains:
         gates.append(HIGH_PATH)
         fixed["level inside the driver"] = level_at(drive.high, supplies)
         branches.append(
@@ -230,11 +253,11 @@ def _spread(values: Vector) -> Spread:
 
 
 def _speed(
-    crossing: Crossing, island: Island, timing: Timing, load: float, buses: Sequence[BusFacts], settings: Settings
+    crossing: Crossing, island: Island, timing: Timing, load: float, line_rates: Mapping[str, LineRate]
 ) -> Speed | None:
     if not bool(np.all(timing.solved)) or not math.isfinite(float(timing.bit_s[0])):
         return None
-    needed = busrates.needed(crossing, buses, settings)
+    line = _line(crossing, line_rates)
     worst = float(timing.bit_s.max())
     usual = float(timing.bit_s[0])
     return Speed(
@@ -244,42 +267,71 @@ def _speed(
         delay_low_s=_spread(timing.delay_low_s),
         usable_bit_s=1.0 / worst if math.isfinite(worst) and worst > 0 else 0.0,
         nominal_bit_s=1.0 / usual if usual > 0 else 0.0,
-        needed_bit_s=needed.bits_per_second if needed is not None else None,
-        needed_why=needed.why if needed is not None else "",
         load_farads=load,
-        limit=_limit(crossing, island, timing),
+        limit=_limit(crossing, island, timing, line is not None and line.open_drain),
         rise_30_70_s=_spread(timing.rise_30_70_s),
-        rise_30_70_max_s=needed.rise_30_70_max_s if needed is not None else None,
-        sensitivity=_sensitivity(timing, load),
+        accuracy=_accuracy(crossing, island),
+        line=line,
     )
 
 
-def _sensitivity(timing: Timing, load: float) -> str:
-    """Say what ten more picofarads cost where the load decides, to first order: the rate falls as the load grows."""
-    if load <= 0 or not math.isfinite(float(timing.bit_s.max())):
-        return ""
-    return f"about {100 * 10e-12 / (load + 10e-12):.0f} % less with 10 pF more"
+def _loaded(job: TimingJob, timing: Timing) -> TimingJob | None:
+    """Return the slowest corner of a circuit with 10 pF more at the receiver, to see what load costs.
+
+    None where a circuit remembers earlier bits: its rate does not follow from one edge.
+    """
+    if not bool(np.all(timing.solved)) or bool(np.any(timing.remembers)) or not np.all(np.isfinite(timing.bit_s)):
+        return None
+    worst = np.array([int(np.argmax(timing.bit_s))], dtype=np.intp)
+
+    def at(value: Value) -> Value:
+        return np.ravel(value)[worst] if np.size(value) > 1 else value
+
+    network = job.network.taking(worst)
+    more = devices.capacitor("more load", job.watch, GROUND, MORE_FARADS)
+    return replace(
+        job,
+        network=Network(branches=(*network.branches, more), fixed=network.fixed),
+        low={node: at(volts) for node, volts in job.low.items()},
+        high={node: at(volts) for node, volts in job.high.items()},
+        vih_volts=at(job.vih_volts),
+        vil_volts=at(job.vil_volts),
+    )
 
 
-def _limit(crossing: Crossing, island: Island, timing: Timing) -> str:
+def _accuracy(crossing: Crossing, island: Island) -> str:
+    """Say how far the models bear a rate (charge storage and capacitances of transistors vary by maker)."""
+    own = {*crossing.link, *crossing.shifter.parts}
+    bipolar = [element.part for element in island.elements if element.kind == "bipolar" and element.part in own]
+    fets = [element.part for element in island.elements if element.kind == "mosfet" and element.part in own]
+    if bipolar:
+        return f"{bipolar[0]} stores charge, which varies up to ten times from maker to maker"
+    if fets:
+        return f"the capacitance of {fets[0]} varies up to twice from maker to maker"
+    return "to about 10 %"
+
+
+def _limit(crossing: Crossing, island: Island, timing: Timing, drains: bool) -> str:
     """Say which edge limits, and through what it runs."""
     slow_high = float(np.nanmax(timing.delay_high_s)) >= float(np.nanmax(timing.delay_low_s))
     edge = "rise" if slow_high else "fall"
     pin = crossing.stage_driver or crossing.driver
     if bool(np.any(timing.remembers)):
         return f"what {', '.join(crossing.shifter.parts)} remembers of the bits before"
-    through = _resistor_on(crossing, island, pin, slow_high)
+    through = _resistor_on(crossing, island, pin, slow_high, drains)
     if through is not None and through.ohms is not None:
         return f"the {edge} through {through.part} ({format_si(through.ohms.nominal, 'Ω')})"
     return f"the {edge} through the output of {pin.part}" if pin is not None else f"the {edge}"
 
 
-def _resistor_on(crossing: Crossing, island: Island, pin: PinModel | None, slow_high: bool) -> Element | None:
+def _resistor_on(
+    crossing: Crossing, island: Island, pin: PinModel | None, slow_high: bool, drains: bool
+) -> Element | None:
     """Return the resistor that an edge runs through: in the link, or the pull-up of the receiver's net for a rise."""
     own = [element for element in island.elements if element.kind == "resistor" and element.ohms is not None]
     series = [element for element in own if element.part in crossing.link]
     pulls = [element for element in own if crossing.receiver.net in element.nets and element.part not in crossing.link]
-    released = pin is not None and pin.drive is not None and pin.drive.style == "open-drain"
+    released = drains or (pin is not None and pin.drive is not None and pin.drive.style == "open-drain")
     passing = crossing.shifter.kind in ("mosfet-pass", "bipolar-pass", "diode", "inverting-stage", "open-drain")
     candidates = pulls if slow_high and (released or passing) and pulls else series
     return max(candidates, key=lambda element: element.ohms.nominal if element.ohms else 0.0, default=None)

@@ -11,9 +11,14 @@ def bus_facts(row: Row) -> BusFacts:
     """Return what a ``[[bus]]`` row says."""
     return BusFacts(
         name=row.id,
+        title=row.get("title") or row.id.upper(),
         nets=tuple(row.get("names", {}).items()),
         pins=tuple(row.get("pins", {}).items()),
-        bits_per_second=float(row.get("rate_bits_per_second", 1e6)),
+        bits_per_second=row.get("rate_bits_per_second"),
+        least_bits_per_second=row.get("rate_least_bits_per_second"),
+        least_why=row.get("rate_least_why", ""),
+        together=tuple(tuple(roles.split()) for roles in row.get("together", ())),
+        parts=row.get("parts", ""),
         rise_max_s=scaled(row.get("rise_max_nanoseconds"), 1e-9),
         rise_fraction=row.get("rise_fraction"),
         open_drain=bool(row.get("open_drain", False)),

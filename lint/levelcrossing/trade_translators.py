@@ -6,7 +6,7 @@ from dataclasses import replace
 from typing import Any
 
 from levelcrossing import levels
-from levelcrossing.model import ControlFacts, Part, PartFacts, Pin, PinFacts, SupplyFacts, TranslatorFacts
+from levelcrossing.model import ControlFacts, Part, PartFacts, Pin, PinFacts, RatePoint, SupplyFacts, TranslatorFacts
 from levelcrossing.trade_logic import family_pin
 from levelcrossing.trade_parts import applies, excepted
 from levelcrossing.trade_pins import (
@@ -65,7 +65,12 @@ def translator_facts(row: Row) -> TranslatorFacts:
         switch_threshold_volts=row.get("switch_threshold_volts"),
         pass_level=level(row.get("pass_max_volts")),
         rates=tuple(
-            (float(item.get("a_volts", 0.0)), item.get("b_volts"), item["megabits_per_second"] * 1e6)
+            RatePoint(
+                bits_per_second=item["megabits_per_second"] * 1e6,
+                a_volts=item.get("a_volts"),
+                b_volts=item.get("b_volts"),
+                open_drain=item.get("mode") == "open-drain",
+            )
             for item in row.get("rates", ())
         ),
         load_most_farads=scaled(row.get("load_max_picofarads"), 1e-12),

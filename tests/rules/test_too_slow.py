@@ -57,3 +57,99 @@ def test_an_i2c_line_rises_within_its_mode_s_limit(ohms: str, speaks: bool) -> N
         + resistor("R1", ohms, "+3V3", "/SDA")
     )
     assert any("30 %" in finding.text for finding in named(findings_of(text), "too-slow")) is speaks
+
+
+SENSOR = "U8 MCP3008 Analog_ADC:MCP3008 | 16 VDD power_in +3V3 | 9 DGND power_in GND | 13 CLK input /SPI_SCK | 11 Din input /SPI_MOSI\n"
+HOST = (
+    "U2 74HC14 74xx:74HC14 | 14 VCC power_in +5V | 7 GND power_in GND | 1 - input GND | 2 - output /HOST_SCK"
+    " | 3 - input GND | 4 - output /HOST_MOSI\n"
+)
+
+
+@pytest.mark.parametrize(("top", "bottom", "speaks"), [("1k", "1.8k", False), ("22k", "39k", True)])
+def test_a_bus_that_usually_runs_faster_is_unknown_until_its_rate_is_stated(
+    top: str, bottom: str, speaks: bool
+) -> None:
+    """SPI at 10 Mbit/s: common practice; a bus of 22 kilohm dividers is good for about 1 Mbit/s."""
+    text = SUPPLIES + HOST + SENSOR
+    for number, line in ((1, "SCK"), (3, "MOSI")):
+        text += resistor(f"R{number}", top, f"/HOST_{line}", f"/SPI_{line}")
+        text += resistor(f"R{number + 1}", bottom, f"/SPI_{line}", "GND")
+    found = named(findings_of(text), "too-slow")
+    assert [finding.outcome for finding in found] == ([Outcome.UNKNOWN] if speaks else [])
+    if not speaks:
+        return
+    (one,) = found
+    assert "SPI usually runs at 10 Mbit/s" in one.text and len(one.also) == 1
+    # The line that the remedy proposes settles it.
+    rate = one.remedy.split('" = "')[1].split('"')[0]
+    assert rate.endswith("M") and 0.5 < float(rate[:-1]) < 3
+    settled = Settings(rates=(("/SPI_*", float(rate[:-1]) * 1e6),))
+    assert not named(findings_of(text, settled), "too-slow")
+    assert named(findings_of(text, Settings(rates=(("/SPI_*", 10e6),))), "too-slow")[0].outcome is Outcome.MALFUNCTION
+
+
+def test_names_that_mean_something_only_together_say_nothing_alone() -> None:
+    """A net CLK without data lines beside it is no SPI."""
+    text = SUPPLIES + HOST + SENSOR.replace("/SPI_MOSI", "/OTHER")
+    text += resistor("R1", "22k", "/HOST_SCK", "/SPI_SCK") + resistor("R2", "39k", "/SPI_SCK", "GND")
+    text += resistor("R3", "22k", "/HOST_MOSI", "/OTHER") + resistor("R4", "39k", "/OTHER", "GND")
+    assert not named(findings_of(text), "too-slow")
+
+
+@pytest.mark.parametrize(("ohms", "speaks"), [("330", False), ("10k", True)])
+def test_an_addressable_led_is_told_by_its_pin_and_needs_its_shortest_pulse(ohms: str, speaks: bool) -> None:
+    """WS2812B: a zero is a pulse of 0.4 us (Worldsemi data sheet, timing table), 15 pF and 10 pF of stray."""
+    text = (
+        SUPPLIES
+        + HOST.replace("/HOST_SCK", "/X")
+        + "D1 WS2812B LED:WS2812B | 1 VDD power_in +3V3 | 3 VSS power_in GND | 4 DIN input /L | 2 DOUT output /M\n"
+        + resistor("R1", ohms, "/X", "/L")
+    )
+    found = named(findings_of(text), "too-slow")
+    assert bool(found) is speaks
+    assert all("0.4 µs" in finding.text for finding in found)
+
+
+def translated(value: str, drain: bool) -> str:
+    driver = "74LVC1G07" if drain else "74LVC1G34"
+    return (
+        SUPPLIES
+        + f"U4 {driver} 74xGxx:x | 5 VCC power_in +3V3 | 3 GND power_in GND | 2 - input GND | 4 - output /A\n"
+        + f"U7 {value} Logic_LevelTranslator:x | 1 VCCA power_in +3V3 | 14 VCCB power_in +5V | 7 GND power_in GND"
+        " | 8 OE input +3V3 | 2 A1 bidirectional /A | 13 B1 bidirectional /B\n"
+        + "U3 74HC1G14 74xGxx:x | 5 VCC power_in +5V | 3 GND power_in GND | 2 - input /B | 4 - output /Z\n"
+    )
+
+
+@pytest.mark.parametrize(
+    ("value", "drain", "rate", "speaks"),
+    [
+        # TI TXS0104E SCES651: 24 Mbit/s push-pull at 3.3 and 5 V, 2 Mbit/s open-drain
+        ("TXS0104E", False, 24e6, False),
+        ("TXS0104E", False, 25e6, True),
+        ("TXS0104E", True, 2e6, False),
+        ("TXS0104E", True, 2.1e6, True),
+        # TXB0104: 100 Mbit/s from 2.5 V on side A up (from memory)
+        ("TXB0104D", False, 100e6, False),
+        ("TXB0104D", False, 110e6, True),
+    ],
+)
+def test_a_translator_is_held_against_its_maker_s_rate(value: str, drain: bool, rate: float, speaks: bool) -> None:
+    found = named(findings_of(translated(value, drain), Settings(rates=(("/B", rate),))), "too-slow")
+    assert [finding.part for finding in found] == (["U7"] if speaks else [])
+    assert all(finding.outcome is Outcome.MALFUNCTION and "rated for" in finding.text for finding in found)
+
+
+@pytest.mark.parametrize(("stated", "speaks"), [(None, False), ("100k", False), ("400k", True)])
+def test_a_stated_rate_chooses_the_mode_of_an_i2c_line(stated: str | None, speaks: bool) -> None:
+    """Fast mode: 300 ns from 30 % to 70 % (UM10204 table 11); 15 kilohm into 30 pF takes 380 ns."""
+    text = (
+        SUPPLIES
+        + CONTROLLER
+        + "U3 DS1307Z+ Timer_RTC:DS1307Z+ | 8 VCC power_in +5V | 4 GND power_in GND | 5 SDA bidirectional /SDA\n"
+        + resistor("R1", "15k", "+3V3", "/SDA")
+    )
+    settings = Settings(rates=(("/SDA", float(stated[:-1]) * 1e3),)) if stated else Settings()
+    found = named(findings_of(text, settings), "too-slow")
+    assert any("300 ns" in finding.text for finding in found) is speaks

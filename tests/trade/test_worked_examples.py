@@ -52,7 +52,12 @@ def test_a_txs_against_both_pull_ups(book, part, pin):
 def test_data_rates_of_a_direction_controlled_translator(book, part):
     # TI SCES515, Nexperia 74LVC1T45: 420 Mbit/s 3.3 to 5 V; 210 to 3.3; 140 to 2.5; 75 to 1.8 V
     rates = book.part(part("SN74LVC1T45")).translator.rates
-    assert [(b, rate) for _, b, rate in rates][:4] == [(5.0, 420e6), (3.3, 210e6), (2.5, 140e6), (1.8, 75e6)]
+    assert [(point.b_volts, point.bits_per_second) for point in rates][:4] == [
+        (5.0, 420e6),
+        (3.3, 210e6),
+        (2.5, 140e6),
+        (1.8, 75e6),
+    ]
 
 
 def test_bss138_rows(book, part):

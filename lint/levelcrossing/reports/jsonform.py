@@ -126,8 +126,11 @@ def _speed(speed: Speed | None) -> dict[str, Any] | None:
         "rise_range_s": _spread(speed.rise_s),
         "fall_range_s": _spread(speed.fall_s),
         "load_farads": number(speed.load_farads),
+        "loaded_bit_s": number(speed.loaded_bit_s),
         "limit": speed.limit,
-        "needed_why": speed.needed_why,
+        "accuracy": speed.accuracy,
+        "usual_bit_s": number(speed.line.usual_bit_s) if speed.line is not None else None,
+        "needed_why": speed.line.why if speed.line is not None else "",
     }
 
 

@@ -180,9 +180,10 @@ class _Page:
                     clean(crossing.target),
                     clean(shifter + (f": {', '.join(crossing.link)}" if crossing.link else "")),
                     clean(crossing_levels(one.solved)),
+                    clean(phrases.good_for(one.solved.speed) if one.solved.speed is not None else ""),
                 )
             )
-        head = ("verdict", "from", "to", "by way of", "at the receiver")
+        head = ("verdict", "from", "to", "by way of", "at the receiver", "speed")
         return [
             "<h2>Every crossing</h2>",
             f"<details><summary>{phrases.count(len(rows), 'crossing')} from one supply to another</summary>",

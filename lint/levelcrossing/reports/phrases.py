@@ -6,7 +6,7 @@ import math
 import re
 from collections.abc import Iterable
 
-from levelcrossing.model import Finding, Outcome, Review, Spread
+from levelcrossing.model import Finding, Outcome, Review, Speed, Spread
 from levelcrossing.units import natural_key
 
 NOTICE = "This is a review of logic levels, not a safety approval: what it did not judge is yours to judge."
@@ -25,6 +25,8 @@ BASIS = {
     "traced": "weakest figure: traced on the board",
     "assumed": "weakest figure: assumed, a family default",
 }
+
+FASTEST_STATED = 100e6
 
 _PREFIXES = ((1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"), (1e-12, "p"))
 
@@ -60,6 +62,25 @@ def span(spread: Spread, unit: str = "V") -> str:
     """Return a range of voltages: ``4.75 to 5.25 V``, or one figure when it has no width to speak of."""
     low, high = volts(spread.low), volts(spread.high)
     return f"{low} {unit}" if low == high else f"{low} to {high} {unit}"
+
+
+def good_for(speed: Speed) -> str:
+    """Return the highest rate of a crossing at its load, what limits it, and what it must carry, in one line."""
+    load = f"into {quantity(speed.load_farads, 'F', 2)}"
+    if speed.usable_bit_s > FASTEST_STATED:
+        # Beyond this, lines are no lumped loads any more and the driver's own edge decides.
+        text = f"good for more than {quantity(FASTEST_STATED, 'bit/s', 2)} {load}"
+    else:
+        text = f"good for {quantity(speed.usable_bit_s, 'bit/s', 2)} {load}"
+        if speed.loaded_bit_s is not None:
+            text += f" ({quantity(speed.loaded_bit_s, 'bit/s', 2)} with 10 pF more)"
+        text += f", limited by {speed.limit}" if speed.limit else ""
+        text += f"; {speed.accuracy}" if speed.accuracy else ""
+    if speed.line is not None and speed.line.needed_bit_s is not None:
+        text += f"; must carry {quantity(speed.line.needed_bit_s, 'bit/s', 2)}" + (
+            f": {speed.line.why}" if speed.line.why else ""
+        )
+    return text
 
 
 def count(number: int, word: str, words: str = "") -> str:

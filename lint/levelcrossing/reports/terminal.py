@@ -292,6 +292,8 @@ class _Board:
             if one.condition:
                 self._labelled("only if", one.condition)
             self._labelled("levels", crossing_levels(one.solved))
+            if one.solved.speed is not None:
+                self._labelled("speed", phrases.good_for(one.solved.speed))
             self._labelled("rests on", "; ".join(evidence(one.solved, self.review)) or one.solved.crossing.basis.value)
 
     def _waived(self) -> None:
