@@ -14,7 +14,8 @@ from levelcrossing.model import Settings
 from levelcrossing.read import read_board
 from levelcrossing.review import open_case
 
-BOARD = Path(__file__).parent.parent / "sample_boards" / "tide_gauge_faulty" / "tide_gauge_faulty.net"
+BOARDS = Path(__file__).parent.parent / "sample_boards"
+BOARD = BOARDS / "tide_gauge_faulty" / "tide_gauge_faulty.net"
 
 
 def test_every_deck_gives_the_receiver_s_voltage_within_a_tenth_of_a_millivolt(
@@ -48,3 +49,37 @@ def test_every_deck_gives_the_receiver_s_voltage_within_a_tenth_of_a_millivolt(
             assert float(found.group(1)) == pytest.approx(state.receiver_volts.nominal, abs=1e-4), deck.name
             compared += 1
     assert compared >= 25
+
+
+def test_the_edges_in_the_decks_are_those_of_the_review(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """ngspice (Debian package): edges and delays of three boards; 1 % at the 95th percentile, 5 % at worst."""
+    errors: list[float] = []
+    for name in ("tide_gauge", "tide_gauge_faulty", "kiln_logger"):
+        board = BOARDS / name / f"{name}.net"
+        folder = tmp_path / name
+        main(["review", str(board), "--decks", str(folder), "--stop-at", "never"])
+        capsys.readouterr()
+        case = open_case(read_board(str(board)), Settings(), tradebook.load())
+        for index, solved in enumerate(case.crossings):
+            (deck,) = list(folder.glob(f"{index:03d}_*_edges.cir")) or [None]
+            assert (deck is None) is (solved.speed is None)
+            if deck is None or solved.speed is None:
+                continue
+            out = subprocess.run(
+                ["ngspice", "-b", str(deck)], capture_output=True, text=True, timeout=120, check=False
+            ).stdout
+            measured = {
+                name: float(value) for name, value in re.findall(r"^(\w+)\s+=\s+([-\d.e+]+)", out, re.MULTILINE)
+            }
+            speed = solved.speed
+            for key, ours in (
+                ("rise", speed.rise_s),
+                ("fall", speed.fall_s),
+                ("delay_vih", speed.delay_high_s),
+                ("delay_vil", speed.delay_low_s),
+            ):
+                errors.append(abs(measured[key] / ours.nominal - 1))
+    assert len(errors) >= 60
+    errors.sort()
+    assert errors[int(0.95 * len(errors))] < 0.01
+    assert errors[-1] < 0.05

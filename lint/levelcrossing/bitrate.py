@@ -185,6 +185,23 @@ class TimingJob:
     vil_volts: Value
     edge_s: float = EDGE_S
 
+    def member(self, index: int) -> TimingJob:
+        """Return one member of the batch, all its values plain floats."""
+
+        def pick(value: Value) -> float:
+            flat = np.ravel(value)
+            return float(flat[index if flat.size > 1 else 0])
+
+        return TimingJob(
+            network=self.network.member(index),
+            low={node: pick(volts) for node, volts in self.low.items()},
+            high={node: pick(volts) for node, volts in self.high.items()},
+            watch=self.watch,
+            vih_volts=pick(self.vih_volts),
+            vil_volts=pick(self.vil_volts),
+            edge_s=self.edge_s,
+        )
+
 
 def timings(jobs: Sequence[TimingJob], *, confirm: bool = True) -> list[Timing]:
     """Time many circuits; those of equal topology share a batch, which is what makes them fast.

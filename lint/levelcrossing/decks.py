@@ -31,6 +31,8 @@ class Step:
         Length of the linear ramp [s].
     points : mapping from node to pairs of time and volts
         Fixed nodes that follow a waveform of their own, linear between its points [s, V].
+    longest_s : float
+        Longest step that the simulator may take [s]; 0 leaves it the choice.
     """
 
     before: Mapping[str, float]
@@ -38,6 +40,7 @@ class Step:
     until_s: float
     edge_s: float = 1e-9
     points: Mapping[str, tuple[tuple[float, float], ...]] = field(default_factory=dict)
+    longest_s: float = 0.0
 
 
 class _Lookup(Protocol):
@@ -169,6 +172,7 @@ def deck(
     step: Step | None = None,
     watch: Sequence[str] = (),
     remarks: Sequence[str] = (),
+    measures: Sequence[str] = (),
     tolerance: float = 1e-4,
 ) -> str:
     """Write one member of a network as a deck that a SPICE simulator runs as it is.
@@ -186,6 +190,8 @@ def deck(
         Nodes whose edges the transient measures; their voltages are printed.
     remarks : sequence of str
         Comment lines under the title.
+    measures : sequence of str
+        ``.meas`` lines; ``{watch}`` in them stands for the voltage of the first watched node.
     tolerance : float
         Relative tolerance asked of the simulator [1].
 
@@ -220,9 +226,11 @@ def deck(
     lines += _leaks(one, names)
     lines.append(".op")
     if step:
-        lines.append(f".tran {_number(step.until_s / 500)} {_number(step.until_s)}")
+        longest = f" 0 {_number(step.longest_s)}" if step.longest_s else ""
+        lines.append(f".tran {_number(step.until_s / 500)} {_number(step.until_s)}{longest}")
         if watch:
             lines.append(".print tran " + " ".join(f"v({names.nodes[node]})" for node in watch))
+            lines += [line.replace("{watch}", f"v({names.nodes[watch[0]]})") for line in measures]
     lines += [".end", ""]
     return "\n".join(lines)
 

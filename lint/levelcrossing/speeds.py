@@ -30,7 +30,7 @@ from levelcrossing.model import (
     Spread,
     TranslatorFacts,
 )
-from levelcrossing.network import GROUND, Network, Value
+from levelcrossing.network import GROUND, Network
 from levelcrossing.solutions import neighbourhood, with_end
 from levelcrossing.units import format_si
 
@@ -75,10 +75,11 @@ def with_speeds(
         if not _levels_hold(one):
             continue
         line = _line(one.crossing, line_rates)
-        made = _job(one.crossing, islands, rails, settings, drains=line is not None and line.open_drain)
+        made = timing_job(one.crossing, islands, rails, settings, drains=line is not None and line.open_drain)
         if made is None:
             continue
-        job, island, load, key = made
+        job, island, load = made
+        key = _key(job)
         if key not in seen:
             seen[key] = len(jobs)
             jobs.append(job)
@@ -137,9 +138,27 @@ def _line(crossing: Crossing, line_rates: Mapping[str, LineRate]) -> LineRate | 
     return next((line_rates[net] for net in nets if net in line_rates), None)
 
 
-def _job(
+def timing_job(
     crossing: Crossing, islands: Sequence[Island], rails: Rails, settings: Settings, *, drains: bool
-) -> tuple[TimingJob, Island, float, tuple[object, ...]] | None:
+) -> tuple[TimingJob, Island, float] | None:
+    """Return the circuit of a crossing with its capacitances and a driver that switches; member 0 has the usual values.
+
+    Parameters
+    ----------
+    crossing : Crossing
+        With a driver that is modelled.
+    islands : sequence of Island
+    rails : Rails
+    settings : Settings
+    drains : bool
+        Take the driver for an open drain, whatever its pin could do.
+
+    Returns
+    -------
+    tuple of (TimingJob, Island, float) or None
+        The circuit, the island it was made from, and the capacitance on the receiver's net [F]; None when the driver
+        does not stand in that circuit or a value is missing.
+    """
     pin = crossing.stage_driver or crossing.driver
     assert pin is not None and pin.drive is not None and pin.supply_volts is not None
     island = with_end(islands[crossing.island], crossing)
@@ -197,7 +216,7 @@ def _job(
         if branch.kind == "capacitor" and crossing.receiver.net in branch.nodes
     ]
     load = float(sum(float(np.ravel(value)[0]) for value in farads))
-    return job, island, load, _key(job)
+    return job, island, load
 
 
 def _key(job: TimingJob) -> tuple[object, ...]:
@@ -282,21 +301,9 @@ def _loaded(job: TimingJob, timing: Timing) -> TimingJob | None:
     """
     if not bool(np.all(timing.solved)) or bool(np.any(timing.remembers)) or not np.all(np.isfinite(timing.bit_s)):
         return None
-    worst = np.array([int(np.argmax(timing.bit_s))], dtype=np.intp)
-
-    def at(value: Value) -> Value:
-        return np.ravel(value)[worst] if np.size(value) > 1 else value
-
-    network = job.network.taking(worst)
+    worst = job.member(int(np.argmax(timing.bit_s)))
     more = devices.capacitor("more load", job.watch, GROUND, MORE_FARADS)
-    return replace(
-        job,
-        network=Network(branches=(*network.branches, more), fixed=network.fixed),
-        low={node: at(volts) for node, volts in job.low.items()},
-        high={node: at(volts) for node, volts in job.high.items()},
-        vih_volts=at(job.vih_volts),
-        vil_volts=at(job.vil_volts),
-    )
+    return replace(worst, network=Network(branches=(*worst.network.branches, more), fixed=worst.network.fixed))
 
 
 def _accuracy(crossing: Crossing, island: Island) -> str:
