@@ -210,8 +210,9 @@ def test_the_summary_file_of_a_build_is_appended_to(folder: Path, monkeypatch: p
 def test_decks_of_a_run(folder: Path) -> None:
     cli.main(["review", "bad/bad.net", "--decks", "decks"])
     decks = sorted(path.name for path in Path("decks").iterdir())
-    assert decks == ["000_U1.4_to_U2.2_high.cir", "000_U1.4_to_U2.2_low.cir"]
-    assert ".op" in Path("decks", decks[0]).read_text(encoding="utf-8")
+    assert decks == [f"000_U1.4_to_U2.2_{what}.cir" for what in ("edges", "high", "low")]
+    assert ".meas tran rise" in Path("decks", decks[0]).read_text(encoding="utf-8")
+    assert ".op" in Path("decks", decks[1]).read_text(encoding="utf-8")
 
 
 def test_rails_shows_voltage_and_evidence(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:

@@ -39,7 +39,10 @@ LAYERS: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
         WORDS,
     ),
     "circuits": (("corners", "circuits"), (*WORDS, "numerics")),
-    "solutions": (("solutions", "offstates", "remedies", "speeds", "busrates"), (*SOLVING, "kinds of parts")),
+    "solutions": (
+        ("solutions", "offstates", "remedies", "dividers", "speeds", "busrates"),
+        (*SOLVING, "kinds of parts"),
+    ),
     "judging": (("rulebook", "scope", "likeness", "waivers"), (*WORDS, "settings")),
     "review": (
         ("review",),
@@ -49,7 +52,7 @@ LAYERS: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "reports": (("reports", "reports.*"), (*WORDS, "judging", "comparison")),
     "commands": (
         (
-            *("reviewing", "railtree", "compare", "rulelist", "settings_draft", "waive", "sizing", "partinfo"),
+            *("reviewing", "railtree", "compare", "rulelist", "settings_draft", "waive", "sizing", "sizing_cells", "partinfo"),
             *("roots", "revisions", "deckfiles"),
         ),
         (*SOLVING, *FACTS, "reading", "rails", "solutions", "judging", "review", "comparison", "reports"),
@@ -63,6 +66,7 @@ OUTSIDE = {
     "networkx": ("islands", "crossings"),
     "rich": ("reports.terminal", "reports.screen"),
     "numpy": (
+        "dividers",
         *("network", "elimination", "arrays", "solve", "waveforms", "transient", "bitrate"),
         *("corners", "circuits", "solutions", "offstates", "speeds"),
     ),

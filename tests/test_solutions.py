@@ -132,3 +132,30 @@ def test_two_signals_that_meet_in_a_transistor_are_taken_in_every_combination() 
     for state in solved.states.values():
         margins = [margin for margin in (state.high_margin, state.low_margin) if margin is not None]
         assert len(margins) == 1 and margins[0].spread.nominal > 0, state.state
+
+
+@pytest.mark.parametrize("net", ["/0", "/Q"])
+@pytest.mark.parametrize("value", ["TXS0104E", "LSF0204", "PCA9306"])
+def test_a_pass_translator_passes_its_lower_supply_and_no_more(value: str, net: str) -> None:
+    """TI TXS0104E SCES651, LSF0204 SLVSCP5: the gate is biased from the low side; the high side's 5 V stay there."""
+    names = {
+        "TXS0104E": ("VCCA", "VCCB", "A1", "B1", "8 OE input +3V3"),
+        "LSF0204": ("Vref_A", "Vref_B", "A1", "B1", "8 EN input +3V3"),
+        "PCA9306": ("VREF1", "VREF2", "SDA1", "SDA2", "8 EN input +5V"),
+    }[value]
+    case = case_of(
+        SUPPLIES
+        + INVERTER_5V.format(out=net)
+        + f"U7 {value} Logic_LevelTranslator:x | 1 {names[0]} power_in +3V3 | 14 {names[1]} power_in +5V"
+        f" | 7 GND power_in GND | {names[4]} | 2 {names[2]} bidirectional /A | 13 {names[3]} bidirectional {net}\n"
+        + CONTROLLER
+        + resistor("R1", "10k", "+3V3", "/A")
+    )
+    (found,) = [
+        solved
+        for solved in case.crossings
+        if solved.crossing.receiver.part == "U1" and solved.crossing.driver and solved.crossing.driver.part == "U2"
+    ]
+    high = found.states["high"].receiver_volts
+    assert high.nominal == pytest.approx(3.3, abs=0.02)
+    assert high.low > 3.2 and high.high < 3.4

@@ -268,27 +268,32 @@ class Builder:
         """Add a pass switch: a channel whose internal gate lies one threshold above the highest level that it passes."""
         facts = element.facts
         assert isinstance(facts, TranslatorFacts)
-        side = next(
-            (
-                pin
-                for pin in self.island.pins
-                if pin.part == element.part and pin.net in element.nets and pin.supply_volts is not None
-            ),
-            None,
+        # The gate is biased from the lower of the two supplies, whichever side a pin of it is met first.
+        ends = [
+            (self.overrides.get(pin.supply, pin.supply_volts), pin)
+            for pin in self.island.pins
+            if pin.part == element.part and pin.net in element.nets and pin.supply_volts is not None
+        ]
+        biased = min(
+            ((volts, pin) for volts, pin in ends if volts is not None), key=lambda end: end[0].nominal, default=None
         )
-        supply = side.supply_volts if side is not None else None
-        if supply is None:
+        if biased is None:
             self.plan.missing.append(element.part)
             return
+        supply, side = biased
         threshold = facts.switch_threshold_volts or SWITCH_THRESHOLD_VOLTS
-        passes = Spread(
-            low=_passed(facts, supply.low), nominal=_passed(facts, supply.nominal), high=_passed(facts, supply.high)
-        )
-        key = self.plan.variable(f"{element.part} pass level", passes, "V")
+        key = self.supply_key(side)
         gate = f"gate inside {label}"
-        self.plan.fixed[gate] = lambda codes: values_of(passes, codes[key]) + threshold
+        passed = facts.pass_level
+
+        def bias(codes: Mapping[str, Codes]) -> Value:
+            volts = values_of(supply, codes[key]) if key is not None else np.asarray(supply.nominal)
+            return (volts if passed is None else level_at(passed, volts)) + threshold
+
+        self.plan.fixed[gate] = bias
+        highest = float(supply.nominal if passed is None else passed.at(supply.nominal))
         ohms = facts.switch_ohms or 10.0
-        gain = 1.0 / (ohms * max(passes.nominal, 0.5))
+        gain = 1.0 / (ohms * max(highest, 0.5))
         self.plan.makers.append(
             lambda codes: (devices.switch(label, nodes[0], gate, nodes[1], threshold_volts=threshold, gain=gain),)
         )
@@ -345,7 +350,3 @@ class Builder:
         self.plan.makers.append(
             lambda codes: (devices.resistor(label, source, pin.net, values_of(ohms, codes[output])),)
         )
-
-
-def _passed(facts: TranslatorFacts, supply_volts: float) -> float:
-    return facts.pass_level.at(supply_volts) if facts.pass_level is not None else supply_volts

@@ -153,7 +153,13 @@ def _size_arguments(parser: Parser) -> None:
     parser.add_argument("--from", dest="from_volts", metavar="VOLTS", required=True, help="supply of the driver")
     parser.add_argument("--to", dest="to_volts", metavar="VOLTS", required=True, help="supply of the receiver")
     parser.add_argument("--rate", metavar="BIT/S", help="bit rate to reach, such as 400k or 8M")
-    parser.add_argument("--load", metavar="FARADS", help="load at the receiver, such as 15p")
+    parser.add_argument("--load", metavar="FARADS", help="load on each side, such as 15p (20p when not given)")
+    parser.add_argument("--sink", metavar="AMPERES", help="greatest current that a low driver may sink, such as 3m")
+    parser.add_argument("--two-way", action="store_true", help="signals go both ways on the line")
+    parser.add_argument("--open-drain", action="store_true", help="drivers only pull low, as on I2C")
+    parser.add_argument(
+        "--series", choices=("E24", "E96"), default="E24", help="preferred values of dividers (E24 when not given)"
+    )
 
 
 def _part_arguments(parser: Parser) -> None:

@@ -84,7 +84,11 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
     rates = busrates.line_rates(board, pins, book.buses, settings)
     solved = speeds.with_speeds(solved, islands, rails, rates, settings)
     solved = tuple(
-        replace(one, proposal=remedies.propose(one), off_states=offstates.power_down(one, islands, rails))
+        replace(
+            one,
+            proposal=remedies.propose(one, speeds.line_of(one.crossing, rates), settings.stray_farads),
+            off_states=offstates.power_down(one, islands, rails),
+        )
         for one in solved
     )
     return CaseFile(

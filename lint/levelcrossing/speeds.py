@@ -74,7 +74,7 @@ def with_speeds(
     for index, one in enumerate(solved):
         if not _levels_hold(one):
             continue
-        line = _line(one.crossing, line_rates)
+        line = line_of(one.crossing, line_rates)
         made = timing_job(one.crossing, islands, rails, settings, drains=line is not None and line.open_drain)
         if made is None:
             continue
@@ -133,7 +133,8 @@ def _accelerated(one: SolvedCrossing) -> bool:
     return weak or passed
 
 
-def _line(crossing: Crossing, line_rates: Mapping[str, LineRate]) -> LineRate | None:
+def line_of(crossing: Crossing, line_rates: Mapping[str, LineRate]) -> LineRate | None:
+    """Return what a crossing must carry: the receiver's net counts before the driver's."""
     nets = (crossing.receiver.net, crossing.driver.net if crossing.driver is not None else "")
     return next((line_rates[net] for net in nets if net in line_rates), None)
 
@@ -276,7 +277,7 @@ def _speed(
 ) -> Speed | None:
     if not bool(np.all(timing.solved)) or not math.isfinite(float(timing.bit_s[0])):
         return None
-    line = _line(crossing, line_rates)
+    line = line_of(crossing, line_rates)
     worst = float(timing.bit_s.max())
     usual = float(timing.bit_s[0])
     return Speed(
