@@ -79,6 +79,8 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 else f"it conducts with hardly any overdrive; the low of {crossing.target} still ends at {format_volts(state.low_margin.at)}."
             )
         )
+        if state.low_margin.break_even:
+            text += f" At the least favourable corner {state.low_margin.break_even}."
         outcome = Outcome.MALFUNCTION if state.low_margin.spread.nominal < 0 else Outcome.MARGINAL
         yield solved.finding(
             index,

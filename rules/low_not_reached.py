@@ -34,7 +34,7 @@ def check(case: CaseFile) -> Iterator[Finding]:
             text = (
                 f"{solved.crossing.target} reads a low from {format_volts(solved.vil.nominal if solved.vil else margin.limit)} down; {solved.crossing.source} brings it to "
                 f"{format_volts(state.receiver_volts.nominal)} ({format_volts(margin.at)} against {format_volts(margin.limit)}{where})."
-            )
+            ) + (f" In that corner {margin.break_even}." if margin.break_even else "")
             parts = " and ".join(solved.crossing.shifter.parts)
             remedy = f"Use larger pull-ups on {solved.crossing.receiver.net}, a stronger driver" + (
                 f", or a MOSFET pair or a translator in place of {parts}." if parts else "."

@@ -9,7 +9,8 @@ malfunction at the usual values, marginal when only the slow corner fails; when 
 limit of its mode; when a translator is rated for less; and, as unknown, when the bus usually runs faster than the circuit
 is good for and nothing states its rate.
 
-Stays quiet when nothing tells a rate, and when the slow corner still carries the usual one.
+Stays quiet when nothing tells a rate, when the slow corner still carries the usual one, and when a corner does not reach
+its level however long it takes (high-not-reached and low-not-reached speak of that).
 """
 
 from collections.abc import Iterator
@@ -33,6 +34,9 @@ def check(case: CaseFile) -> Iterator[Finding]:
     for index, solved in enumerate(case.crossings):
         speed = solved.speed
         if speed is None or speed.line is None:
+            continue
+        if speed.usable_bit_s <= 0 and speed.nominal_bit_s >= (speed.line.needed_bit_s or 0.0):
+            # A corner never reaches its level at all: that is not a matter of speed, and said elsewhere.
             continue
         found = _rise(index, solved, speed.line) or _rate(index, solved, speed.line)
         if found is not None:

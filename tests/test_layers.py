@@ -40,7 +40,7 @@ LAYERS: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     ),
     "circuits": (("corners", "circuits"), (*WORDS, "numerics")),
     "solutions": (
-        ("solutions", "offstates", "remedies", "dividers", "speeds", "busrates"),
+        ("solutions", "offstates", "remedies", "dividers", "breakeven", "speeds", "busrates"),
         (*SOLVING, "kinds of parts"),
     ),
     "judging": (("rulebook", "scope", "likeness", "waivers"), (*WORDS, "settings")),
@@ -52,7 +52,17 @@ LAYERS: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "reports": (("reports", "reports.*"), (*WORDS, "judging", "comparison")),
     "commands": (
         (
-            *("reviewing", "railtree", "compare", "rulelist", "settings_draft", "waive", "sizing", "sizing_cells", "partinfo"),
+            *(
+                "reviewing",
+                "railtree",
+                "compare",
+                "rulelist",
+                "settings_draft",
+                "waive",
+                "sizing",
+                "sizing_cells",
+                "partinfo",
+            ),
             *("roots", "revisions", "deckfiles"),
         ),
         (*SOLVING, *FACTS, "reading", "rails", "solutions", "judging", "review", "comparison", "reports"),
@@ -66,7 +76,7 @@ OUTSIDE = {
     "networkx": ("islands", "crossings"),
     "rich": ("reports.terminal", "reports.screen"),
     "numpy": (
-        "dividers",
+        *("dividers", "breakeven"),
         *("network", "elimination", "arrays", "solve", "waveforms", "transient", "bitrate"),
         *("corners", "circuits", "solutions", "offstates", "speeds"),
     ),

@@ -19,7 +19,8 @@ LOW, NOMINAL, HIGH = 0, 1, 2
 FULL_COMBINATIONS = 7
 INTERIOR_SAMPLES = 8
 
-Codes = npt.NDArray[np.int8]
+# Whole codes choose an extreme; codes between them, for a sweep, stand for values between.
+Codes = npt.NDArray[np.int8] | npt.NDArray[np.float64]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -94,8 +95,12 @@ def chosen_corners(count: int, influence: Sequence[float]) -> Codes:
 
 
 def values_of(spread: Spread, codes: Codes) -> npt.NDArray[np.float64]:
-    """Return the values that one row of codes stands for."""
-    return np.array([spread.low, spread.nominal, spread.high])[codes]
+    """Return the values that one row of codes stands for; codes that are no whole numbers stand for values between."""
+    values = np.array([spread.low, spread.nominal, spread.high])
+    if np.issubdtype(codes.dtype, np.floating):
+        return np.asarray(np.interp(codes, [LOW, NOMINAL, HIGH], values), dtype=np.float64)
+    chosen: npt.NDArray[np.float64] = values[codes]
+    return chosen
 
 
 def in_words(variables: Sequence[Variable], column: Sequence[int], influence: Sequence[float] | None = None) -> str:

@@ -1079,14 +1079,17 @@ class Margin:
         Least, nominal and greatest margin.
     worst_corner : str
         The corner of the least margin in words ("R1 +1 %, +5V at 5.25 V").
-    at_volts, limit_volts : float
+    at, limit : float
         Value and limit at that corner.
+    break_even : str
+        The value of a transistor's parameter up to which it holds, where one parameter decides.
     """
 
     spread: Spread
     worst_corner: str = ""
     at: float = 0.0
     limit: float = 0.0
+    break_even: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

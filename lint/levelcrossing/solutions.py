@@ -9,6 +9,7 @@ from itertools import product
 import numpy as np
 import numpy.typing as npt
 
+from levelcrossing.breakeven import break_even
 from levelcrossing.circuits import MOST_NODES, Builder, level_at
 from levelcrossing.corners import Codes, Variable, all_corners, chosen_corners, in_words, one_at_a_time
 from levelcrossing.model import (
@@ -183,10 +184,42 @@ class _Solver:
             reads_low=not seen_high and reads,
             influence=influence,
         )
+        result = self._with_break_evens(result, probe, receiver, supply_key, codes, answer, limits)
         if receiver.inferred_far_end:
             # What is plugged in there may read as guessed; what it bears is its own affair.
             result = replace(result, rating_margin=None, low_rating_margin=None)
         return result, limits
+
+    @staticmethod
+    def _with_break_evens(
+        result: StateResult,
+        probe: _Probe,
+        receiver: PinModel,
+        supply_key: str | None,
+        codes: Codes,
+        answer: _Answer,
+        limits: _Limits,
+    ) -> StateResult:
+        """Add, to each level that fails in a corner, the parameter's value up to which it holds."""
+        plan = probe.builder.plan
+
+        def found(margin: Margin | None, limit: str, sign: float, at_corners: Vector) -> Margin | None:
+            if margin is None or not result.solved or margin.spread.low >= -1e-6:
+                return margin
+            worst = codes[:, int(np.argmin(sign * (answer.receiver - at_corners)))]
+
+            def margin_of(swept: Codes) -> Vector:
+                volts = plan.values(supply_key, swept) if supply_key is not None else _nominal_supply(receiver)
+                level = getattr(_Limits.of(receiver, volts), limit)
+                return np.asarray(sign * (probe.answer(swept).receiver - level))
+
+            return replace(margin, break_even=break_even(margin_of, plan.variables, worst))
+
+        return replace(
+            result,
+            high_margin=found(result.high_margin, "vih", 1.0, limits.vih),
+            low_margin=found(result.low_margin, "vil", -1.0, limits.vil),
+        )
 
 
 def combined_drivers(crossing: Crossing, island: Island) -> tuple[PinModel, ...]:
