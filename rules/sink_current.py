@@ -14,7 +14,7 @@ Stays quiet when the current keeps within the rating at every corner, and when n
 from collections.abc import Iterator
 from dataclasses import replace
 
-from levelcrossing.model import CaseFile, Finding, Outcome
+from levelcrossing.model import Basis, CaseFile, Finding, Outcome
 
 NAME = "sink-current"
 OUTCOME = Outcome.DAMAGE
@@ -34,6 +34,11 @@ def check(case: CaseFile) -> Iterator[Finding]:
             continue
         amps = state.driver_amps
         rated, most = pin.drive.rated_low_amps, pin.drive.limit_amps
+        what_rated = "its low level is guaranteed up to"
+        line = case.line_rates.get(pin.net)
+        if line is not None and line.sink_amps is not None and (rated is None or pin.drive.basis is Basis.ASSUMED):
+            # Of a part without data, what its bus asks of every part.
+            rated, what_rated = line.sink_amps, "its bus asks every driver to sink"
         if most is not None and amps.high > most * (1 + 1e-9):
             outcome, limit, what = (
                 Outcome.DAMAGE if amps.nominal > most else Outcome.MARGINAL,
@@ -41,7 +46,7 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 "its absolute maximum is",
             )
         elif rated is not None and amps.high > rated * (1 + 1e-9):
-            outcome, limit, what = Outcome.MARGINAL, rated, "its low level is guaranteed up to"
+            outcome, limit, what = Outcome.MARGINAL, rated, what_rated
         else:
             continue
         done.add((pin.part, pin.number))

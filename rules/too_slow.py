@@ -27,6 +27,8 @@ SOURCES = (
     "data rates in the translator's data sheet",
 )
 NEARLY = 1e-9
+# 30 to 70 % of an RC rise takes ln(7/3) RC (UM10204 section 7.1 writes 0.8473).
+LN_7_3 = 0.8473
 
 
 def check(case: CaseFile) -> Iterator[Finding]:
@@ -54,7 +56,19 @@ def _rise(index: int, solved: SolvedCrossing, line: LineRate) -> Finding | None:
         f"{format_si(rise.high, 's', 2)} at worst, into {format_si(speed.load_farads, 'F', 2)}; its bus allows {format_si(most, 's', 2)} ({line.why})."
     )
     outcome = Outcome.MALFUNCTION if rise.nominal > most else Outcome.MARGINAL
-    return solved.finding(index, NAME, outcome, text, remedy="Use a smaller pull-up, or shorten the line.")
+    return solved.finding(index, NAME, outcome, text, remedy=_window(solved, line, most))
+
+
+def _window(solved: SolvedCrossing, line: LineRate, most_s: float) -> str:
+    """State both ends of the pull-up window: the rise asks for at most, the current that a driver sinks for at least."""
+    speed, receiver = solved.speed, solved.crossing.receiver
+    assert speed is not None
+    greatest = most_s / (LN_7_3 * speed.load_farads)
+    text = f"Pull {receiver.net} up with {format_si(greatest, 'Ω', 2)} at most"
+    if line.sink_amps and line.sink_volts is not None and receiver.supply_volts is not None:
+        least = (receiver.supply_volts.high - line.sink_volts) / line.sink_amps
+        text += f" (all pull-ups of the line together: {format_si(least, 'Ω', 2)} at least, for {format_si(line.sink_amps, 'A', 2)})"
+    return text + ", or shorten the line."
 
 
 def _rate(index: int, solved: SolvedCrossing, line: LineRate) -> Finding | None:

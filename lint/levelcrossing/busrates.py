@@ -11,6 +11,7 @@ import fnmatch
 import re
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import replace
 
 from levelcrossing.model import Board, BusFacts, LineRate, PinModel, Settings
 from levelcrossing.pinnames import pin_words
@@ -51,35 +52,33 @@ def line_rates(
         stated = next(((name, rate) for name, rate in settings.rates if fnmatch.fnmatchcase(one.name, name)), None)
         bus_group = told.get(one.name)
         if stated is not None:
-            rise = _rise_limit(bus_group[0], stated[1]) if bus_group is not None else None
-            rates[one.name] = LineRate(
-                needed_bit_s=stated[1],
-                why=f"the settings ask {stated[0]} for it",
-                rise_30_70_max_s=rise,
-                open_drain=bus_group is not None and bus_group[0].open_drain,
-            )
+            known = bus_group[0] if bus_group is not None else None
+            rates[one.name] = _line(known, stated[1], f"the settings ask {stated[0]} for it")
         elif bus_group is not None:
             bus, group = bus_group
             usual = bus.bits_per_second or 0.0
-            rates[one.name] = LineRate(
-                needed_bit_s=bus.least_bits_per_second,
-                why=f"{bus.title}: {bus.least_why}" if bus.least_why else "",
-                usual_bit_s=usual,
-                usual_why=f"{bus.title} usually runs at {format_si(usual, 'bit/s', 2)}",
-                rise_30_70_max_s=_rise_limit(bus, bus.least_bits_per_second or usual),
-                bus=bus.name,
-                group=group,
-                open_drain=bus.open_drain,
+            line = _line(
+                bus, bus.least_bits_per_second, f"{bus.title}: {bus.least_why}" if bus.least_why else "", at=usual
             )
+            said = f"{bus.title} usually runs at {format_si(usual, 'bit/s', 2)}"
+            rates[one.name] = replace(line, usual_bit_s=usual, usual_why=said, bus=bus.name, group=group)
     return rates
 
 
-def _rise_limit(bus: BusFacts, bits_per_second: float) -> float | None:
-    """Return the longest 30-70 % rise in the slowest mode that runs at a rate [s]."""
-    if not bus.open_drain:
-        return None
-    fitting = [mode for mode in bus.modes if mode.bits_per_second >= bits_per_second * (1 - 1e-9)]
-    return fitting[0].rise_max_s if fitting else None
+def _line(bus: BusFacts | None, needed_bit_s: float | None, why: str, at: float = 0.0) -> LineRate:
+    """Return a line's rate with what its bus demands of an open drain in the slowest mode that runs at that rate."""
+    mode = None
+    if bus is not None and bus.open_drain:
+        rate = needed_bit_s or at
+        mode = next((mode for mode in bus.modes if mode.bits_per_second >= rate * (1 - 1e-9)), None)
+    return LineRate(
+        needed_bit_s=needed_bit_s,
+        why=why,
+        open_drain=bus is not None and bus.open_drain,
+        rise_30_70_max_s=mode.rise_max_s if mode is not None else None,
+        sink_amps=mode.sink_amps if mode is not None else None,
+        sink_volts=mode.sink_volts if mode is not None else None,
+    )
 
 
 def _lines_of(bus: BusFacts, board: Board, pins: Mapping[tuple[str, str], PinModel]) -> Iterable[tuple[str, str]]:

@@ -707,6 +707,8 @@ class LineRate:
         The bus that names or parts gave away, and what its lines have in common.
     open_drain : bool
         Every driver of that bus only pulls low.
+    sink_amps, sink_volts : float or None
+        Current that every driver of that bus sinks, and the low level it then holds [A, V].
     """
 
     needed_bit_s: float | None
@@ -717,6 +719,8 @@ class LineRate:
     bus: str = ""
     group: str = ""
     open_drain: bool = False
+    sink_amps: float | None = None
+    sink_volts: float | None = None
 
 
 # --------------------------------------------------------------------------------------------------------------- rails

@@ -153,3 +153,16 @@ def test_a_stated_rate_chooses_the_mode_of_an_i2c_line(stated: str | None, speak
     settings = Settings(rates=(("/SDA", float(stated[:-1]) * 1e3),)) if stated else Settings()
     found = named(findings_of(text, settings), "too-slow")
     assert any("300 ns" in finding.text for finding in found) is speaks
+
+
+def test_the_remedy_states_both_ends_of_the_pull_up_window() -> None:
+    """UM10204 section 7.1: at most tr / (0.8473 Cb) = 39.3 kohm at 1 us and 30 pF, at least (VDD - 0.4 V) / 3 mA."""
+    text = (
+        SUPPLIES
+        + CONTROLLER
+        + "U3 DS1307Z+ Timer_RTC:DS1307Z+ | 8 VCC power_in +5V | 4 GND power_in GND | 5 SDA bidirectional /SDA\n"
+        + resistor("R1", "68k", "+3V3", "/SDA")
+    )
+    slow = [finding for finding in named(findings_of(text), "too-slow") if finding.part == "U1"]
+    assert "39 kΩ at most" in slow[0].remedy
+    assert "990 Ω at least" in slow[0].remedy and "3 mA" in slow[0].remedy  # (3.366 - 0.4) / 3 mA
