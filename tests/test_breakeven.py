@@ -53,3 +53,10 @@ def test_a_finding_states_the_gain_that_would_do(base: str) -> None:
         if emitter_amps / base_amps == pytest.approx(needed, rel=0.12):
             return
     pytest.fail("no corner of the supply explains the stated gain")
+
+
+def test_a_diode_beside_the_transistor_keeps_its_corner() -> None:
+    text = BUS + PULL_UPS + BIPOLAR_CELL.format(base="+3V3").replace("1k", "22k")
+    text += "D1 BAT54 Diode:BAT54 | 1 K passive +5V | 2 A passive /SDA5\n"
+    (found,) = named(findings_of(text), "low-not-reached")
+    assert "it holds while the reverse gain of Q1" in found.text

@@ -223,8 +223,9 @@ class Builder:
         arrays = {name: np.array([[table[i][j][name] for j in range(3)] for i in range(3)]) for name in names}
 
         def make(codes: Mapping[str, Codes]) -> Sequence[Branch]:
-            rows = codes[drop]
-            columns = codes[zener] if zener else np.ones_like(rows)
+            # A diode's curves stand at their extremes only; in a sweep of something else the codes come as floats.
+            rows = np.rint(codes[drop]).astype(np.intp)
+            columns = np.rint(codes[zener]).astype(np.intp) if zener else np.ones_like(rows)
             values: dict[str, Value] = {name: arrays[name][rows, columns] for name in names}
             return (devices.diode(label, nodes[0], nodes[1], values),)
 

@@ -166,3 +166,15 @@ def test_the_remedy_states_both_ends_of_the_pull_up_window() -> None:
     slow = [finding for finding in named(findings_of(text), "too-slow") if finding.part == "U1"]
     assert "39 kΩ at most" in slow[0].remedy
     assert "990 Ω at least" in slow[0].remedy and "3 mA" in slow[0].remedy  # (3.366 - 0.4) / 3 mA
+
+
+@pytest.mark.parametrize(
+    ("rate", "outcome"), [(2 * 125e3, None), (2 * 1e6, Outcome.MARGINAL), (2 * 8e6, Outcome.MALFUNCTION)]
+)
+def test_a_divider_on_a_breadboard(rate: float, outcome: Outcome | None) -> None:
+    """2 k over 3 k: fine at 125 kHz, poor at 1 MHz, useless at 8 MHz (common practice); 120 pF of wires, rows and a probe."""
+    text = SUPPLIES + CONTROLLER + INVERTER_5V.format(out="/Y")
+    text += resistor("R1", "2k", "/Y", "/A") + resistor("R2", "3k", "/A", "GND")
+    settings = Settings(stray_farads=120e-12, rates=(("/A", rate),))
+    found = [finding.outcome for finding in named(findings_of(text, settings), "too-slow")]
+    assert found == ([outcome] if outcome else [])

@@ -72,8 +72,10 @@ def good_for(speed: Speed) -> str:
         text = f"good for more than {quantity(FASTEST_STATED, 'bit/s', 2)} {load}"
     else:
         text = f"good for {quantity(speed.usable_bit_s, 'bit/s', 2)} {load}"
+        inside = [f"{quantity(speed.nominal_bit_s, 'bit/s', 2)} at the usual values"]
         if speed.loaded_bit_s is not None:
-            text += f" ({quantity(speed.loaded_bit_s, 'bit/s', 2)} with 10 pF more)"
+            inside.append(f"{quantity(speed.loaded_bit_s, 'bit/s', 2)} with 10 pF more")
+        text += f" ({', '.join(inside)})"
         text += f", limited by {speed.limit}" if speed.limit else ""
         text += f"; {speed.accuracy}" if speed.accuracy else ""
     if speed.line is not None and speed.line.needed_bit_s is not None:
