@@ -6,6 +6,7 @@ import dataclasses
 
 import numpy as np
 import pytest
+from small_boards import BOOK, board_of
 
 from levelcrossing import devices as d
 from levelcrossing.model import BipolarFacts, DiodeFacts, MosfetFacts, Provenance, Spread
@@ -79,6 +80,15 @@ def drop_at(branch: Branch, amps: float) -> float:
 @pytest.mark.parametrize(("amps", "volts"), [(1e-4, 0.50), (1e-3, 0.62), (5e-3, 0.70), (1e-2, 0.75)])
 def test_a_diode_passes_through_its_typical_points(amps: float, volts: float) -> None:
     assert drop_at(d.diode("D", "x", "0", d.diode_values(SIGNAL)), amps) == pytest.approx(volts, abs=0.012)
+
+
+@pytest.mark.parametrize(("amps", "volts"), [(1e-4, 0.24), (1e-3, 0.32), (1e-2, 0.40)])
+def test_the_greatest_drop_at_small_currents_is_not_that_of_large_ones(amps: float, volts: float) -> None:
+    """BAT54 of five makers: 0.24, 0.32, 0.40 V at most at 0.1, 1, 10 mA, although 1.0 V at 100 mA."""
+    facts = BOOK.diode(board_of("D1 BAT54 Diode:BAT54 | 1 K passive /K | 2 A passive /Q").parts[0])
+    assert facts is not None
+    found = drop_at(d.diode("D", "x", "0", d.diode_values(facts, drop="high")), amps)
+    assert volts - 0.01 < found < volts + 0.04
 
 
 def test_extremes_of_the_drop_lie_on_either_side() -> None:

@@ -266,7 +266,10 @@ class Builder:
         self.plan.makers.append(make)
 
     def _switch(self, label: str, element: Element, nodes: Sequence[str]) -> None:
-        """Add a pass switch: a channel whose internal gate lies one threshold above the highest level that it passes."""
+        """Add a pass switch: a channel whose internal gate lies one threshold above the highest level that it passes.
+
+        Pull-ups inside the part belong to its pins.
+        """
         facts = element.facts
         assert isinstance(facts, TranslatorFacts)
         # The gate is biased from the lower of the two supplies, whichever side a pin of it is met first.
@@ -298,15 +301,6 @@ class Builder:
         self.plan.makers.append(
             lambda codes: (devices.switch(label, nodes[0], gate, nodes[1], threshold_volts=threshold, gain=gain),)
         )
-        if facts.pull_up_ohms:
-            for net, node in zip(element.nets, nodes, strict=True):
-                owner = next((pin for pin in self.island.pins if pin.part == element.part and pin.net == net), None)
-                rail = self.supply_node(owner) if owner is not None else None
-                if rail is not None and net in self._relevant:
-                    ohms_spread = Spread.around(facts.pull_up_ohms, PULL_SPREAD)
-                    self._spread_resistor(
-                        f"pull-up inside {element.part} on {net}", f"{element.part} pull-up", rail, node, ohms_spread
-                    )
 
     def _pin(self, pin: PinModel, *, dead_end: bool) -> None:
         """Add what a pin that does not drive is to the circuit: its clamp to the supply, its pull-up, its capacitance."""

@@ -21,6 +21,7 @@ References
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Literal
 
 from levelcrossing.network import Branch, Value
@@ -113,8 +114,9 @@ def _forward_points(facts: DiodeFacts, drop: Extreme) -> list[tuple[float, float
 def _fitted_forward(facts: DiodeFacts, drop: Extreme) -> tuple[float, float, float]:
     """Return saturation current [A], ideality [1] and series resistance [ohm] through the forward points.
 
-    The typical curve gives ideality and resistance; the wished extreme only moves the curve as a whole, by the greatest
-    shift that any row states, because a table of limits does not follow one diode's curve.
+    The typical curve gives ideality and resistance. The greatest drop starts where its first limit stands and reaches
+    its last one through more resistance: limits spread far more at large currents than at small ones, where a level is
+    at stake. The least drop is the typical curve, moved as a whole.
     """
     volts_at_1ma, ideality = _GENERIC_FORWARD.get(facts.kind, _GENERIC_FORWARD["signal"])
     series = LEAST_SERIES_OHMS
@@ -126,14 +128,25 @@ def _fitted_forward(facts: DiodeFacts, drop: Extreme) -> tuple[float, float, flo
         (i0, v0), (i1, v1) = usual[0], usual[1]
         most = 4.0 if facts.kind == "led" else 2.2
         ideality = min(max((v1 - v0) / (THERMAL_VOLTS * math.log(i1 / i0)), 1.0), most)
-        ia, va = usual[-1]
-        rest = va - v0 - ideality * THERMAL_VOLTS * math.log(ia / i0)
-        series = max(rest / (ia - i0), LEAST_SERIES_OHMS)
+        series = _series_ohms(usual, ideality)
     amps, volts = usual[0]
     moved = _forward_points(facts, drop)
-    shift = max((w - v for (_, v), (_, w) in zip(usual, moved, strict=True)), key=abs, default=0.0)
-    across = max(volts + shift - series * amps, 0.3 * volts)
+    shifts = [after - before for (_, before), (_, after) in zip(usual, moved, strict=True)]
+    if drop == "high":
+        first = volts + next((shift for shift in shifts if shift), 0.0)
+        if len(moved) > 1:
+            series = max(series, _series_ohms([(amps, first), moved[-1]], ideality))
+    else:
+        first = volts + max(shifts, key=abs)
+    across = max(first - series * amps, 0.3 * volts)
     return saturation_amps(across, amps, ideality), ideality, series
+
+
+def _series_ohms(points: Sequence[tuple[float, float]], ideality: float) -> float:
+    """Return the resistance [ohm] that leads an exponential through the first point to the last one."""
+    (i0, v0), (ia, va) = points[0], points[-1]
+    rest = va - v0 - ideality * THERMAL_VOLTS * math.log(ia / i0)
+    return max(rest / (ia - i0), LEAST_SERIES_OHMS)
 
 
 def diode_values(facts: DiodeFacts, *, drop: Extreme = "nominal", breakdown: Extreme = "nominal") -> dict[str, float]:
