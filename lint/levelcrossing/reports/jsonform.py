@@ -125,6 +125,8 @@ def _speed(speed: Speed | None) -> dict[str, Any] | None:
         "nominal_bit_s": number(speed.nominal_bit_s),
         "rise_range_s": _spread(speed.rise_s),
         "fall_range_s": _spread(speed.fall_s),
+        "delay_high_s": number(speed.delay_high_s.high),
+        "delay_low_s": number(speed.delay_low_s.high),
         "load_farads": number(speed.load_farads),
         "loaded_bit_s": number(speed.loaded_bit_s),
         "limit": speed.limit,
