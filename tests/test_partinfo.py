@@ -15,13 +15,17 @@ def ask(number: str, *facts: str) -> tuple[str, int]:
 @pytest.mark.parametrize(
     ("number", "words"),
     [
-        ("SN74LVC245APW", ["74LVC245", "logic_families.toml", "6.5 V at 3.3 V"]),
+        ("SN74LVC245APW", ["74LVC245", "logic_families.toml", "bears 6.5 V unpowered 6.5 V", "2 V at 3.3 V"]),
         ("BSS138", ["N-channel MOSFET", "0.8 V to 1.5 V", "transistors.toml"]),
         ("AMS1117-2.85", ["makes     2.85 V", "regulators.toml"]),
         ("2N3904", ["NPN transistor", "in reverse 0.74"]),
         ("BZX84C3V3", ["zener diode", "3.1 V to 3.5 V"]),
         ("TXB0104PWR", ["translator", "a<=b", "No pull-up or pull-down under 50 k"]),
         ("ATmega328P-AU", ["1.98 V at 3.3 V", "3 V at 5 V"]),
+        # every group of pins, each side, the maker's rates
+        ("STM32F103C8T6", ["PA[0-7]…: with a diode to its supply", "P[A-G]#…: bears 5.5, while its supply is up"]),
+        ("TXB0108PWR", ["side A", "4.6 V", "side B", "6.5 V", "100 Mbit/s (A from 2.5 V up)"]),
+        ("TXS0102DCT", ["2 Mbit/s, with open drains"]),
     ],
 )
 def test_a_known_number_shows_its_figures_its_row_and_its_source(number: str, words: list[str]) -> None:
@@ -32,6 +36,19 @@ def test_a_known_number_shows_its_figures_its_row_and_its_source(number: str, wo
         assert " ".join(word.split()) in flat
     assert "  from  " in text
     assert all(len(line) <= 100 for line in text.splitlines())
+
+
+@pytest.mark.parametrize(
+    ("number", "beyond"), [("STM32F103C8T6", "at 5 V"), ("74LVC245", "at 5 V"), ("74AHCT1G125", "at 3.3 V")]
+)
+def test_levels_are_given_at_supplies_within_the_part_s_range_only(number: str, beyond: str) -> None:
+    text, _ = ask(number)
+    assert "  reads     high from" in text and beyond not in " ".join(text.split())
+
+
+def test_sides_that_are_alike_are_described_once() -> None:
+    text, _ = ask("74LVC245")
+    assert text.count("  reads  ") == 1 and "side A" not in text
 
 
 def test_an_unknown_number_says_so_with_the_nearest_and_a_row_to_fill_in() -> None:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import argparse
 import difflib
+import re
 import textwrap
 from pathlib import Path
 
@@ -17,11 +18,22 @@ from levelcrossing.model import (
     PartFacts,
     Pin,
     PinFacts,
+    RatePoint,
     RegulatorFacts,
 )
+from levelcrossing.trade_logic import Functions
+from levelcrossing.trade_match import normal
+from levelcrossing.trade_rows import Row
 from levelcrossing.units import format_si, format_volts
 
-SUPPLIES = (1.8, 3.3, 5.0)
+SUPPLIES = (1.2, 1.8, 2.5, 3.3, 5.0, 12.0)
+# Names of pins that rows without names of their own answer to; of two-sided parts, one of each side.
+_TRIED = ("A1", "1A", "IO", "B1", "SDA1", "SDA2")
+_TOLERANT = {
+    "always": "powered or not",
+    "powered": "while its supply is up",
+    "never": "with a diode to its supply",
+}
 _SURE = {
     "datasheet": "seen in the data sheet",
     "secondary": "second hand",
@@ -59,7 +71,11 @@ def describe(book: tradebook.Tradebook, number: str) -> list[str]:
     lines: list[str] = []
     known = book.part(part)
     if known is not None:
-        lines += _part(known)
+        lines += _part(known, _row_of(book, known))
+        if known.group == "logic" and not _function_known(book, number):
+            lines.insert(
+                1, "  number    no function of this number is known: the family's figures, directions from the symbol"
+            )
     for reference, symbol, pins in (("Q1", "", ("G", "S", "D")), ("Q1", "", ("B", "C", "E")), ("D1", "", ("A", "K"))):
         device = Part(reference=reference, value=number, symbol=symbol, pins=tuple(_pin(name) for name in pins))
         for facts in (book.mosfet(device), book.bipolar(device), book.diode(device)):
@@ -93,26 +109,47 @@ def _source(row: str, source: str, certainty: str, file: str, line: int) -> list
     ]
 
 
-def _part(known: PartFacts) -> list[str]:
+def _row_of(book: tradebook.Tradebook, known: PartFacts) -> Row | None:
+    """Return the row behind what is known, for what only the row itself tells."""
+    where = (known.provenance.row, known.provenance.line)
+    return next((row for row in book.rows if (row.id, row.line) == where), None)
+
+
+def _function_known(book: tradebook.Tradebook, number: str) -> bool:
+    return Functions(book.table("function")).of(normal(number)) is not None
+
+
+def _part(known: PartFacts, row: Row | None) -> list[str]:
     lines = [f"{known.title}  ({known.group})"]
     provenance = known.provenance
     lines += _source(provenance.row, provenance.source, provenance.certainty, provenance.file, provenance.line)
+    if row is not None and row.get("checked"):
+        lines.append(f"  checked   {row.get('checked')}")
     if known.doubtful:
         lines.append(f"  doubtful  {known.doubtful}")
     for supply in known.supplies:
         if supply.low_volts is not None and supply.high_volts is not None:
             lines.append(
-                f"  supply    {supply.pins}: {format_volts(supply.low_volts)} to {format_volts(supply.high_volts)} ({supply.role})"
+                f"  supply    {_names(supply.pins)}: {format_volts(supply.low_volts)} to {format_volts(supply.high_volts)} ({supply.role})"
             )
-    pins = {name: known.pin(_pin(name)) for name in ("A1", "1A", "IO")}
-    facts = next((pin for pin in pins.values() if pin.vih is not None or pin.vmax is not None), None)
-    if facts is not None:
-        lines += _levels(facts)
+    described: list[PinFacts] = []
+    sides = {known.pin(_pin(name)).supply for name in _TRIED if known.pin(_pin(name)).side}
+    for name in _TRIED:
+        facts = known.pin(_pin(name))
+        if (facts.vih is None and facts.vmax is None) or any(_alike(facts, other) for other in described):
+            continue
+        described.append(facts)
+        lines += _levels(facts, known, f"side {facts.side.upper()}" if facts.side and len(sides) > 1 else "")
+    lines += _exceptions(row)
     if known.translator is not None:
         translator = known.translator
-        lines.append(
-            f"  kind      {translator.kind}, direction {translator.direction}, supplies in order {translator.order}"
-        )
+        single = translator.kind == "single"
+        if not single:
+            lines.append(
+                f"  kind      {translator.kind}, direction {translator.direction}, supplies in order {translator.order}"
+            )
+        for point in translator.rates:
+            lines.append(f"  rate      {_rate(point, single=single)}")
         for note in translator.notes:
             lines.append(f"  note      {note}")
     if known.note and (known.translator is None or not known.translator.notes):
@@ -121,31 +158,93 @@ def _part(known: PartFacts) -> list[str]:
     return lines
 
 
-def _levels(facts: PinFacts) -> list[str]:
+def _alike(one: PinFacts, other: PinFacts) -> bool:
+    """Tell whether two pins have the same figures: one description does for both."""
+    keys = ("vih", "vil", "vmax", "vmax_off", "outputs", "supply")
+    return all(getattr(one, key) == getattr(other, key) for key in keys)
+
+
+def _names(pattern: str) -> str:
+    """Return a pattern of pin names as people write a list; # stands for a digit, … for more of the name."""
+    text = re.sub(r"\(\?![^)]*\)", "", pattern)
+    text = re.sub(r"\\d[?+*]?", "#", text).replace(".*", "…").replace("\\", "").replace("?", "")
+    text = text[1:-1] if text.startswith("(") and text.endswith(")") and text.count("(") == 1 else text
+    return ", ".join(dict.fromkeys(text.split("|"))) if "(" not in text else text.replace("|", ", ")
+
+
+def _rate(point: RatePoint, *, single: bool) -> str:
+    text = format_si(point.bits_per_second, "bit/s", 3)
+    ends = (("A", point.a_volts), ("supply" if single else "B", point.b_volts))
+    supplies = [f"{side} from {format_volts(volts)} up" for side, volts in ends if volts]
+    text += f" ({', '.join(supplies)})" if supplies else ""
+    return text + (", with open drains" if point.open_drain else "")
+
+
+def _exceptions(row: Row | None) -> list[str]:
+    """Return what the row says of single pins, first match first."""
+    lines = []
+    for item in (row.get("pins", ()) if row is not None else ()) or ():
+        words = [str(item["direction"])] if "direction" in item else []
+        if "supply" in item:
+            words.append(f"on {_names(item['supply'])}")
+        if "vih_volts" in item:
+            words.append(f"high from {item['vih_volts']}")
+        if "vil_volts" in item:
+            words.append(f"low up to {item['vil_volts']}")
+        if "input_max_volts" in item:
+            words.append(f"bears {item['input_max_volts']}")
+        if "tolerant" in item:
+            words.append(_TOLERANT.get(item["tolerant"], item["tolerant"]))
+        if "pull_up_ohms" in item:
+            words.append(f"pulled up with {format_si(float(item['pull_up_ohms']), 'Ω')}")
+        only = f" of {item['parts']}" if "parts" in item else ""
+        if words:
+            lines.append(f"  pins      {_names(item['names'])}{only}: {', '.join(words)}")
+    return lines
+
+
+def _levels(facts: PinFacts, known: PartFacts, side: str) -> list[str]:
+    supplies = _supplies(facts, known)
+
     def at(level: Level | None) -> str:
         if level is None:
             return "not known"
-        return f"{level.text}   " + ", ".join(f"{format_volts(level.at(volts))} at {volts:g} V" for volts in SUPPLIES)
+        if "V" not in level.text and "(" not in level.text:
+            return format_volts(level.at(supplies[0]))
+        return f"{level.text}   " + ", ".join(f"{format_volts(level.at(volts))} at {volts:g} V" for volts in supplies)
 
-    lines = [
-        f"  reads     high from {at(facts.vih)}",
-        f"            low up to {at(facts.vil)}",
-        f"  bears     {at(facts.vmax)}",
-    ]
+    lines = [f"  {side}"] if side else []
+    if facts.vih is not None or facts.vil is not None:
+        lines += [f"  reads     high from {at(facts.vih)}", f"            low up to {at(facts.vil)}"]
+    lines.append(f"  bears     {at(facts.vmax)}")
     if facts.vmax_off is not None:
         lines.append(f"            unpowered {format_volts(facts.vmax_off.at(0.0))}")
     if facts.injection_amps is not None:
         lines.append(f"            clamp current {format_si(facts.injection_amps, 'A')}")
     for point in facts.outputs:
+        words = []
         if point.voh is not None and point.ioh_amps > 0:
-            lines.append(
-                f"  drives    at {point.supply_volts:g} V: {format_volts(point.voh.at(point.supply_volts))} or more at {format_si(point.ioh_amps, 'A')}"
+            words.append(
+                f"{format_volts(point.voh.at(point.supply_volts))} or more at {format_si(point.ioh_amps, 'A')}"
             )
         if point.vol is not None and point.iol_amps > 0:
-            lines.append(
-                f"            at {point.supply_volts:g} V: {format_volts(point.vol.at(point.supply_volts))} or less at {format_si(point.iol_amps, 'A')}"
+            words.append(
+                f"{format_volts(point.vol.at(point.supply_volts))} or less at {format_si(point.iol_amps, 'A')}"
             )
+        if words:
+            lines.append(f"  drives    at {point.supply_volts:g} V: {', '.join(words)}")
     return lines
+
+
+def _supplies(facts: PinFacts, known: PartFacts) -> tuple[float, ...]:
+    """Return the usual supplies that lie within the part's own range for these pins [V]."""
+    named = [one for one in known.supplies if one.low_volts is not None and one.high_volts is not None]
+    own = [one for one in named if facts.supply and one.pins == facts.supply] or [
+        one for one in named if one.role == "io"
+    ]
+    ranges = [(one.low_volts or 0.0, one.high_volts or 0.0) for one in own or named]
+    within = tuple(volts for volts in SUPPLIES if any(low <= volts <= high for low, high in ranges))
+    return within or (tuple((low + high) / 2 for low, high in ranges[:1]) if ranges else (1.8, 3.3, 5.0))
 
 
 def _device(facts: MosfetFacts | BipolarFacts | DiodeFacts) -> list[str]:
