@@ -24,6 +24,22 @@ def test_a_tied_direction_pin_settles_both_sides(tied: str, driving: str, readin
     assert pins["U7", reading].drive is None and pins["U7", reading].receive is not None
 
 
+@pytest.mark.parametrize("value", ["74LS245", "74HCT245", "74LVC245"])
+@pytest.mark.parametrize(("tied", "driving", "reading"), [("+5V", "18", "2"), ("GND", "2", "18")])
+def test_a_tied_direction_pin_settles_a_transceiver_of_any_family(
+    value: str, tied: str, driving: str, reading: str
+) -> None:
+    """DIR high is A to B, and the enable beside it says nothing of direction (TI SN74HC245, function table)."""
+    pins = case_of(
+        SUPPLIES
+        + f"U7 {value} 74xx:74LS245 | 20 VCC power_in +5V | 10 GND power_in GND | 1 A->B input {tied} | 19 CE input GND"
+        " | 2 A0 tri_state /A | 18 B0 tri_state /B\n"
+        + ENDS.format(near_in="/A", near_out="/A2", far_in="/B", far_out="/Z")
+    ).pins
+    assert pins["U7", driving].drive is not None and pins["U7", driving].receive is None
+    assert pins["U7", reading].drive is None and pins["U7", reading].receive is not None
+
+
 def test_a_driven_direction_pin_leaves_both_ways_open() -> None:
     pins = case_of(
         SUPPLIES + TRANSCEIVER.format(dir="/D") + ENDS.format(near_in="GND", near_out="/D", far_in="/B", far_out="/Z")

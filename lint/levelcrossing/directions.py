@@ -34,7 +34,7 @@ def settle_directions(
     settled = dict(pins)
     by_part: dict[str, list[PinModel]] = defaultdict(list)
     for pin in pins.values():
-        if pin.part in facts and facts[pin.part].translator is not None:
+        if pin.part in facts:
             by_part[pin.part].append(pin)
     for reference, members in by_part.items():
         sided = [pin for pin in members if pin.facts is not None and pin.facts.side and pin.facts.direction == "inout"]
@@ -63,19 +63,18 @@ def _direction_of(pin: PinModel, known: PartFacts, rails: Rails) -> tuple[str, b
     plain = re.sub(r"[~{}]", "", pin.name)
     match = PLAIN_DIRECTION.fullmatch(plain)
     active_high, meaning = True, "a-to-b"
-    if known.translator is not None:
-        control = next(
-            (
-                control
-                for control in known.translator.controls
-                if control.use == "direction" and re.fullmatch(control.pins, plain, re.IGNORECASE)
-            ),
-            None,
-        )
-        if control is not None:
-            active_high, meaning = control.active == "H", control.meaning or "a-to-b"
-        elif match is None:
-            return None
+    control = next(
+        (
+            control
+            for control in (known.translator.controls if known.translator is not None else ())
+            if control.use == "direction" and re.fullmatch(control.pins, plain, re.IGNORECASE)
+        ),
+        None,
+    )
+    if control is not None:
+        active_high, meaning = control.active == "H", control.meaning or "a-to-b"
+    elif match is None:
+        return None
     high = not rails.is_ground(pin.net)
     digits = re.findall(r"\d+", plain)
     return (digits[0] if digits else ""), (high == active_high) == (meaning == "a-to-b")
