@@ -5,7 +5,8 @@ otherwise they pass no level, conduct from supply to supply, or are damaged.
 
 What to do: exchange the sides, or take a type whose supplies may come in any order.
 
-Speaks when a side's supply lies outside its operating range, or the two supplies break the order that the maker demands.
+Speaks when a side has no supply (its pin on ground, open, or not drawn), when a side's supply lies outside its operating
+range, or when the two supplies break the order that the maker demands.
 
 Stays quiet when ranges and order hold at the usual voltages, and when a supply's voltage is not known.
 """
@@ -30,6 +31,10 @@ def check(case: CaseFile) -> Iterator[Finding]:
         if translator is None or not translator.a_supply or not translator.b_supply:
             continue
         a, b = _supply(case, reference, translator.a_supply), _supply(case, reference, translator.b_supply)
+        missing = [_unsupplied(case, reference, side) for side in "ab"]
+        if any(missing):
+            yield from (one for one in missing if one is not None)
+            continue
         for side, pin, limits in (("A", a, translator.a_range), ("B", b, translator.b_range)):
             volts = case.rails.volts(pin.net) if pin is not None else None
             if pin is None or volts is None or limits is None:
@@ -62,11 +67,49 @@ def check(case: CaseFile) -> Iterator[Finding]:
             )
 
 
+def _unsupplied(case: CaseFile, reference: str, side: str) -> Finding | None:
+    """Speak of a side in use whose supply pin lies on ground, hangs on nothing, or is not drawn at all."""
+    facts = case.facts[reference]
+    translator = facts.translator
+    used = [pin for pin in case.pins_of(reference) if pin.facts is not None and pin.facts.side == side and pin.net]
+    if translator is None or not used or translator.kind == "fet-switch":
+        return None
+    wanted = translator.a_supply if side == "a" else translator.b_supply
+    pins = [pin for pin in case.pins_of(reference) if re.fullmatch(wanted, _plain(pin.name), re.IGNORECASE)]
+    sizes = {net.name: len(net.pins) for net in case.board.nets}
+    if not pins:
+        known = f"{translator.a_supply}|{translator.b_supply}"
+        if any(
+            pin.role in ("supply", "supply-out") and not re.fullmatch(known, _plain(pin.name), re.IGNORECASE)
+            for pin in case.pins_of(reference)
+        ):
+            return None  # a supply pin under a name of its own may well be the one
+        what, pin = "its symbol has no such pin", used[0]
+    elif case.rails.is_ground(pins[0].net):
+        what, pin = f"{pins[0].label} lies on {pins[0].net}", pins[0]
+    elif not pins[0].net or sizes.get(pins[0].net, 0) <= 1:
+        what, pin = f"{pins[0].label} hangs on nothing", pins[0]
+    else:
+        return None
+    return _finding(
+        case,
+        reference,
+        pin,
+        Outcome.MALFUNCTION,
+        f"Side {side.upper()} of {reference} ({facts.title}) has no supply: {what}; {', '.join(one.label for one in used[:4])} cannot drive or read.",
+        "Connect that supply pin to the rail of the signals on its side.",
+        f"no supply {side}",
+    )
+
+
+def _plain(name: str) -> str:
+    return re.sub(r"[~{}]", "", name.replace("_{", "").replace("_(", "("))
+
+
 def _supply(case: CaseFile, reference: str, pattern: str) -> PinModel | None:
     wanted = re.compile(pattern, re.IGNORECASE)
     for pin in case.pins_of(reference):
-        plain = re.sub(r"[~{}]", "", pin.name.replace("_{", "").replace("_(", "("))
-        if pin.role in ("supply", "supply-out") and (wanted.fullmatch(plain) or wanted.fullmatch(pin.name)):
+        if pin.role in ("supply", "supply-out") and (wanted.fullmatch(_plain(pin.name)) or wanted.fullmatch(pin.name)):
             return pin
     return None
 
@@ -97,7 +140,22 @@ def _finding(
         part=reference,
         pin=pin.number,
         net=pin.net,
-        basis=Basis.weakest(Basis.LIBRARY, rail.basis if rail is not None else Basis.ASSUMED),
+        basis=Basis.weakest(Basis.LIBRARY, rail.basis if rail is not None else Basis.TRACED),
+        crossing=_spoiled(case, reference, what[-1].lower()),
         sources=(case.facts[reference].provenance.source,),
         cause=f"translator {reference} {what}",
     )
+
+
+def _spoiled(case: CaseFile, reference: str, side: str) -> int | None:
+    """Return a crossing through a part, at the side in question if there is one: levels fail there because of it."""
+    found: list[int] = []
+    for index, solved in enumerate(case.crossings):
+        crossing = solved.crossing
+        ends = [end for end in (crossing.driver, crossing.stage_driver, crossing.receiver) if end is not None]
+        own = [end for end in ends if end.part == reference]
+        if any(end.facts is not None and end.facts.side == side for end in own):
+            return index
+        if own or reference in crossing.through:
+            found.append(index)
+    return found[0] if found else None

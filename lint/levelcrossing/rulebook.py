@@ -241,8 +241,9 @@ def _shares(head: Finding, other: Finding, case: CaseFile) -> bool:
     if (head.part, head.pin) == (other.part, other.pin):
         return True
     assert other.crossing is not None
-    solved = case.crossings[other.crossing]
-    return head.part in solved.crossing.link or head.part in solved.crossing.shifter.parts
+    crossing = case.crossings[other.crossing].crossing
+    ends = {pin.part for pin in (crossing.driver, crossing.stage_driver, crossing.receiver) if pin is not None}
+    return head.part in {*crossing.link, *crossing.shifter.parts, *crossing.through, *ends}
 
 
 def _merged(head: Finding, other: Finding) -> Finding:

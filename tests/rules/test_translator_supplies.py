@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+from gauge_cells import SUPPLIES
 from small_boards import findings_of, named
 
 from levelcrossing.model import Outcome, Settings, Spread
@@ -23,3 +24,34 @@ def test_range_and_order_of_a_txb0104(a: float, b: float, outcome: Outcome | Non
     assert [finding.outcome for finding in named(findings_of(TXB, settings), "translator-supplies")] == (
         [outcome] if outcome else []
     )
+
+
+DRIVER = "U4 74LVC1G34 74xGxx:x | 5 VCC power_in +3V3 | 3 GND power_in GND | 2 - input GND | 4 - output /X\n"
+READER = "U3 74HC1G14 74xGxx:x | 5 VCC power_in +5V | 3 GND power_in GND | 2 - input /Q | 4 - output /Y\n"
+SIDES = {"A": "| 1 VCCA power_in +3V3 ", "B": "| 14 VCCB power_in +5V "}
+WHOLE = (
+    f"U7 TXB0104D Logic_LevelTranslator:x {SIDES['A']}{SIDES['B']}| 7 GND power_in GND"
+    " | 8 OE input +3V3 | 2 A1 bidirectional /X | 13 B1 bidirectional /Q\n"
+)
+
+
+@pytest.mark.parametrize("side", ["A", "B"])
+@pytest.mark.parametrize(
+    ("net", "words"), [("GND", "lies on GND"), ("/alone", "hangs on nothing"), (None, "has no such pin")]
+)
+def test_a_side_without_supply_is_said_once(side: str, net: str | None, words: str) -> None:
+    """Levels that fail for want of that supply are no findings of their own."""
+    rail = {"A": "+3V3", "B": "+5V"}[side]
+    broken = WHOLE.replace(SIDES[side], SIDES[side].replace(rail, net) if net else "")
+    findings = [one for one in findings_of(SUPPLIES + DRIVER + READER + broken) if one.outcome is not Outcome.UNKNOWN]
+    assert [(one.rule, one.part) for one in findings] == [("translator-supplies", "U7")]
+    assert words in findings[0].text and f"Side {side} of U7" in findings[0].text
+
+
+def test_both_sides_supplied_stay_quiet() -> None:
+    assert not findings_of(SUPPLIES + DRIVER + READER + WHOLE)
+
+
+def test_a_supply_pin_under_another_name_is_not_called_missing() -> None:
+    renamed = WHOLE.replace("VCCB", "VDD_HI")
+    assert not named(findings_of(SUPPLIES + DRIVER + READER + renamed), "translator-supplies")
