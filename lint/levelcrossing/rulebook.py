@@ -229,7 +229,7 @@ def consolidate(found: Sequence[Finding], explains: dict[str, tuple[str, ...]], 
                 or (island_of(other) is not None and island_of(other) == island_of(head) and _shares(head, other, case))
             )
             same_rule = other.rule == head.rule and bool(head.cause) and head.cause == other.cause
-            if (same_circuit and other.rule in names) or same_rule:
+            if ((same_circuit or _same_channel(head, other, case)) and other.rule in names) or same_rule:
                 absorbed.add(other_index)
                 head = _merged(head, other)
         result.append(head)
@@ -244,6 +244,22 @@ def _shares(head: Finding, other: Finding, case: CaseFile) -> bool:
     crossing = case.crossings[other.crossing].crossing
     ends = {pin.part for pin in (crossing.driver, crossing.stage_driver, crossing.receiver) if pin is not None}
     return head.part in {*crossing.link, *crossing.shifter.parts, *crossing.through, *ends}
+
+
+def _same_channel(head: Finding, other: Finding, case: CaseFile) -> bool:
+    """Two findings meet at one pin, or at two pins of one channel of a translator."""
+    pin = case.pins.get((head.part, head.pin))
+    if pin is None:
+        return False
+    channel = pin.facts.channel if pin.facts is not None and pin.facts.side else ""
+    for place in (f"{other.part}.{other.pin}", *other.also):
+        part, _, number = place.rpartition(".")
+        there = case.pins.get((part, number))
+        if there is None or part != head.part:
+            continue
+        if number == head.pin or (channel and there.facts is not None and there.facts.channel == channel):
+            return True
+    return False
 
 
 def _merged(head: Finding, other: Finding) -> Finding:
