@@ -11,7 +11,7 @@ from types import ModuleType
 from typing import TypeVar
 
 from levelcrossing.errors import RuleFileError
-from levelcrossing.model import CaseFile, Finding, Outcome
+from levelcrossing.model import CaseFile, Finding, Outcome, PinModel
 
 T = TypeVar("T")
 SECTIONS = ("Why:", "What to do:", "Speaks when", "Stays quiet when")
@@ -251,13 +251,20 @@ def _same_channel(head: Finding, other: Finding, case: CaseFile) -> bool:
     pin = case.pins.get((head.part, head.pin))
     if pin is None:
         return False
-    channel = pin.facts.channel if pin.facts is not None and pin.facts.side else ""
+    sided = [one for one in case.pins_of(head.part) if one.facts is not None and one.facts.side]
+    alone = len(sided) == 2  # a translator of one channel need not number it
+
+    def channel(one: PinModel) -> str | None:
+        return (
+            one.facts.channel or ("the only one" if alone else None) if one.facts is not None and one in sided else None
+        )
+
     for place in (f"{other.part}.{other.pin}", *other.also):
         part, _, number = place.rpartition(".")
         there = case.pins.get((part, number))
         if there is None or part != head.part:
             continue
-        if number == head.pin or (channel and there.facts is not None and there.facts.channel == channel):
+        if number == head.pin or (channel(pin) is not None and channel(there) == channel(pin)):
             return True
     return False
 
