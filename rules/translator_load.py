@@ -7,7 +7,7 @@ What to do: leave the pull-ups off (or above the maker's least value), take a tr
 or fit the pull-ups that a pass type needs.
 
 Speaks when a pull on a channel is below the least that the maker allows (malfunction when a solved level fails, else
-marginal), and when such a part carries open-drain drivers.
+marginal), when such a part carries open-drain drivers, and when a channel has more capacitance than the maker allows.
 
 Stays quiet when no pull is on the channel, or it is large enough, and for types with strong outputs.
 """
@@ -25,6 +25,7 @@ EXPLAINS = ("low-not-reached", "high-not-reached", "margin-thin", "shifter-pull-
 
 def check(case: CaseFile) -> Iterator[Finding]:
     """Yield one finding per channel pin with a pull that is too strong."""
+    yield from _too_much_to_charge(case)
     for reference, facts in sorted(case.facts.items()):
         translator = facts.translator
         if translator is None or translator.pull_least_ohms is None:
@@ -72,6 +73,54 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 sources=(facts.provenance.source,),
                 cause=f"load {reference}.{pin.number}",
             )
+
+
+def _too_much_to_charge(case: CaseFile) -> Iterator[Finding]:
+    """Hold the capacitance on each channel against the load that the maker allows."""
+    for reference, facts in sorted(case.facts.items()):
+        most = facts.translator.load_most_farads if facts.translator is not None else None
+        if most is None:
+            continue
+        for pin in case.pins_of(reference):
+            if pin.facts is None or not pin.facts.side or not pin.net:
+                continue
+            farads, largest = _load(case, pin)
+            if farads <= most * (1 + 1e-9):
+                continue
+            yield Finding(
+                rule=NAME,
+                outcome=Outcome.MARGINAL,
+                text=f"{pin.label} of {reference} ({facts.title}) charges {format_si(farads, 'F', 2)}"
+                + (f", {largest} the most of it" if largest else "")
+                + f"; it is made for {format_si(most, 'F', 2)} at most.",
+                remedy="Take the capacitor off that line, shorten it, or use a translator with strong outputs there.",
+                part=reference,
+                pin=pin.number,
+                net=pin.net,
+                basis=Basis.LIBRARY,
+                sources=(facts.provenance.source,),
+                cause=f"charge {reference}.{pin.number}",
+            )
+
+
+def _load(case: CaseFile, pin: PinModel) -> tuple[float, str]:
+    """Return the capacitance on a pin's net [F], its own pin left out, and the capacitor that is the most of it."""
+    farads = case.settings.stray_farads
+    capacitors: list[tuple[float, str]] = []
+    for island in case.islands:
+        if pin.net not in island.nets:
+            continue
+        for other in island.pins:
+            if other.net == pin.net and other.part != pin.part and other.receive is not None:
+                farads += other.receive.capacitance_farads.nominal
+        capacitors += [
+            (element.farads.nominal, element.part)
+            for element in island.elements
+            if element.kind == "capacitor" and element.farads is not None and pin.net in element.nets
+        ]
+    whole = farads + sum(amount for amount, _ in capacitors)
+    largest = max(capacitors, default=(0.0, ""))
+    return whole, largest[1] if largest[0] > whole / 2 else ""
 
 
 def _open_drains(case: CaseFile, pin: PinModel) -> list[PinModel]:

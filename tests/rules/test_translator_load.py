@@ -49,3 +49,13 @@ def test_an_open_drain_on_an_auto_direction_buffer_speaks_whatever_the_pull(pull
     """Not for open-drain lines (TI TXB0104 SCES650, application information)."""
     text = SUPPLIES + CONTROLLER + CLOCK_5V + TXB.format(value="TXB0104D") + pull
     assert [finding.outcome for finding in named(findings_of(text), "translator-load")] == [Outcome.MALFUNCTION]
+
+
+@pytest.mark.parametrize(("farads", "speaks"), [("", False), ("47p", False), ("56p", False), ("68p", True)])
+def test_the_capacitance_on_a_channel_keeps_to_what_the_maker_allows(farads: str, speaks: bool) -> None:
+    """TI TXB0104 SCES650: 70 pF; here 10 pF of stray and the gate's 10 pF at most beside the capacitor."""
+    text = SUPPLIES + CONTROLLER.replace("/SDA", "/N").replace("/A ", "/SDA ") + TXB.format(value="TXB0104D") + GATE
+    text += f"C9 {farads} Device:C | 1 - passive /SDA5 | 2 - passive GND\n" if farads else ""
+    findings = [one for one in named(findings_of(text), "translator-load") if "charges" in one.text]
+    assert [finding.pin for finding in findings] == (["13"] if speaks else [])
+    assert all("C9 the most of it" in finding.text for finding in findings)
