@@ -43,7 +43,7 @@ LAYERS: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
         ("solutions", "offstates", "remedies", "dividers", "breakeven", "speeds", "busrates"),
         (*SOLVING, "kinds of parts"),
     ),
-    "judging": (("rulebook", "scope", "likeness", "waivers"), (*WORDS, "settings")),
+    "judging": (("rulebook", "scope", "likeness", "waivers", "houserows"), (*WORDS, "settings")),
     "review": (
         ("review",),
         (*FACTS, "reading", "rails", "pins", "islands", "crossings", "solutions", "judging"),

@@ -5,7 +5,8 @@ from pathlib import Path
 
 import pytest
 
-from levelcrossing.partinfo import house_row, run
+from levelcrossing.houserows import house_row
+from levelcrossing.partinfo import run
 
 
 def ask(number: str, *facts: str) -> tuple[str, int]:

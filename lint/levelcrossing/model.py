@@ -1432,6 +1432,10 @@ class Review:
         What came in sight and was not judged (mains, isolation, batteries, medical use).
     remarks : tuple of str
         From the reader, the settings and the waivers.
+    suggestions : tuple of str
+        Parts that were judged without trade data.
+    rows_to_fill : tuple of str
+        A row of trade data for each of them, to fill in and pass with ``--facts``.
     """
 
     board: Board
@@ -1443,6 +1447,7 @@ class Review:
     out_of_scope: tuple[str, ...] = ()
     remarks: tuple[str, ...] = ()
     suggestions: tuple[str, ...] = ()
+    rows_to_fill: tuple[str, ...] = ()
 
     def count(self, outcome: Outcome) -> int:
         """Return how many findings that no waiver accepts have this outcome."""

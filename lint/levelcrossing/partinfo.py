@@ -9,6 +9,7 @@ import textwrap
 from pathlib import Path
 
 from levelcrossing import tradebook
+from levelcrossing.houserows import house_row
 from levelcrossing.model import (
     BipolarFacts,
     DiodeFacts,
@@ -50,7 +51,10 @@ def run(args: argparse.Namespace) -> tuple[str, int]:
         return "\n".join(textwrap.fill(line, 100, subsequent_indent=" " * 12) for line in lines) + "\n", 0
     near = nearest(book, args.name)
     hint = f" Nearest: {', '.join(near)}." if near else ""
-    return f"The library knows nothing of {args.name}.{hint}\n{_assumed()}\n\n{house_row(args.name)}", 1
+    return (
+        f"The library knows nothing of {args.name}.{hint}\n{_assumed()}\n\nTo teach it, fill in and pass the file with --facts:\n\n{house_row(args.name)}",
+        1,
+    )
 
 
 def describe(book: tradebook.Tradebook, number: str) -> list[str]:
@@ -306,16 +310,3 @@ def nearest(book: tradebook.Tradebook, number: str) -> list[str]:
     known = sorted({str(example) for row in book.rows for example in (row.get("examples") or ())})
     folded = {example.upper(): example for example in known}
     return [folded[match] for match in difflib.get_close_matches(number.upper(), list(folded), n=4, cutoff=0.6)]
-
-
-def house_row(number: str) -> str:
-    """Return a row of trade data to fill in, for a file given with ``--facts``."""
-    return (
-        "To teach it, fill in and pass the file with --facts:\n\n"
-        "[[part]]\n"
-        f'id = "{number}"\nmatch = [\'{number}\']\nexamples = ["{number}"]\ngroup = "other"\n'
-        "supplies = [ { pins = 'VDD|VCC', volts = [3.0, 3.6], role = \"io\" } ]\nio_supply = 'VDD|VCC'\n"
-        'vih_volts = "0.7*V"\nvil_volts = "0.3*V"\ninput_max_volts = "V+0.3"\n'
-        'source = "not looked up yet: name the data sheet and its table"\n'
-        'certainty = "practice"   # datasheet, once the figures above come from one\n'
-    )

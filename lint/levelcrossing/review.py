@@ -22,6 +22,7 @@ from levelcrossing import crossings as crossing_survey
 from levelcrossing import islands as island_survey
 from levelcrossing import pins as pin_models
 from levelcrossing import rails as rail_tracing
+from levelcrossing.houserows import house_rows
 from levelcrossing.model import (
     Basis,
     Board,
@@ -129,6 +130,7 @@ def review_board(
         out_of_scope=scope.out_of_scope(case),
         remarks=(*remarks, *waiver_remarks),
         suggestions=unknown_parts(case),
+        rows_to_fill=house_rows(case),
     )
 
 
@@ -198,8 +200,7 @@ def unknown_parts(case: CaseFile) -> tuple[str, ...]:
         if pin.role == "signal" and pin.part not in case.facts and pin.part not in by_value.get(values[pin.part], ()):
             by_value.setdefault(values[pin.part], []).append(pin.part)
     return tuple(
-        f"{', '.join(parts)} ({value}): no trade data, taken as ordinary CMOS; `levelcrossing part {value.split()[0] if value.split() else value}` "
-        "prints a row to fill in for --facts"
+        f"{', '.join(parts)} ({value}): no trade data, taken as ordinary CMOS"
         for value, parts in sorted(by_value.items())
     )
 

@@ -62,6 +62,7 @@ def form(review: Review) -> dict[str, Any]:
         },
         "unknown_rails": [{"net": net, "settle": settle} for net, settle in review.rails.unknown],
         "suggestions": list(review.suggestions),
+        "rows_to_fill": list(review.rows_to_fill),
         "assumptions": list(review.assumptions),
         "out_of_scope": list(review.out_of_scope),
         "remarks": [*board.remarks, *review.remarks],

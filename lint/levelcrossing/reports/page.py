@@ -227,6 +227,13 @@ class _Page:
         ):
             if texts:
                 lines += [f"<h2>{title}</h2>", "<ul>", *(f"<li>{clean(text)}</li>" for text in texts), "</ul>"]
+        if review.rows_to_fill:
+            lines.append(
+                "<p>Rows for those parts: put into a file, correct by the data sheet, and pass with --facts:</p>"
+            )
+            lines += [
+                "<pre>" + "\n".join(clean(line) for line in row.splitlines()) + "</pre>" for row in review.rows_to_fill
+            ]
         return lines
 
 

@@ -32,6 +32,7 @@ STYLES = {
 
 INDENT = 11  # columns of the margin that holds the labels
 NARROWEST, WIDEST = 60, 140
+MOST_ROWS = 3
 PROSE_WIDEST = 110
 
 
@@ -362,6 +363,23 @@ class _Board:
                     self.sheet.text(text, indent=4, label="  -")
                 if len(texts) > most:
                     self.sheet.text(f"and {len(texts) - most} more; --all shows them", indent=4)
+        self._rows_to_fill()
+
+    def _rows_to_fill(self) -> None:
+        rows = self.review.rows_to_fill
+        if not rows:
+            return
+        most = len(rows) if self.everything else MOST_ROWS
+        self.sheet.blank()
+        self.sheet.text(
+            "Rows for those parts: put into a file, correct by the data sheet, and pass with --facts:", indent=2
+        )
+        for row in rows[:most]:
+            self.sheet.blank()
+            for line in row.splitlines():
+                self.sheet.line(("    " + clean(line), "title"))
+        if len(rows) > most:
+            self.sheet.text(f"and {len(rows) - most} more; --all shows them", indent=4)
 
 
 def rail_row(rail: Rail) -> tuple[str, str, str]:
