@@ -533,6 +533,8 @@ def _flat(settings: Settings, names: _Names) -> dict[str, str]:
     for key in ("rail_tolerance", "resistor_tolerance", "stray_farads", "thin_margin_volts"):
         if getattr(settings, key) != getattr(plain, key):
             flat[key.replace("_", " ")] = f"{getattr(settings, key):g}"
+    for row, digest in settings.parts_rows:
+        flat[f"the project's own trade row {row}"] = digest
     if settings.stop_at is not None:
         flat["stop level"] = "never" if settings.stop_at is Outcome.SOUND else settings.stop_at.value
     return flat

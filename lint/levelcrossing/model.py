@@ -1516,6 +1516,10 @@ class Settings:
         None when the settings do not say, ``SOUND`` for never.
     today : str
         Day on which waivers are judged, ``YYYY-MM-DD``; empty when unknown.
+    parts_file : str
+        File of the project's own trade rows; empty when there is none.
+    parts_rows : tuple of (str, str)
+        Their names, each with a digest of the row, for comparing revisions.
     """
 
     file: str = ""
@@ -1529,4 +1533,6 @@ class Settings:
     stray_farads: float = 10e-12
     thin_margin_volts: float = 0.05
     stop_at: Outcome | None = None
+    parts_file: str = ""
+    parts_rows: tuple[tuple[str, str], ...] = ()
     today: str = ""

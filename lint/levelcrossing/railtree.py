@@ -11,6 +11,7 @@ from levelcrossing.rails import trace_rails
 from levelcrossing.read import read_board
 from levelcrossing.reports.phrases import count, span
 from levelcrossing.reports.sheet import Sheet
+from levelcrossing.review import extra_rows
 from levelcrossing.settings import load_settings
 
 
@@ -18,7 +19,7 @@ def run(args: argparse.Namespace) -> tuple[str, int]:
     """Return the text of the command and its exit status."""
     board = read_board(args.path)
     settings = load_settings(args.path, args.settings)
-    book = tradebook.load(extra=tuple(Path(file) for file in args.facts))
+    book = tradebook.load(extra=extra_rows([Path(file) for file in args.facts], settings))
     return rail_tree(board.path, trace_rails(board, book, settings)), 0
 
 

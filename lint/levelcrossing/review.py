@@ -114,7 +114,7 @@ def review_board(
     """Review a board that has been read."""
     remarks = unmatched(board, settings)
     settings = settings_from_fields(board, settings)
-    book = tradebook.load(extra=tuple(facts_files))
+    book = tradebook.load(extra=extra_rows(facts_files, settings))
     case = open_case(board, settings, book)
     rules = rulebook.load_rules(rules_folders)
     findings = waivers.fingerprinted(rulebook.run_rules(rules, case), case)
@@ -132,6 +132,11 @@ def review_board(
         suggestions=unknown_parts(case),
         rows_to_fill=house_rows(case),
     )
+
+
+def extra_rows(facts_files: Sequence[Path], settings: Settings) -> tuple[Path, ...]:
+    """Return the files of further trade rows: those of the command line come before the project's own."""
+    return (*facts_files, *([Path(settings.parts_file)] if settings.parts_file else []))
 
 
 def placed(board: Board, findings: Sequence[Finding]) -> tuple[Finding, ...]:

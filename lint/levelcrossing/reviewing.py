@@ -22,7 +22,7 @@ from levelcrossing.reports.sarif import sarif_report
 from levelcrossing.reports.screen import Screen
 from levelcrossing.reports.terminal import coloured_report, plain_report
 from levelcrossing.reports.workflow import workflow_report
-from levelcrossing.review import open_case, review
+from levelcrossing.review import extra_rows, open_case, review
 from levelcrossing.rulebook import RuleFile, load_rules
 from levelcrossing.settings import load_settings
 from levelcrossing.symbolfields import settings_from_fields
@@ -160,13 +160,15 @@ def _write_decks(folder: Path, paths: Sequence[str], args: argparse.Namespace) -
     from levelcrossing.deckfiles import deck_files
 
     folder.mkdir(parents=True, exist_ok=True)
-    book = tradebook.load(extra=tuple(Path(file) for file in args.facts))
+    facts_files = [Path(file) for file in args.facts]
     for number, path in enumerate(paths, 1):
         try:
             board = read_board(path)
         except InputError:
             continue  # the review has told
-        case = open_case(board, settings_from_fields(board, _settings(path, args.settings)), book)
+        settings = _settings(path, args.settings)
+        book = tradebook.load(extra=extra_rows(facts_files, settings))
+        case = open_case(board, settings_from_fields(board, settings), book)
         prefix = f"{number}_" if len(paths) > 1 else ""
         for name, text in deck_files(case).items():
             (folder / (prefix + name)).write_text(text, encoding="utf-8", newline="\n")

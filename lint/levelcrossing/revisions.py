@@ -16,7 +16,7 @@ from dataclasses import dataclass
 from pathlib import Path, PurePosixPath
 
 from levelcrossing.errors import CommandError
-from levelcrossing.settings import FILE_NAME
+from levelcrossing.settings import FILE_NAME, PARTS_NAME
 
 _ENDINGS = (".kicad_sch", ".sch", ".kicad_pro", ".pro", ".net", ".xml")
 _MOST_BYTES = 400_000_000
@@ -114,7 +114,7 @@ def _write_tree(folder: Path, commit: str, root: Path, reviewed: Set[str]) -> No
         meta, _, raw = entry.partition(b"\t")
         mode, _, blob = meta.split(b" ")[:3]
         name = PurePosixPath(raw.decode("utf-8", "surrogateescape"))
-        needed = name.suffix in _ENDINGS or name.name == FILE_NAME or str(name) in reviewed
+        needed = name.suffix in _ENDINGS or name.name in (FILE_NAME, PARTS_NAME) or str(name) in reviewed
         if needed and mode in _REGULAR and _stays_inside(name):
             wanted.append((blob, name))
     written = 0

@@ -12,7 +12,7 @@ from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
-from levelcrossing.settings import FILE_NAME, find_settings, repository_root
+from levelcrossing.settings import FILE_NAME, PARTS_NAME, find_settings, repository_root
 
 _CHILD = re.compile(rb'\(\s*property\s+"Sheet ?file"\s+"((?:[^"\\]|\\.)*)"')
 _SOURCE = re.compile(rb'\(\s*source\s+"?([^")\r\n]*)')
@@ -89,9 +89,9 @@ class _Sheets:
 
     def boards_with(self, path: Path) -> set[Path]:
         """Return the root sheets that a sheet, project file or settings file has to do with."""
-        if path.name == FILE_NAME:
+        if path.name in (FILE_NAME, PARTS_NAME):
             own = {sheet for sheet in self._known() if sheet.is_relative_to(path.parent)}
-            return {root for sheet in own for root in self._roots(sheet) if find_settings(str(root)) == path}
+            return {root for sheet in own for root in self._roots(sheet) if find_settings(str(root), path.name) == path}
         if path.suffix == ".kicad_pro":
             root = path.with_suffix(".kicad_sch")
             return {root} if root.is_file() else set()

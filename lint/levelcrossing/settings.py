@@ -45,6 +45,7 @@ from __future__ import annotations
 
 import difflib
 import fnmatch
+import hashlib
 import os
 import re
 import tomllib
@@ -71,6 +72,7 @@ from levelcrossing.symbolfields import settings_from_fields
 
 __all__ = [
     "FILE_NAME",
+    "PARTS_NAME",
     "find_settings",
     "load_settings",
     "parse_settings",
@@ -80,6 +82,8 @@ __all__ = [
 ]
 
 FILE_NAME = "levelcrossing.toml"
+PARTS_NAME = "levelcrossing-parts.toml"
+"""Trade rows of the project's own: data only, found as the settings file is."""
 
 MOST_LEVELS_UP = 5
 """How many folders above the board's own are looked into when no repository root ends the search."""
@@ -120,18 +124,39 @@ def load_settings(board_path: str, explicit: str | None = None) -> Settings:
         When the file cannot be read or holds something that is not understood.
     """
     found = Path(explicit) if explicit is not None else find_settings(board_path)
-    if found is None:
-        return Settings()
-    return parse_settings(_read_text(found), _shown_path(found))
+    settings = Settings() if found is None else parse_settings(_read_text(found), _shown_path(found))
+    parts = find_settings(board_path, PARTS_NAME)
+    if parts is None:
+        return settings
+    text = _read_text(parts)
+    return replace(settings, parts_file=_shown_path(parts), parts_rows=_row_digests(text))
 
 
-def find_settings(board_path: str) -> Path | None:
+def _row_digests(text: str) -> tuple[tuple[str, str], ...]:
+    """Return the rows of a file of trade rows by name, each with a digest; whether they are sound is judged at load."""
+    try:
+        document = tomllib.loads(text)
+    except tomllib.TOMLDecodeError:
+        return ()
+    found = [
+        (f"{table} {row.get('id', '?')}", hashlib.sha256(repr(sorted(row.items(), key=str)).encode()).hexdigest()[:12])
+        for table, rows in document.items()
+        if isinstance(rows, list)
+        for row in rows
+        if isinstance(row, dict)
+    ]
+    return tuple(found)
+
+
+def find_settings(board_path: str, name: str = FILE_NAME) -> Path | None:
     """Return the settings file of a board: in its folder, or the nearest one above within the repository.
 
     Parameters
     ----------
     board_path : str
         The reviewed file or project folder.
+    name : str
+        Which file: the settings, or the project's own trade rows.
 
     Returns
     -------
@@ -151,7 +176,7 @@ def find_settings(board_path: str) -> Path | None:
     for levels_up, folder in enumerate((start, *start.parents)):
         if levels_up > MOST_LEVELS_UP and root is None:
             break
-        candidate = folder / FILE_NAME
+        candidate = folder / name
         if candidate.is_symlink() and not candidate.resolve().is_relative_to((root or folder).resolve()):
             raise SettingsError("is a link that leads out of the repository", file=_shown_path(candidate))
         if candidate.exists():

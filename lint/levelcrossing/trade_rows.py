@@ -19,6 +19,10 @@ _MATCH = re.compile(r"^match\s*=\s*(\[.*\])\s*$", re.MULTILINE)
 _STRINGS = re.compile(r"'([^']*)'|\"((?:[^\"\\]|\\.)*)\"")
 
 
+# How the files of the shipped rows are called in messages.
+SHIPPED = "rules/trade/"
+
+
 class Row:
     """One row of trade data.
 
@@ -67,6 +71,11 @@ class Row:
                     line=self.line + (int(found[1]) - 1 if found else 0),
                 ) from fault
         return self._data
+
+    @property
+    def own(self) -> bool:
+        """A row of the house or the project, not a shipped one."""
+        return not self.file.startswith(SHIPPED)
 
     def get(self, key: str, default: Any = None) -> Any:
         """Return a value, or the default."""

@@ -77,23 +77,29 @@ class Tradebook:
         return None
 
     def part_of(self, text: str, where: str, part: Part) -> PartFacts | None:
-        """Return the facts that one normal text stands for."""
+        """Return the facts that one normal text stands for.
+
+        Rows of the house or the project come before all shipped ones, whatever their tables.
+        """
         hit = self._translators.find(text)
-        if hit is not None:
+        family = self._families.find(text)
+        if self._own_parts and not any(found is not None and found[0].own for found in (hit, family)):
+            own = self._own_parts.find(text)
+            if own is not None and _reference_fits(own[0], part):
+                return trade_parts.part_facts(own[0], text, where, self._implied)
+        if hit is not None and not (family is not None and family[0].own and not hit[0].own):
             row = hit[0]
             if row.get("family_by_name"):
-                family = self._families.find(text)
                 if family is not None:
                     whole = trade_translators.translator_facts(row)
                     return trade_logic.family_facts(family[0], self._functions, part, text, where, whole)
             else:
                 return trade_translators.two_sided_facts(row, self._family(row), part, text, where)
-        family = self._families.find(text)
         if family is not None:
             return trade_logic.family_facts(family[0], self._functions, part, text, where)
-        hit = self._parts.find(text)
-        if hit is not None and _reference_fits(hit[0], part):
-            return trade_parts.part_facts(hit[0], text, where, self._implied)
+        other = self._parts.find(text)
+        if other is not None and _reference_fits(other[0], part):
+            return trade_parts.part_facts(other[0], text, where, self._implied)
         return None
 
     def _family(self, row: Row) -> Row | None:
@@ -237,6 +243,11 @@ class Tradebook:
     @cached_property
     def _parts(self) -> Matcher:
         return Matcher(self.table("part"))
+
+    @cached_property
+    def _own_parts(self) -> Matcher | None:
+        own = [row for row in self.table("part") if row.own]
+        return Matcher(own) if own else None
 
     @cached_property
     def _implied(self) -> list[Row]:
