@@ -417,11 +417,16 @@ class _PartModeller:
             drive=drive,
             receive=receive,
             when=when,
-            basis=Basis.weakest(*parts),
+            basis=Basis.LIBRARY if self._passes(facts) else Basis.weakest(*parts),
             why=why,
             facts=facts if self.facts else None,
             pull_up_ohms=facts.pull_up_ohms,
         )
+
+    def _passes(self, facts: PinFacts) -> bool:
+        """Tell a channel of a switch: it reads and drives nothing, so that nothing had to be assumed of its levels."""
+        translator = self.facts.translator if self.facts is not None else None
+        return translator is not None and translator.kind in ("fet-switch", "bus-switch") and bool(facts.side)
 
     # -- direction ---------------------------------------------------------------------------------------------------
 

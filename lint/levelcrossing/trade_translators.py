@@ -90,6 +90,7 @@ def two_sided_facts(row: Row, family: Row | None, part: Part, text: str, where: 
         )
         for pattern, limits in _side_supplies(row)
     )
+    loose = _pin_of_no_side(row, sides["a"])
     exceptions = [(item["names"], item) for item in row.get("pins", ()) if applies(item, text)]
     half = max((int(pin.number) for pin in part.pins if pin.number.isdigit()), default=0) / 2
 
@@ -104,7 +105,7 @@ def two_sided_facts(row: Row, family: Row | None, part: Part, text: str, where: 
         side, channel = _side_and_channel(row, pin)
         if not side and row.get("side_by_number") and pin.number.isdigit():
             side = "a" if int(pin.number) <= half else "b"
-        facts = sides.get(side, _OPEN)
+        facts = sides.get(side, loose)
         for pattern, values in exceptions:
             if name and matches(pattern, pin.name):
                 facts = sides.get(values.get("side") or side, facts)
@@ -122,6 +123,24 @@ def two_sided_facts(row: Row, family: Row | None, part: Part, text: str, where: 
         matched=where,
         doubtful=row.get("doubtful", ""),
         note=row.get("note", "") or " ".join(row.get("notes", ())),
+    )
+
+
+def _pin_of_no_side(row: Row, near: PinFacts) -> PinFacts:
+    """Return what holds for a pin that belongs to neither side: levels of the row as a whole, ratings as side A."""
+    vih, vil = level_pair(row.data)
+    if vih is None:
+        return _OPEN
+    return replace(
+        _OPEN,
+        vih=vih,
+        vil=vil,
+        vmax=near.vmax,
+        vmax_off=near.vmax_off,
+        clamp_high=near.clamp_high,
+        clamp_low=near.clamp_low,
+        supply=near.supply,
+        capacitance_farads=near.capacitance_farads,
     )
 
 
