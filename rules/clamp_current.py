@@ -10,7 +10,8 @@ series resistor only lowers the current.
 Speaks when the unclamped voltage passes the rating and the clamp diode conducts a limited current: damage above the
 rated injection current, or above 1 mA where no injection current is rated; marginal below 1 mA without a rating.
 
-Stays quiet when the current stays within a rated injection current, and when the diode takes less than 10 µA.
+Stays quiet when the current stays within a rated injection current, when the diode takes less than 10 µA, and when it
+takes nothing at the usual values and less than 100 µA in the worst corner: that is the leakage of junctions that block.
 """
 
 from collections.abc import Iterator
@@ -27,6 +28,8 @@ SOURCES = (
 
 QUIET_AMPS = 10e-6
 STIFF_AMPS = 5e-3
+# What is nothing at the usual values and this little in the worst corner flows through junctions that block [A].
+LEAKING_AMPS, LEAKAGE_AMPS = 1e-6, 100e-6
 UNRATED_AMPS = 1e-3
 
 
@@ -45,6 +48,7 @@ def check(case: CaseFile) -> Iterator[Finding]:
             worst.rating_margin is None
             or worst.rating_margin.spread.low >= 0
             or not QUIET_AMPS <= amps.high < STIFF_AMPS
+            or (amps.nominal < LEAKING_AMPS and amps.high < LEAKAGE_AMPS)
         ):
             continue
         limit = receive.injection_amps
@@ -73,4 +77,6 @@ def check(case: CaseFile) -> Iterator[Finding]:
 
 
 def _milliamperes(amps: float) -> str:
+    if amps < 1e-6:
+        return "less than 1 µA"
     return f"{amps * 1e3:.2g} mA" if amps >= 1e-4 else f"{amps * 1e6:.2g} µA"

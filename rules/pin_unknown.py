@@ -30,10 +30,10 @@ def check(case: CaseFile) -> Iterator[Finding]:
         far = case.pins[part, numbers[0]].role == "far-end"
         if far:
             text = f"{len(numbers)} signal{'s' * (len(numbers) > 1)} leave{'s' * (len(numbers) == 1)} the board at {part} ({_listed(numbers)}), and nothing tells the level on the other side."
-            remedy = f'[far_ends]  "{part}" = {{rail = "5"}}   # the supply of what is plugged in there'
+            remedy = f'State the supply of what is plugged in there, under [far_ends] in levelcrossing.toml: "{part}" = {{rail = "?"}}.'
         else:
             text = f"{len(numbers)} signal pin{'s' * (len(numbers) > 1)} of {part} ({_listed(numbers)}) could not be judged: {why}."
-            remedy = f'[pins]  "{part}" = {{rail = "3.3"}}   # the supply that sets its levels'
+            remedy = f'State the supply that sets its levels, under [pins] in levelcrossing.toml: "{part}" = {{rail = "?"}}.'
         yield Finding(
             rule=NAME,
             outcome=Outcome.UNKNOWN,
@@ -42,7 +42,6 @@ def check(case: CaseFile) -> Iterator[Finding]:
             part=part,
             pin=numbers[0],
             net=nets[part, numbers[0]],
-            condition=f"depends on the level beyond {part}" if far else "",
             basis=Basis.ASSUMED,
             also=tuple(f"{part}.{number}" for number in numbers[1:]),
             cause=f"unknown {part} {why}",

@@ -30,3 +30,16 @@ def test_stays_quiet_when_the_diode_does_not_conduct() -> None:
 
 def test_a_stiff_driver_is_left_to_input_overvoltage() -> None:
     assert through("47") == []
+
+
+@pytest.mark.parametrize("diode", ["BAT54", "BAT85", "1N5819", "1N4148"])
+def test_a_diode_that_blocks_the_high_is_no_clamp_current(diode: str) -> None:
+    """A diode shifter: its cathode at the 5 V output, a pull-up to 3.3 V (common practice); only leakage flows back."""
+    text = (
+        SUPPLIES
+        + CONTROLLER
+        + INVERTER_5V.format(out="/Y")
+        + f"D1 {diode} Diode:{diode} | 1 K passive /Y | 2 A passive /A\n"
+        + resistor("R1", "10k", "+3V3", "/A")
+    )
+    assert not named(findings_of(text), "clamp-current")

@@ -140,7 +140,7 @@ def _follows(previous: str, number: str) -> bool:
 def settling(settle: str) -> str:
     """Return what would settle a supply's voltage, without the settings line that stands ready to paste elsewhere."""
     head, _, rest = settle.partition("; ")
-    return rest if rest and head.startswith("under [rails]") else settle
+    return rest if rest and head.startswith("State its volts") else settle
 
 
 def grounds_known(finding: Finding) -> bool:
