@@ -33,7 +33,9 @@ def check(case: CaseFile) -> Iterator[Finding]:
             remedy = f'State the supply of what is plugged in there, under [far_ends] in levelcrossing.toml: "{part}" = {{rail = "?"}}.'
         else:
             text = f"{len(numbers)} signal pin{'s' * (len(numbers) > 1)} of {part} ({_listed(numbers)}) could not be judged: {why}."
-            remedy = f'State the supply that sets its levels, under [pins] in levelcrossing.toml: "{part}" = {{rail = "?"}}.'
+            remedy = (
+                f'State the supply that sets its levels, under [pins] in levelcrossing.toml: "{part}" = {{rail = "?"}}.'
+            )
         yield Finding(
             rule=NAME,
             outcome=Outcome.UNKNOWN,

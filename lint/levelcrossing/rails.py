@@ -429,7 +429,8 @@ class _Tracing:
             hints += list(self._makers(nets))
             yield (
                 net,
-                f'State its volts or a range under [rails] in levelcrossing.toml: "{net}" = "?"; it ' + "; ".join(hints),
+                f'State its volts or a range under [rails] in levelcrossing.toml: "{net}" = "?"; it '
+                + "; ".join(hints),
             )
 
     def _makers(self, nets: Sequence[str]) -> Iterator[str]:

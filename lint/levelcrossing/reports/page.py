@@ -180,7 +180,7 @@ class _Page:
                     clean(crossing.target),
                     clean(shifter + (f": {', '.join(crossing.link)}" if crossing.link else "")),
                     clean(crossing_levels(one.solved)),
-                    clean(phrases.good_for(one.solved.speed) if one.solved.speed is not None else ""),
+                    clean(_speed(one)),
                 )
             )
         head = ("verdict", "from", "to", "by way of", "at the receiver", "speed")
@@ -235,6 +235,13 @@ class _Page:
                 "<pre>" + "\n".join(clean(line) for line in row.splitlines()) + "</pre>" for row in review.rows_to_fill
             ]
         return lines
+
+
+def _speed(one: ReviewedCrossing) -> str:
+    """Return how fast a crossing is good for; nothing where its levels do not hold anyway."""
+    if one.solved.speed is None or one.verdict in (Outcome.DAMAGE, Outcome.MALFUNCTION):
+        return ""
+    return phrases.good_for(one.solved.speed, brief=True)
 
 
 def _rule_texts(reviews: Sequence[Review], rules: Sequence[RuleFile]) -> list[str]:

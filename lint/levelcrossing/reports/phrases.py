@@ -64,8 +64,11 @@ def span(spread: Spread, unit: str = "V") -> str:
     return f"{low} {unit}" if low == high else f"{low} to {high} {unit}"
 
 
-def good_for(speed: Speed) -> str:
-    """Return the highest rate of a crossing at its load, what limits it, and what it must carry, in one line."""
+def good_for(speed: Speed, *, brief: bool = False) -> str:
+    """Return the highest rate of a crossing at its load, what limits it, and what it must carry, in one line.
+
+    The ``brief`` form, for tables, leaves out how far the models bear the rate and why it is needed.
+    """
     load = f"into {quantity(speed.load_farads, 'F', 2)}"
     if speed.usable_bit_s > FASTEST_STATED:
         # Beyond this, lines are no lumped loads any more and the driver's own edge decides.
@@ -77,10 +80,10 @@ def good_for(speed: Speed) -> str:
             inside.append(f"{quantity(speed.loaded_bit_s, 'bit/s', 2)} with 10 pF more")
         text += f" ({', '.join(inside)})"
         text += f", limited by {speed.limit}" if speed.limit else ""
-        text += f"; {speed.accuracy}" if speed.accuracy else ""
+        text += f"; {speed.accuracy}" if speed.accuracy and not brief else ""
     if speed.line is not None and speed.line.needed_bit_s is not None:
         text += f"; must carry {quantity(speed.line.needed_bit_s, 'bit/s', 2)}" + (
-            f": {speed.line.why}" if speed.line.why else ""
+            f": {speed.line.why}" if speed.line.why and not brief else ""
         )
     return text
 
