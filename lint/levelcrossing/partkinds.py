@@ -22,7 +22,7 @@ ELEMENT_KINDS = frozenset(
     {
         "resistor", "resistor-pack", "shunt", "capacitor", "inductor", "ferrite", "fuse", "jumper", "net-tie", "link",
         "diode", "zener", "led", "suppressor", "transistor", "switch", "crystal", "battery", "mounting-hole",
-        "power-flag", "transformer", "transducer", "relay", "antenna",
+        "power-flag", "transformer", "transducer", "relay", "antenna", "source",
     }
 )  # fmt: skip
 """Kinds that neither read nor drive a logic level of their own."""
@@ -49,7 +49,7 @@ _SYMBOLS: tuple[tuple[str, int, int, str], ...] = (
         3,
         40,
         r"^R_?(NETWORK|PACK|ARRAY)|^RESISTOR_?(PACK|NETWORK|ARRAY)|^RA\d|^RN(_|\d|$)|"
-        r"^RES_?(ARRAY|NET|PACK)|^R_?MATRIX|^CAY16|^EXB",
+        r"^RES_?(ARRAY|NET|PACK)|^R_?MATRIX|^CAY16|^EXB|^RR\d+$",
     ),
     (
         "suppressor",
@@ -77,6 +77,8 @@ _SYMBOLS: tuple[tuple[str, int, int, str], ...] = (
     ("transformer", 4, 40, r"^TRANSFORMER|^XFMR|^TRAFO|^PULSE_?TRANS"),
     ("relay", 4, 16, r"^RELAY|_RELAY"),
     ("transducer", 2, 4, r"^BUZZER|^SPEAKER|^MICROPHONE|^MOTOR|^PIEZO|^LAMP"),
+    # Sources of a simulation stand for nothing that is fitted.
+    ("source", 2, 4, r"^[VI]SOURCE|^[VI](DC|AC|SIN|PULSE|PWL|EXP|SFFM|AM|TRNOISE|TRRANDOM)$"),
     ("antenna", 1, 4, r"^ANTENNA|^ANT(_|\d|$)"),
     (
         "switch",
@@ -95,7 +97,7 @@ _SYMBOLS: tuple[tuple[str, int, int, str], ...] = (
         "resistor",
         2,
         3,
-        r"^R(_|$)|^RES(ISTOR)?(_|\d|$)|RESISTOR|^R\d{4}_|^RV(_|$)|POTENTIOMETER|THERMISTOR|^NTC|^TRIM",
+        r"^R(_|$)|^RES(ISTOR)?(_|\d|$)|RESISTOR|^R\d{4}_|^RV(_|$)|POTENTIOMETER|^POT(_|\d|$)|THERMISTOR|^NTC|^TRIM",
     ),
     (
         "connector",
@@ -147,6 +149,7 @@ _FOOTPRINT_KINDS = {"test": "test-point", "hole": "mounting-hole"}
 
 _LETTERS: dict[str, tuple[str, int, int]] = {
     "R": ("resistor", 2, 3), "RN": ("resistor-pack", 3, 40),
+    "RR": ("resistor-pack", 3, 40), "POT": ("resistor", 2, 3),
     "RP": ("resistor-pack", 4, 40), "RM": ("resistor-pack", 3, 40),
     "RA": ("resistor-pack", 3, 40), "RV": ("resistor", 2, 3),
     "C": ("capacitor", 2, 3), "CP": ("capacitor", 2, 3),
@@ -216,7 +219,7 @@ def kind_of(part: Part) -> str:
         One of ``resistor``, ``resistor-pack``, ``shunt`` (four terminals), ``link`` (0 ohm), ``capacitor``,
         ``inductor``, ``ferrite``, ``fuse``, ``jumper``, ``net-tie``, ``diode``, ``zener``, ``led``, ``suppressor``,
         ``transistor``, ``connector``, ``test-point``, ``mounting-hole``, ``switch``, ``crystal``, ``battery``,
-        ``power-flag``, ``transformer``, ``relay``, ``transducer``, ``antenna``, ``regulator``, ``ic``.
+        ``power-flag``, ``transformer``, ``relay``, ``transducer``, ``antenna``, ``source`` (of a simulation), ``regulator``, ``ic``.
     """
     names = tuple(pin.name for pin in part.pins) if len(part.pins) <= _NAMED_PINS else ()
     return _kind(part.reference, part.value, part.library, part.symbol, part.footprint, len(part.pins), names)
@@ -336,7 +339,17 @@ def element_pairs(part: Part) -> tuple[tuple[Pin, Pin], ...]:
         One pair for each element; empty when the pins do not tell.
     """
     kind, pins = kind_of(part), tuple(part.pins)
-    if kind in ("ic", "regulator", "connector", "transistor", "mounting-hole", "test-point", "power-flag", "antenna"):
+    if kind in (
+        "ic",
+        "regulator",
+        "connector",
+        "transistor",
+        "mounting-hole",
+        "test-point",
+        "power-flag",
+        "antenna",
+        "source",
+    ):
         return ()
     if kind == "resistor-pack" or (kind in ("capacitor", "inductor") and len(pins) > 3):
         return _pack_pairs(pins)
