@@ -57,7 +57,7 @@ def part_facts(row: Row, text: str, where: str, names: Sequence[Row] = ()) -> Pa
 
     tolerant = row.get("tolerant")
     return PartFacts(
-        title=row.get("title") or row.id,
+        title=row.get("title") or text[:24] or row.id,
         group=row.get("group", "other"),
         provenance=row.provenance,
         supplies=supplies,

@@ -113,7 +113,7 @@ def two_sided_facts(row: Row, family: Row | None, part: Part, text: str, where: 
         return replace(facts, channel=channel)
 
     return PartFacts(
-        title=row.get("title") or row.id,
+        title=row.get("title") or text[:24] or row.id,
         group="translator",
         provenance=row.provenance,
         supplies=supplies,

@@ -429,10 +429,15 @@ def evidence(solved: SolvedCrossing, review: Review) -> list[str]:
             rails.append(f"{net} at {phrases.span(rail.volts)} ({rail.basis.value})")
     words = [", ".join(rails)] if rails else []
     if crossing.driver is not None and crossing.driver.drive is not None and crossing.driver.drive.source:
-        words.append(f"{crossing.driver.part} drives as {crossing.driver.drive.source}")
+        words.append(_taken_as(crossing.driver.part, "drives", crossing.driver.drive.source))
     if crossing.receiver.receive is not None and crossing.receiver.receive.source:
-        words.append(f"{crossing.receiver.part} reads as {crossing.receiver.receive.source}")
+        words.append(_taken_as(crossing.receiver.part, "reads", crossing.receiver.receive.source))
     return words
+
+
+def _taken_as(part: str, does: str, source: str) -> str:
+    """Return a part with the source of its figures; what is assumed is a sentence of its own."""
+    return f"{part}: {source}" if source.startswith("an ordinary") else f"{part} {does} as {source}"
 
 
 def draw_ladder(sheet: Sheet, drawing: Ladder, glyphs: Glyphs) -> None:
