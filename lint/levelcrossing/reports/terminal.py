@@ -437,7 +437,7 @@ def evidence(solved: SolvedCrossing, review: Review) -> list[str]:
 
 def _taken_as(part: str, does: str, source: str) -> str:
     """Return a part with the source of its figures; what is assumed is a sentence of its own."""
-    return f"{part}: {source}" if source.startswith("an ordinary") else f"{part} {does} as {source}"
+    return f"{part}: {source}" if " is assumed" in source else f"{part} {does} as {source}"
 
 
 def draw_ladder(sheet: Sheet, drawing: Ladder, glyphs: Glyphs) -> None:
