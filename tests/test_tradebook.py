@@ -154,6 +154,18 @@ def test_the_value_counts_before_the_fields_and_the_symbol_last(book):
     assert book.part(part("~", "74LS245")).matched == "symbol"
 
 
+@pytest.mark.parametrize("pattern", [r"(a+)+b", r"X(\d*[A-Z])*1", r"(?:A.*){5}", "Q" * 700])
+def test_a_pattern_that_may_take_for_ever_is_refused(tmp_path, pattern):
+    path = tmp_path / "house.toml"
+    path.write_text(
+        f"[[part]]\nid = 'x'\nmatch = ['{pattern}']\nexamples = []\ngroup = 'other'\nsource = 'own'\n"
+        "certainty = 'practice'\n",
+        encoding="utf-8",
+    )
+    with pytest.raises(TradeDataError, match="take for ever"):
+        tradebook.load(extra=(path,))
+
+
 def test_house_rows_come_first_and_take_the_place_of_shipped_ones(tmp_path):
     house = tmp_path / "house.toml"
     house.write_text(

@@ -395,6 +395,9 @@ CHOICES: dict[str, tuple[str, ...]] = {
     ),
 }
 
+# Rows may come from a stranger's project: a repeat of repeats, (a+)+, can keep a matcher busy for hours.
+MOST_PATTERN = 600
+_REPEATS_REPEATED = re.compile(r"\((?:[^()\\]|\\.)*[*+](?:[^()\\]|\\.)*\)[*+{]")
 _ORDER = re.compile(r"any|a(\+\d+(\.\d+)?)?<=b|b(\+\d+(\.\d+)?)?<=a")
 
 
@@ -505,6 +508,10 @@ def _check_regex(row: Row, pattern: Any, key: str) -> None:
         found = re.compile(pattern, re.IGNORECASE)
     except re.error as fault:
         raise row.refuse(f"has a wrong pattern '{pattern}' in '{key}': {fault}") from fault
+    if len(pattern) > MOST_PATTERN or _REPEATS_REPEATED.search(pattern):
+        raise row.refuse(
+            f"has a pattern in '{key}' that may take for ever: '{pattern[:60]}'", "write it without repeats of repeats"
+        )
     if key == "match" and row.table not in ("rail_name", "rail_range", "word_list"):
         if found.match("") is not None:
             raise row.refuse(f"has a pattern that matches nothing at all: '{pattern}'")
