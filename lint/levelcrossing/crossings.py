@@ -31,6 +31,8 @@ from levelcrossing.model import (
 # regulators do not make a crossing, 3.0 V and 3.3 V do.
 SAME_SUPPLY = 0.04
 SERIES_AT_MOST_OHMS = 2_200.0
+# A connector fed with more than this carries power; nothing says that its signals are logic of that level [V].
+MOST_LOGIC_VOLTS = 5.6
 CHAIN_KINDS = frozenset({"auto-buffer", "dual-dir", "dual-fixed", "i2c-buffer"})
 # Hosts whose signal level is fixed by their maker, told from the connector's reference, value or symbol.
 KNOWN_HOSTS = (
@@ -169,6 +171,8 @@ class _Finder:
             if len(nominal) != 1:
                 return pin
             rail, volts = supplies[0]
+            if volts.nominal > MOST_LOGIC_VOLTS:
+                return pin
             why = f"the other side of {pin.part}.{pin.number} works from {rail}, the only supply on {pin.part}"
             style, basis = False, Basis.ASSUMED
         return replace(
@@ -248,8 +252,11 @@ class _Finder:
                 if same_supply(driver.supply_volts, receiver.supply_volts):
                     continue
                 path = field.path(driver.net, receiver.net)
-                if path is not None:
-                    yield self._crossing(field, driver, receiver, path)
+                if path is None:
+                    continue
+                crossing = self._crossing(field, driver, receiver, path)
+                if not _against_its_purpose(crossing):
+                    yield crossing
 
     def _crossing(
         self, field: _Field, driver: PinModel, receiver: PinModel, path: Sequence[Element], **more: object
@@ -574,6 +581,19 @@ def _guessed(*pins: PinModel) -> str:
 def _far_condition(*pins: PinModel) -> list[str]:
     """Say what must be true of far ends whose level a pull-up on the board tells."""
     return [pin.why for pin in pins if pin.inferred_far_end and _settled(pin)]
+
+
+def _against_its_purpose(crossing: Crossing) -> bool:
+    """Tell the way up through something that only brings levels down, between two pins that could go either way.
+
+    A divider or a clamp between two configurable pins says which of them drives: the one on the higher supply.
+    """
+    driver, receiver = crossing.driver, crossing.receiver
+    if driver is None or driver.supply_volts is None or receiver.supply_volts is None:
+        return False
+    either = bool(driver.when) and bool(receiver.when) and receiver.drive is not None
+    upwards = driver.supply_volts.nominal < receiver.supply_volts.nominal
+    return crossing.shifter.kind in ("divider", "clamp") and either and upwards
 
 
 def _two_way(found: Sequence[Crossing]) -> list[Crossing]:

@@ -1,15 +1,17 @@
-"""A tied direction pin settles which side of a transceiver drives and which side reads."""
+"""What settles the direction of pins that could go both ways: a tied direction pin, a bus of open drains."""
 
 from __future__ import annotations
 
 import re
 from collections import defaultdict
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping, Set
 from dataclasses import replace
 
-from levelcrossing.model import PartFacts, PinModel, Rails
+from levelcrossing.model import Element, LineRate, PartFacts, PinModel, Rails
 
 # Direction pins of plain transceivers (74xx245 and kin): high is A to B (data sheets of the family).
+# Series resistors in bus lines are a few hundred ohms at most (UM10204 section 7.1.2); pull-ups are a kilohm and more.
+SERIES_OHMS = 500.0
 PLAIN_DIRECTION = re.compile(r"(\d?)(?:DIR|T/?~?R|A->B)(\d?)", re.IGNORECASE)
 
 
@@ -53,6 +55,57 @@ def settle_directions(
                 settled[reference, pin.number] = (
                     replace(pin, drive=None, when="") if reads else replace(pin, receive=None, when="")
                 )
+    return settled
+
+
+def pulled_up(elements: Iterable[Element], pins: Mapping[tuple[str, str], PinModel], rails: Rails) -> frozenset[str]:
+    """Return the nets with a pull-up: a resistor to a supply, one inside a part, or one behind a small series resistor."""
+    pulled = {pin.net for pin in pins.values() if pin.pull_up_ohms and pin.net}
+    near: list[tuple[str, str]] = []
+    for element in elements:
+        if element.kind not in ("resistor", "link") or len(element.nets) != 2:
+            continue
+        for net, other in (element.nets, element.nets[::-1]):
+            if other in rails.by_net and not rails.is_ground(other) and net not in rails.by_net:
+                pulled.add(net)
+        small = element.kind == "link" or (element.ohms is not None and element.ohms.nominal <= SERIES_OHMS)
+        if small and not any(net in rails.by_net for net in element.nets):
+            near.append((element.nets[0], element.nets[1]))
+    pulled |= {a for a, b in near if b in pulled} | {b for a, b in near if a in pulled}
+    return frozenset(pulled)
+
+
+def settle_open_drains(
+    pins: Mapping[tuple[str, str], PinModel], line_rates: Mapping[str, LineRate], pulled: Set[str]
+) -> dict[tuple[str, str], PinModel]:
+    """Make configurable pins on a bus of open drains open drains: there they only pull low.
+
+    Parameters
+    ----------
+    pins : mapping
+        (reference, number) to PinModel.
+    line_rates : mapping from net to LineRate
+        Names the buses.
+    pulled : set of str
+        Nets with a pull-up; without one a bus of open drains has no high, and nothing is settled.
+
+    Returns
+    -------
+    dict
+        All pins.
+    """
+    settled = dict(pins)
+    for key, pin in pins.items():
+        line = line_rates.get(pin.net)
+        if (
+            line is not None
+            and line.open_drain
+            and pin.net in pulled
+            and pin.when
+            and pin.drive is not None
+            and pin.drive.style == "push-pull"
+        ):
+            settled[key] = replace(pin, drive=replace(pin.drive, style="open-drain"), when="")
     return settled
 
 

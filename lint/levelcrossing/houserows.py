@@ -9,6 +9,8 @@ from levelcrossing.model import CaseFile, PinModel
 
 # Names that TOML literal strings cannot hold, or that would end the row, are left to the user.
 _PLAIN = re.compile(r"[\x20-\x26\x28-\x7e]+")
+# No part number is longer.
+MOST_LETTERS = 60
 _DIRECTIONS = {(True, True): "inout", (True, False): "out", (False, True): "in"}
 
 
@@ -31,7 +33,7 @@ def house_row(number: str, pins: Sequence[PinModel] = (), supplies: Mapping[str,
     """
     # One word that TOML and a regular expression can hold: what else a value says is a package or a remark.
     word = "".join(character for character in number.split(" ")[0].split("(")[0] if _PLAIN.fullmatch(character))
-    shown = word.replace("\\", "").replace('"', "").strip() or "PART"
+    shown = word.replace("\\", "").replace('"', "").strip()[:MOST_LETTERS] or "PART"
     lines = [
         "[[part]]",
         f'id = "{shown}"',

@@ -61,6 +61,9 @@ OPEN_DRAIN_NAME = re.compile(
     r".*(PGOOD|PWRGD|POK|PG$|^PG|ALERT|ALERTB|INT[B#N]?\d?$|IRQ|FAULT|FLT|nINT|OVCUR|OC$|CHRG|STDBY|STAT\d?$|STATUS|RDY/BSY).*",
     re.I,
 )
+# Connectors of more pins are for boards of their own, of which one row does not tell all (SODIMM modules and the like).
+MOST_MODULE_PINS = 48
+SERIAL_OUT, SERIAL_IN = (re.compile(rf"(U(ART)?\d?_?)?{way}(D|O|I)?\d?", re.I) for way in ("TX", "RX"))
 STRICT_SUPPLY = re.compile(r"[AD]?V(DD|CC|PP|EE|TT)[A-Z0-9_]*", re.I)
 TWO_WAY_NAME = re.compile(r"(SDA|SCL|SMB|DQ|1W|IO|GPIO|P[A-Z]?\d|D\d|SDIO|ALERT|BUSY)", re.I)
 READ_NAME = re.compile(
@@ -244,13 +247,17 @@ def model_pins(
             for pin in part.pins:
                 pins[part.reference, pin.number] = _plain(pin, "element")
             continue
+        if kind == "connector" and part.reference not in settings.far_ends:
+            module = _plugged_in(part, rails, book)
+            if module is not None:
+                kind, facts[part.reference] = "module", module
         if kind in ("connector", "test-point"):
             for pin in part.pins:
                 pins[part.reference, pin.number] = (
                     _far_end(pin, rails, settings) if kind == "connector" else _plain(pin, "element")
                 )
             continue
-        known = book.part(part)
+        known = facts.get(part.reference) or book.part(part)
         if known is not None:
             facts[part.reference] = known
         modeller = _PartModeller(
@@ -259,6 +266,18 @@ def model_pins(
         for pin in part.pins:
             pins[part.reference, pin.number] = modeller.model(pin)
     return pins, facts
+
+
+def _plugged_in(part: Part, rails: Rails, book: Tradebook) -> PartFacts | None:
+    """Return what is known of the card or module that a connector is for: its value names it, its pins have its names.
+
+    A socket for an SD card or a header called HC-SR04 is no connector of which nothing tells the other side.
+    """
+    known = book.part(part) if len(part.pins) <= MOST_MODULE_PINS else None
+    if known is None or known.translator is not None or known.group not in ("memory", "sensor", "display", "module"):
+        return None
+    supplied = [pin for pin in part.pins if known.pin(pin).direction == "supply" and rails.volts(pin.net) is not None]
+    return known if supplied else None
 
 
 def _plain(pin: Pin, role: str, why: str = "") -> PinModel:
@@ -443,6 +462,12 @@ class _PartModeller:
             if setting.drives is False:
                 return "in", True, Basis.DECLARED
             return "inout", True, Basis.DECLARED
+        if facts.direction in (None, "inout") and not facts.side and len(words) > 1 and pin.kind == "bidirectional":
+            # The first name of a configurable pin is what it does from reset on (``TXD0/IO1``).
+            if SERIAL_OUT.fullmatch(words[0]):
+                return "out", True, Basis.TRACED
+            if SERIAL_IN.fullmatch(words[0]):
+                return "in", True, Basis.TRACED
         if facts.direction is not None:
             group = self.facts.group if self.facts else ""
             return facts.direction, facts.direction != "inout" or group in ("memory",), Basis.LIBRARY

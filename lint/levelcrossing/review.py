@@ -79,10 +79,11 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
     pins, facts = pin_models.model_pins(board, rails, book, settings)
     pins = directions.settle_directions(pins, facts, rails)
     elements = island_survey.find_elements(board, book, facts, settings)
+    rates = busrates.line_rates(board, pins, book.buses, settings)
+    pins = directions.settle_open_drains(pins, rates, directions.pulled_up(elements, pins, rails))
     islands = island_survey.find_islands(board, rails, pins, elements)
     survey = crossing_survey.find_crossings(board, rails, pins, facts, islands)
     solved = solutions.solve_crossings(survey.crossings, islands, rails, settings)
-    rates = busrates.line_rates(board, pins, book.buses, settings)
     solved = speeds.with_speeds(solved, islands, rails, rates, settings)
     solved = tuple(
         replace(
