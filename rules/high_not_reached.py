@@ -37,4 +37,4 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 f"{solved.crossing.target} reads a high from {format_volts(solved.vih.nominal if solved.vih else margin.limit)} up; {solved.crossing.source} brings it to "
                 f"{format_volts(state.receiver_volts.nominal)} ({format_volts(margin.at)} against {format_volts(margin.limit)}{where or ' at worst'})."
             ) + (f" In that corner {margin.break_even}." if margin.break_even else "")
-            yield solved.finding(index, NAME, Outcome.MALFUNCTION if nominal else Outcome.MARGINAL, text)
+            yield solved.finding(index, NAME, Outcome.MALFUNCTION if nominal else Outcome.MARGINAL, text, level=True)

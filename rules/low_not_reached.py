@@ -39,4 +39,6 @@ def check(case: CaseFile) -> Iterator[Finding]:
             remedy = f"Use larger pull-ups on {solved.crossing.receiver.net}, a stronger driver" + (
                 f", or a MOSFET pair or a translator in place of {parts}." if parts else "."
             )
-            yield solved.finding(index, NAME, Outcome.MALFUNCTION if nominal else Outcome.MARGINAL, text, remedy=remedy)
+            yield solved.finding(
+                index, NAME, Outcome.MALFUNCTION if nominal else Outcome.MARGINAL, text, remedy=remedy, level=True
+            )

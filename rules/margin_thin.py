@@ -34,4 +34,4 @@ def check(case: CaseFile) -> Iterator[Finding]:
                     f"{solved.crossing.target} reads a {level} from {solved.crossing.source} with only {margin.spread.low * 1e3:.0f} mV to spare"
                     f" ({margin.at:.2f} V against {margin.limit:.2f} V; {margin.worst_corner or 'at the usual values'}); {margin.spread.nominal * 1e3:.0f} mV at the usual values."
                 )
-                yield solved.finding(index, NAME, Outcome.MARGINAL, text)
+                yield solved.finding(index, NAME, Outcome.MARGINAL, text, level=True)

@@ -11,10 +11,9 @@ leaves it short of VIH.
 Stays quiet when every receiver on the line bears and reads the pull-up's level.
 """
 
-import re
 from collections.abc import Iterator
 
-from levelcrossing.model import CaseFile, Finding, Outcome, SolvedCrossing
+from levelcrossing.model import CaseFile, Finding, Outcome
 from levelcrossing.units import format_volts
 
 NAME = "pull-up-rail"
@@ -26,12 +25,6 @@ SOURCES = (
 EXPLAINS = ("input-overvoltage", "clamp-current", "high-not-reached", "margin-thin")
 
 QUIET_AMPS = 10e-6
-# Groups of parts whose inputs may measure.
-MEASURING_GROUPS = ("mcu", "module", "radio", "adc")
-# Names of what is measured rather than read as high or low.
-ANALOG = re.compile(
-    r"ADC|AIN|ANALOG|(^|[/_])AN\d|SENS|MEAS|MON(ITOR)?([_\d/]|$)|VBAT|BATT|DIV|TEMP|NTC|POT|LEVEL|VREF", re.IGNORECASE
-)
 
 
 def check(case: CaseFile) -> Iterator[Finding]:
@@ -71,12 +64,6 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 f"{format_volts(solved.vih.nominal if solved.vih else state.high_margin.limit)} up ({format_volts(state.high_margin.at)} against {format_volts(state.high_margin.limit)} at worst)."
             )
             outcome = Outcome.MALFUNCTION if state.high_margin.spread.nominal < -1e-6 else Outcome.MARGINAL
-            condition = ""
-            if _divided(solved, case):
-                if any(ANALOG.search(name) for name in (crossing.receiver.net, crossing.receiver.name)):
-                    continue
-                outcome = Outcome.UNKNOWN
-                condition = f"{crossing.receiver.label} reads a logic level there, not an analogue voltage"
             better = (
                 f"Tie {resistor} to {crossing.receiver_rail} if every part on the line bears it; otherwise put a shifter between the supplies."
                 if crossing.receiver_rail
@@ -88,18 +75,6 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 outcome,
                 text,
                 remedy=better,
-                condition=condition,
+                level=True,
                 cause=f"{resistor} {rail} {crossing.receiver.part}.{crossing.receiver.number}",
             )
-
-
-def _divided(solved: SolvedCrossing, case: CaseFile) -> bool:
-    """Tell whether a resistor to ground divides the level on purpose: what a measuring input needs, and no pull-up."""
-    net, known = solved.crossing.receiver.net, case.facts.get(solved.crossing.receiver.part)
-    measures = solved.crossing.receiver.drive is not None or (known is not None and known.group in MEASURING_GROUPS)
-    return measures and any(
-        element.kind == "resistor"
-        and net in element.nets
-        and any(case.rails.is_ground(other) for other in element.nets)
-        for element in solved.elements
-    )

@@ -10,7 +10,7 @@ from itertools import pairwise
 
 import networkx
 
-from levelcrossing import partkinds, shifters
+from levelcrossing import measuring, partkinds, shifters
 from levelcrossing import pins as pin_models
 from levelcrossing.islands import SWITCH_KINDS
 from levelcrossing.model import (
@@ -301,17 +301,33 @@ class _Finder:
                         continue
                     seen.add(rail)
                     path = field.path(net, receiver.net) or []
+                    reader, level_if = self._divided(field, receiver, drivers)
                     yield Crossing(
                         driver=None,
                         driver_rail=rail,
-                        receiver=receiver,
+                        receiver=reader,
                         receiver_rail=receiver.supply,
                         link=tuple(dict.fromkeys([element.part, *(step.part for step in path)])),
                         shifter=Shifter(kind="series-resistor", parts=(element.part,), title=f"pull-up to {rail}"),
                         island=field.island.index,
                         condition="",
+                        level_if=level_if,
                         basis=Basis.weakest(receiver.basis, self.rails.by_net[rail].basis),
                     )
+
+    def _divided(self, field: _Field, receiver: PinModel, drivers: Sequence[PinModel]) -> tuple[PinModel, str]:
+        """Return the receiver and on what its levels depend, when a divider brings it the voltage of a rail."""
+        nets = field.near[receiver.net]
+        if receiver.receive is None or not any(
+            measuring.pulled_down(net, field.island.elements, self.rails) for net in nets
+        ):
+            return receiver, ""
+        if any(pin.net in nets and pin.part != receiver.part for pin in drivers):
+            return receiver, ""
+        measured = measuring.measures(receiver, nets, self.facts.get(receiver.part))
+        if measured:
+            return replace(receiver, receive=replace(receiver.receive, reads=False)), ""
+        return receiver, f"{receiver.label} reads a level there, not an analogue voltage" if measured is None else ""
 
     def _through_translators(self) -> Iterator[Crossing]:
         for reference in sorted(self.facts):

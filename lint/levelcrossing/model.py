@@ -1034,6 +1034,8 @@ class Crossing:
     inverting : bool
     condition : str
         What must be true for the crossing to carry a signal at all.
+    level_if : str
+        What must be true for the receiver's levels to matter; empty when they do.
     basis : Basis
     stage_driver : PinModel or None
         The pin that drives the receiver's island when the signal comes through a translator: its output on that side.
@@ -1054,6 +1056,7 @@ class Crossing:
     inverting: bool = False
     through: tuple[str, ...] = ()
     condition: str = ""
+    level_if: str = ""
     basis: Basis = Basis.ASSUMED
     stage_driver: PinModel | None = None
     segment: bool = False
@@ -1248,6 +1251,7 @@ class SolvedCrossing:
         cause: str = "",
         condition: str = "",
         part: str = "",
+        level: bool = False,
     ) -> Finding:
         """Return a finding at the receiver of this crossing.
 
@@ -1264,9 +1268,14 @@ class SolvedCrossing:
             A further condition.
         part : str
             The part at fault when that is not the receiver's (its pin and net stay the receiver's otherwise).
+        level : bool
+            The finding is about a level that the receiver reads, not about what it bears.
         """
         crossing = self.crossing
         conditions = [crossing.condition, condition]
+        if level and crossing.level_if:
+            conditions.append(crossing.level_if)
+            outcome = Outcome.UNKNOWN
         receive = crossing.receiver.receive
         if receive is not None and receive.basis is Basis.ASSUMED and not crossing.receiver.inferred_far_end:
             conditions.append(f"{crossing.receiver.part} is an ordinary CMOS part (no data on it)")

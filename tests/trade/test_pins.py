@@ -147,7 +147,7 @@ def test_pins_on_another_supply_of_the_same_part(pin):
 
 
 def test_a_row_says_how_sure_it_is_and_where_it_stands(book, part):
-    facts = book.part(part("ESP32-C3"))
+    facts = book.part(part("eZ80F91"))
     assert facts.provenance.certainty == "memory"
     assert facts.provenance.file == "rules/trade/parts.toml"
     assert facts.provenance.line > 1
