@@ -8,7 +8,8 @@ What to do: larger pull-ups, fewer of them in parallel, or a stronger driver.
 Speaks when the solved current into a low output passes the current at which its low level is guaranteed (marginal), or
 its absolute maximum (damage).
 
-Stays quiet when the current keeps within the rating at every corner, and when no rating is known.
+Stays quiet when the current keeps within the rating at every corner, when no rating is known, and up to the absolute
+maximum where the low only turns a switch transistor on or off.
 """
 
 from collections.abc import Iterator
@@ -49,7 +50,7 @@ def check(case: CaseFile) -> Iterator[Finding]:
                 most,
                 "its absolute maximum is",
             )
-        elif rated is not None and amps.high > rated * (1 + 1e-9):
+        elif rated is not None and not solved.crossing.to_switch and amps.high > rated * (1 + 1e-9):
             outcome, limit, what = Outcome.MARGINAL, rated, what_rated
         else:
             continue

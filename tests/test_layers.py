@@ -32,7 +32,7 @@ LAYERS: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "rails": (("rail_*", "rails"), FACTS),
     "pins": (("pins", "directions"), FACTS),
     "islands": (("islands",), FACTS),
-    "crossings": (("crossings", "shifters", "measuring"), (*FACTS, "pins", "islands")),
+    "crossings": (("crossings", "shifters", "measuring", "switches"), (*FACTS, "pins", "islands")),
     # The numerical core solves circuits and has never heard of boards: of the vocabulary it knows types alone.
     "numerics": (
         ("network", "devices", "elimination", "arrays", "solve", "waveforms", "transient", "bitrate", "decks"),

@@ -9,6 +9,7 @@ import pytest
 from cells import CLAMP, N_FET, NPN, SIGNAL, all_cells, random_network
 
 from levelcrossing import devices as d
+from levelcrossing import solve
 from levelcrossing.devices import THERMAL_VOLTS as VT
 from levelcrossing.network import Branch, Network
 from levelcrossing.solve import solve_dc
@@ -265,3 +266,18 @@ def test_what_is_no_number_is_never_solved(place: str) -> None:
     parts = (d.resistor("R1", "A", "x", ohms), d.diode("D1", "x", "0", CLAMP))
     found = solve_dc(Network(branches=parts, fixed={"A": rail}))
     assert found.solved.tolist() == [True, False, True]
+
+
+@pytest.mark.parametrize("most", range(1, 16))
+def test_members_that_drop_out_in_the_last_step_allowed_leave_the_others_open(most: int) -> None:
+    """A batch of which some settle at once: whatever was called converged is the answer of the full iteration."""
+    supplies = np.concatenate([np.zeros(6), np.linspace(0.5, 40.0, 11)])
+    whole = Network(
+        branches=(d.resistor("R1", "in", "x", 1e3), d.diode("D1", "x", "0", SIGNAL)), fixed={"in": supplies}
+    )
+    arrays = solve.lay_out(whole)[0]
+    start = solve.starting_volts(whole, arrays, None)
+    volts, done = solve._newton(arrays, start, iterations=most)
+    assert done.shape == supplies.shape and done[:6].all() and (most > 2 or not done.all())
+    x = arrays.names.index("x")
+    assert volts[x][done] == pytest.approx(solve_dc(whole).volts["x"][done], abs=1e-6)

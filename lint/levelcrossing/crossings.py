@@ -10,7 +10,7 @@ from itertools import pairwise
 
 import networkx
 
-from levelcrossing import measuring, partkinds, shifters
+from levelcrossing import measuring, partkinds, shifters, switches
 from levelcrossing import pins as pin_models
 from levelcrossing.islands import SWITCH_KINDS
 from levelcrossing.model import (
@@ -43,7 +43,8 @@ KNOWN_HOSTS = (
     ),
 )
 ANALOG_NET = re.compile(
-    r".*(TMDS|USB_?D[PMN+-]|CSI|DSI|MDI|ETH|_D\d?[PN]$|.*\w[+-]$|[_.](P|N)$|LVDS|CANH|CANL|RS485|AUDIO|SPK|MIC|ANT)",
+    # The ID pin of a USB socket is open or grounded by the cable.
+    r"ID$|.*(TMDS|USB_?D[PMN+-]|CSI|DSI|MDI|ETH|_D\d?[PN]$|.*\w[+-]$|[_.](P|N)$|LVDS|CANH|CANL|RS485|AUDIO|SPK|MIC|ANT)",
     re.I,
 )
 
@@ -122,6 +123,7 @@ class _Finder:
             found.extend(self._from_rails(field))
         found.extend(self._through_translators())
         found.extend(self._tied_inputs())
+        found.extend(list(self._to_switches(found)))
         found = _two_way(found)
         found.sort(key=_order)
         return Survey(
@@ -409,6 +411,25 @@ class _Finder:
                     inferred=_guessed(source, sink),
                     basis=Basis.weakest(source.basis, sink.basis, out.basis),
                 )
+
+    def _to_switches(self, found: Sequence[Crossing]) -> Iterator[Crossing]:
+        """Gates and bases of transistors that switch a load, not a signal: those on the way to no receiver."""
+        shifting = {part for crossing in found if crossing.driver is not None for part in crossing.link}
+        for field in self.islands:
+            for gate in switches.switch_terminals(field.island, self.rails, self.pins):
+                if gate.part in shifting or gate.supply_volts is None:
+                    continue
+                drivers = self.drivers_of[id(field)]
+                for driver in drivers:
+                    if driver.role != "signal" or driver.supply_volts is None:
+                        continue
+                    path = field.path(driver.net, gate.net)
+                    if path is None or same_supply(driver.supply_volts, gate.supply_volts):
+                        continue
+                    if len(drivers) == 1 and len(field.island.pins) == 1:
+                        driver = replace(driver, when="", why="the only pin that can drive the transistor")
+                    # To ground there is no second supply: such a switch is only worth a word where it may not close.
+                    yield self._crossing(field, driver, gate, path, segment=self.rails.is_ground(gate.supply))
 
     def _tied_inputs(self) -> Iterator[Crossing]:
         """Yield inputs tied straight to a rail that is not their own supply."""

@@ -1063,6 +1063,11 @@ class Crossing:
     inferred: str = ""
 
     @property
+    def to_switch(self) -> bool:
+        """Tell whether the receiver is the gate or base of a transistor that switches a load."""
+        return self.receiver.role == "gate"
+
+    @property
     def source(self) -> str:
         """Name the driver for people: ``U1.5 (TX) on +5V``, or ``+5V through R3``."""
         if self.driver is None:
@@ -1239,6 +1244,12 @@ class SolvedCrossing:
     elements: tuple[Element, ...] = ()
     assumptions: tuple[str, ...] = ()
     proposal: str = ""
+
+    @property
+    def without_effect(self) -> bool:
+        """Tell whether the receiver sees the same voltage whatever the driver does: within 10 mV at the usual values."""
+        volts = [state.receiver_volts.nominal for state in self.states.values() if state.solved]
+        return len(volts) > 1 and max(volts) - min(volts) < 0.01
 
     def finding(
         self,

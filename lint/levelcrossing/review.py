@@ -84,6 +84,8 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
     islands = island_survey.find_islands(board, rails, pins, elements)
     survey = crossing_survey.find_crossings(board, rails, pins, facts, islands)
     solved = solutions.solve_crossings(survey.crossings, islands, rails, settings)
+    # A diode may keep a pin from having any say in what switches a load.
+    solved = tuple(one for one in solved if not (one.crossing.to_switch and one.without_effect))
     solved = speeds.with_speeds(solved, islands, rails, rates, settings)
     solved = tuple(
         replace(

@@ -103,6 +103,7 @@ def _newton(
                     done[gone] = settled[stop] & ~lost[stop]
                     keep = np.flatnonzero(~stop)
                     live, part, v, limited = live[keep], part.taken(keep), v[:, keep], limited[:, keep]
+                    settled, lost = settled[keep], lost[keep]
         out[:, live] = v
         done[live] = settled & ~lost
     return out, done
