@@ -33,6 +33,7 @@ SAME_SUPPLY = 0.04
 SERIES_AT_MOST_OHMS = 2_200.0
 # A connector fed with more than this carries power; nothing says that its signals are logic of that level [V].
 MOST_LOGIC_VOLTS = 5.6
+DOWNWARD_KINDS = frozenset({"divider", "clamp"})
 CHAIN_KINDS = frozenset({"auto-buffer", "dual-dir", "dual-fixed", "i2c-buffer"})
 # Hosts whose signal level is fixed by their maker, told from the connector's reference, value or symbol.
 KNOWN_HOSTS = (
@@ -119,7 +120,7 @@ class _Finder:
     def run(self) -> Survey:
         found: list[Crossing] = []
         for field in self.islands:
-            found.extend(self._direct(field))
+            found.extend(_without_detours(list(self._direct(field))))
             found.extend(self._from_rails(field))
         found.extend(self._through_translators())
         found.extend(self._tied_inputs())
@@ -256,9 +257,7 @@ class _Finder:
                 path = field.path(driver.net, receiver.net)
                 if path is None:
                     continue
-                crossing = self._crossing(field, driver, receiver, path)
-                if not _against_its_purpose(crossing):
-                    yield crossing
+                yield self._crossing(field, driver, receiver, path)
 
     def _crossing(
         self, field: _Field, driver: PinModel, receiver: PinModel, path: Sequence[Element], **more: object
@@ -620,17 +619,24 @@ def _far_condition(*pins: PinModel) -> list[str]:
     return [pin.why for pin in pins if pin.inferred_far_end and _settled(pin)]
 
 
-def _against_its_purpose(crossing: Crossing) -> bool:
-    """Tell the way up through something that only brings levels down, between two pins that could go either way.
+def _without_detours(found: Sequence[Crossing]) -> list[Crossing]:
+    """Leave out the way up through what only brings levels down, between two pins that could go either way.
 
     A divider or a clamp between two configurable pins says which of them drives: the one on the higher supply.
     """
-    driver, receiver = crossing.driver, crossing.receiver
-    if driver is None or driver.supply_volts is None or receiver.supply_volts is None:
-        return False
-    either = bool(driver.when) and bool(receiver.when) and receiver.drive is not None
-    upwards = driver.supply_volts.nominal < receiver.supply_volts.nominal
-    return crossing.shifter.kind in ("divider", "clamp") and either and upwards
+    down = {
+        _ends(crossing) for crossing in found if crossing.driver is not None and crossing.shifter.kind in DOWNWARD_KINDS
+    }
+
+    def detour(crossing: Crossing) -> bool:
+        driver, receiver = crossing.driver, crossing.receiver
+        if driver is None or driver.supply_volts is None or receiver.supply_volts is None:
+            return False
+        either = bool(driver.when) and bool(receiver.when) and receiver.drive is not None
+        upwards = driver.supply_volts.nominal < receiver.supply_volts.nominal
+        return either and upwards and _ends(crossing)[::-1] in down
+
+    return [crossing for crossing in found if not detour(crossing)]
 
 
 def _two_way(found: Sequence[Crossing]) -> list[Crossing]:

@@ -1,4 +1,4 @@
-"""What settles the direction of pins that could go both ways: a tied direction pin, a bus of open drains."""
+"""What settles the direction of pins that could go both ways: a direction pin, a bus of open drains, a net's name."""
 
 from __future__ import annotations
 
@@ -12,6 +12,10 @@ from levelcrossing.model import Element, LineRate, PartFacts, PinModel, Rails
 # Direction pins of plain transceivers (74xx245 and kin): high is A to B (data sheets of the family).
 # Series resistors in bus lines are a few hundred ohms at most (UM10204 section 7.1.2); pull-ups are a kilohm and more.
 SERIES_OHMS = 500.0
+HOST_GROUPS = frozenset({"mcu", "fpga"})
+# Names of lines of the serial peripheral interface that say who drives: host in, host out, and its clock.
+HOST_READS = re.compile(r"(.*[_.-])?(MISO|CIPO|POCI|SOMI)\d?([_.-].*)?", re.IGNORECASE)
+HOST_DRIVES = re.compile(r"(.*[_.-])?(MOSI|COPI|PICO|SIMO|SCK|SCLK)\d?([_.-].*)?", re.IGNORECASE)
 PLAIN_DIRECTION = re.compile(r"(\d?)(?:DIR|T/?~?R|A->B)(\d?)", re.IGNORECASE)
 
 
@@ -106,6 +110,46 @@ def settle_open_drains(
             and pin.drive.style == "push-pull"
         ):
             settled[key] = replace(pin, drive=replace(pin.drive, style="open-drain"), when="")
+    return settled
+
+
+def settle_hosts(
+    pins: Mapping[tuple[str, str], PinModel], facts: Mapping[str, PartFacts]
+) -> dict[tuple[str, str], PinModel]:
+    """Let the names MISO and MOSI say what a controller's configurable pin does.
+
+    Parameters
+    ----------
+    pins : mapping
+        (reference, number) to PinModel.
+    facts : mapping
+        Reference to PartFacts.
+
+    Returns
+    -------
+    dict
+        All pins. Settled are those of the only controller on a net with another part that drives or reads it and no
+        connector: a programmer plugged in there would make the controller the device.
+    """
+    on_net: dict[str, list[tuple[str, str]]] = defaultdict(list)
+    for key, pin in pins.items():
+        if pin.net and pin.role in ("signal", "far-end"):
+            on_net[pin.net].append(key)
+    settled = dict(pins)
+    for net, keys in on_net.items():
+        name = net.rpartition("/")[2]
+        reads, drives = HOST_READS.fullmatch(name), HOST_DRIVES.fullmatch(name)
+        hosts = [key for key in keys if key[0] in facts and facts[key[0]].group in HOST_GROUPS]
+        others = [pins[key] for key in keys if key not in hosts]
+        if not (reads or drives) or len(hosts) != 1 or not others or any(pin.role == "far-end" for pin in others):
+            continue
+        host = pins[hosts[0]]
+        if not host.when or host.drive is None or host.receive is None or host.drive.style != "push-pull":
+            continue
+        if reads and any(pin.drive is not None for pin in others):
+            settled[hosts[0]] = replace(host, drive=None, when="", why=f"the controller reads {name}")
+        elif drives and any(pin.receive is not None for pin in others):
+            settled[hosts[0]] = replace(host, when="", why=f"the controller drives {name}")
     return settled
 
 
