@@ -271,6 +271,8 @@ class Provenance:
         ``datasheet``, ``secondary``, ``memory`` or ``practice``.
     file, line
         Where the row stands.
+    groups : tuple of (str, str)
+        Groups of figures (``levels``, ``outputs``, ``maxima``, ``rates``, ``reverse_gain``) of another certainty.
     """
 
     row: str
@@ -278,6 +280,14 @@ class Provenance:
     certainty: str
     file: str = ""
     line: int = 0
+    groups: tuple[tuple[str, str], ...] = ()
+
+    def certainty_of(self, *groups: str) -> str:
+        """Return how sure the least sure of some groups of figures is."""
+        order = ("datasheet", "secondary", "practice", "memory")
+        known = dict(self.groups)
+        found = [known.get(group, self.certainty) for group in groups] or [self.certainty]
+        return max(found, key=lambda one: order.index(one) if one in order else 0)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -19,6 +19,7 @@ from levelcrossing.model import (
     PartFacts,
     Pin,
     PinFacts,
+    Provenance,
     RatePoint,
     RegulatorFacts,
 )
@@ -105,11 +106,17 @@ def _pin(name: str) -> Pin:
     return Pin(part="U1", number=name, name=name, kind="", net="")
 
 
-def _source(row: str, source: str, certainty: str, file: str, line: int) -> list[str]:
-    where = f"{Path(file).name}:{line}" if file else ""
+def _source(provenance: Provenance) -> list[str]:
+    where = f"{Path(provenance.file).name}:{provenance.line}" if provenance.file else ""
+    sure = [_SURE.get(provenance.certainty, provenance.certainty)]
+    sure += [
+        f"{group.replace('_', ' ')} {_SURE.get(certainty, certainty)}"
+        for group, certainty in provenance.groups
+        if certainty != provenance.certainty
+    ]
     return [
-        f"  from      {source} ({_SURE.get(certainty, certainty)})",
-        f"  row       {row}" + (f", {where}" if where else ""),
+        f"  from      {provenance.source} ({'; '.join(sure)})",
+        f"  row       {provenance.row}" + (f", {where}" if where else ""),
     ]
 
 
@@ -126,7 +133,7 @@ def _function_known(book: tradebook.Tradebook, number: str) -> bool:
 def _part(known: PartFacts, row: Row | None) -> list[str]:
     lines = [f"{known.title}  ({known.group})"]
     provenance = known.provenance
-    lines += _source(provenance.row, provenance.source, provenance.certainty, provenance.file, provenance.line)
+    lines += _source(provenance)
     if row is not None and row.get("checked"):
         lines.append(f"  checked   {row.get('checked')}")
     if known.doubtful:
@@ -278,7 +285,7 @@ def _device(facts: MosfetFacts | BipolarFacts | DiodeFacts) -> list[str]:
             lines.append(
                 f"  breaks    at {format_volts(facts.zener_volts.low)} to {format_volts(facts.zener_volts.high)} at {format_si(facts.zener_amps, 'A')}"
             )
-    return lines + _source(provenance.row, provenance.source, provenance.certainty, provenance.file, provenance.line)
+    return lines + _source(provenance)
 
 
 def _regulator(facts: RegulatorFacts) -> list[str]:
@@ -296,7 +303,7 @@ def _regulator(facts: RegulatorFacts) -> list[str]:
         lines.append(f"  bears     {format_volts(facts.input_max_volts)} at its input")
     if facts.dropout_volts is not None:
         lines.append(f"  dropout   {format_volts(facts.dropout_volts)} at full load")
-    return lines + _source(provenance.row, provenance.source, provenance.certainty, provenance.file, provenance.line)
+    return lines + _source(provenance)
 
 
 def _assumed() -> str:

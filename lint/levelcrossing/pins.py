@@ -139,14 +139,14 @@ def receive_from(facts: PinFacts, part: PartFacts) -> Receive:
         else default.capacitance_farads,
         off_tolerant=bool(part.partial_power_down) or facts.vmax_off is not None,
         basis=basis,
-        source=describe(part.provenance, part.title),
+        source=describe(part.provenance, part.title, "levels", "maxima"),
     )
 
 
-def describe(provenance: Provenance, title: str) -> str:
-    """Return one line that names a row of trade data, its source and how sure it is."""
+def describe(provenance: Provenance, title: str, *groups: str) -> str:
+    """Return one line that names a row of trade data, its source and how sure these groups of its figures are."""
     sure = {"datasheet": "", "secondary": ", second hand", "memory": ", from memory", "practice": ", common practice"}
-    return f"{title}: {provenance.source}{sure.get(provenance.certainty, '')}"
+    return f"{title}: {provenance.source}{sure.get(provenance.certainty_of(*groups), '')}"
 
 
 def drive_from(facts: PinFacts, style: str, part: PartFacts | None, supply_volts: float | None = None) -> Drive:
@@ -183,7 +183,7 @@ def drive_from(facts: PinFacts, style: str, part: PartFacts | None, supply_volts
         spread = Spread(low=weak * 0.7, nominal=weak, high=weak * 1.3)
         return Drive(
             style=style, high=high, low=level_text("0"), high_ohms=spread, low_ohms=spread, limit_amps=facts.output_amps,
-            rated_low_amps=None, basis=Basis.LIBRARY, source=describe(part.provenance, part.title) if part else "",
+            rated_low_amps=None, basis=Basis.LIBRARY, source=describe(part.provenance, part.title, "outputs") if part else "",
         )  # fmt: skip
     if bipolar_output(facts.outputs):
         high = level_text("max(V-1.6, 0)")
@@ -196,7 +196,7 @@ def drive_from(facts: PinFacts, style: str, part: PartFacts | None, supply_volts
         limit_amps=facts.output_amps,
         rated_low_amps=rated_low,
         basis=basis,
-        source=describe(part.provenance, part.title) if part else "an ordinary CMOS output is assumed",
+        source=describe(part.provenance, part.title, "outputs") if part else "an ordinary CMOS output is assumed",
     )
 
 

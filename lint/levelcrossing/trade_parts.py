@@ -59,7 +59,7 @@ def part_facts(row: Row, text: str, where: str, names: Sequence[Row] = ()) -> Pa
     return PartFacts(
         title=row.get("title") or text[:24] or row.id,
         group=row.get("group", "other"),
-        provenance=row.provenance,
+        provenance=row.provenance_for(text),
         supplies=supplies,
         pin=remembered(pin_facts),
         partial_power_down=None

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import re
 import tomllib
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -90,7 +91,30 @@ class Row:
             certainty=str(self.get("certainty", "")),
             file=self.file,
             line=self.line,
+            groups=tuple(
+                (key.removeprefix("certainty_"), str(value))
+                for key, value in self.data.items()
+                if key.startswith("certainty_")
+            ),
         )
+
+    def provenance_for(self, text: str) -> Provenance:
+        """Return where the row's figures for one part come from: what was read may be the sheet of a relative.
+
+        Parameters
+        ----------
+        text : str
+            The normal text of the part that matched.
+
+        Returns
+        -------
+        Provenance
+            From memory for a part that is not among the row's ``sure_members``.
+        """
+        whole, members = self.provenance, self.get("sure_members", ())
+        if not members or any(re.match(member, text) for member in members):
+            return whole
+        return replace(whole, source=f"{whole.source}; taken for this part too", certainty="memory", groups=())
 
     def refuse(self, what: str, remedy: str = "") -> TradeDataError:
         """Return the error that says what is wrong with this row, and where it stands."""

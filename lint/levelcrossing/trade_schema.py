@@ -35,7 +35,7 @@ _NAMED = {
     "title": "text",
     "maker": "text",
     "generic": "flag",
-    "sure_members": "texts",
+    "sure_members": "regexes",
 }
 _CERTAINTY = {f"certainty_{part}": "certainty" for part in ("levels", "outputs", "maxima", "rates", "reverse_gain")}
 _LEVELS = {"vih_volts": "level", "vil_volts": "level", "levels": "rows:levels"}

@@ -115,7 +115,7 @@ def two_sided_facts(row: Row, family: Row | None, part: Part, text: str, where: 
     return PartFacts(
         title=row.get("title") or text[:24] or row.id,
         group="translator",
-        provenance=row.provenance,
+        provenance=row.provenance_for(text),
         supplies=supplies,
         pin=remembered(pin_facts),
         translator=whole,

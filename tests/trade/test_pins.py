@@ -2,6 +2,9 @@
 
 import pytest
 
+from levelcrossing import pins
+from levelcrossing.model import Pin
+
 
 @pytest.mark.parametrize(
     ("value", "name", "number", "direction"),
@@ -152,3 +155,31 @@ def test_a_row_says_how_sure_it_is_and_where_it_stands(book, part):
     assert facts.provenance.file == "rules/trade/parts.toml"
     assert facts.provenance.line > 1
     assert book.part(part("FXMA108BQX")).doubtful
+
+
+def test_a_relative_of_the_part_that_was_read_is_from_memory(book, part):
+    """The row holds two current monitors; the sheet of one of them was read."""
+    read, relative = (book.part(part(name)).provenance for name in ("INA226", "INA219"))
+    assert read.row == relative.row and read.certainty == "secondary"
+    assert relative.certainty == "memory" and relative.source == f"{read.source}; taken for this part too"
+
+
+def test_a_group_of_figures_may_be_less_sure_than_its_row(book, part):
+    facts = book.part(part("STM32F303CB"))
+    assert facts.provenance.certainty_of() == "datasheet"
+    assert facts.provenance.certainty_of("levels") == "datasheet"
+    assert facts.provenance.certainty_of("levels", "maxima") == "memory"
+    assert pins.receive_from(facts.pin(Pin(part="U1", number="1", name="PA9", kind="", net="")), facts).source.endswith(
+        ", from memory"
+    )
+
+
+def test_every_sure_member_belongs_to_its_row(book, part):
+    """A member is a pattern; what its row says of it must be reachable."""
+    rows = [row for row in book.table("part") if row.get("sure_members")]
+    assert len(rows) >= 30
+    for row in rows:
+        for member in row.get("sure_members"):
+            plain = member.replace("\\d+", "128").replace("[BD]", "B").replace("[A-Z]?", "C").replace("[8B]", "8")
+            assert book.part(part(plain)).provenance.row == row.id, (row.id, member)
+            assert book.part(part(plain)).provenance.certainty == row.get("certainty"), (row.id, member)
