@@ -27,6 +27,15 @@ EXPLAINS = ("input-overvoltage", "clamp-current", "high-not-reached", "margin-th
 QUIET_AMPS = 10e-6
 
 
+def covers(case: CaseFile, finding: Finding, other: Finding) -> bool:
+    """Stand for what the pull-up brings about, not for what a push-pull output does on the same line."""
+    if other.crossing is None:
+        return True
+    crossing = case.crossings[other.crossing].crossing
+    pin = crossing.stage_driver or crossing.driver
+    return pin is None or (pin.drive is not None and pin.drive.style == "open-drain")
+
+
 def check(case: CaseFile) -> Iterator[Finding]:
     """Yield one finding per pull-up and receiver that do not go together."""
     for index, solved in enumerate(case.crossings):

@@ -230,3 +230,90 @@ def test_a_measured_voltage_has_no_levels_but_a_limit(name: str, measured: bool)
     assert bool(solved.crossing.level_if) is not measured
     high = BARREL + esp(adc=name) + divider(1, "1k", "1k", "+12V", name)
     assert ("damage", "pull-up-rail", "U2.6") in said(high)
+
+
+UNO = "A1 {value} MCU_Module:x | 5 +5V power_out +5V | 29 GND power_in GND | 15 D0/RX bidirectional {rx} | 16 D1/TX bidirectional {tx}\n"
+HEADER = "J4 {value} Connector_Generic:Conn_01x04 | 1 VCC passive {rail} | 2 GND passive GND | 3 TXD passive {tx} | 4 RXD passive {rx}\n"
+BOARD = "U7 {value} Module:x | 1 VIN power_in +5V | 2 GND power_in GND | 3 {pin} bidirectional {net}\n"
+
+
+@pytest.mark.parametrize(
+    ("value", "expected"),
+    [
+        ("Arduino_UNO_R3", [("damage", "input-overvoltage", "U2.34")]),
+        ("Arduino_Nano_v3.x", [("damage", "input-overvoltage", "U2.34")]),
+        # A later board reads a high from 0.7 of 5 V only.
+        ("Arduino_UNO_R4", [("damage", "input-overvoltage", "U2.34"), ("malfunction", "high-not-reached", "A1.15")]),
+    ],
+)
+def test_a_controller_board_talks_at_5_volts(value: str, expected: list[tuple[str, str, str]]) -> None:
+    assert said(UNO.format(value=value, rx="/RX", tx="/TX") + esp(tx="/RX", rx="/TX")) == expected
+
+
+def test_a_radio_board_fed_with_5_volts_keeps_its_3_3_volt_input() -> None:
+    board = HEADER.format(value="HC-05", rail="+5V", tx="/RX", rx="/TX")
+    found = said(avr(rx="/RX", tx="/TX") + board)
+    assert ("damage", "input-overvoltage", "J4.4") in found
+    assert {outcome for outcome, _, place in found if place != "J4.4"} == {"marginal"}
+    assert not [one for one in found if one[1] == "supply-range"]
+
+
+@pytest.mark.parametrize(
+    ("value", "pin"),
+    [
+        ("NodeMCU_1.0_(ESP-12E)", "D2"),
+        ("WeMos_D1_mini", "D2"),
+        ("ESP32-DEVKITC-32D", "IO4"),
+        ("Arduino_Nano_33_IoT", "D2"),
+    ],
+)
+def test_a_board_on_5_volts_has_pins_of_3_3_volts(value: str, pin: str) -> None:
+    """The regulator is on the board: its output need not be connected anywhere."""
+    found = said(BOARD.format(value=value, pin=pin, net="/ECHO5") + SONAR)
+    assert ("damage", "input-overvoltage", "U7.3") in found
+
+
+def test_a_bare_part_on_a_header_out_of_its_range_is_a_board_of_its_own() -> None:
+    """A display controller's panel supply is 7 V to 15 V; on a board with 3.3 V it has a pump, and nothing tells more."""
+    oled = (
+        "J4 OLED_SSD1306 Connector_Generic:Conn_01x04 | 1 GND passive GND | 2 VCC passive +3V3 | 3 SCL passive /SCL"
+        " | 4 SDA passive /SDA\n"
+    )
+    (finding,) = findings_of(SUPPLIES + avr(sda="/SDA", scl="/SCL") + oled)
+    assert (finding.rule, finding.outcome.value, finding.part) == ("input-overvoltage", "unknown", "J4")
+    assert "the other side of J4.3 works from +3V3, the only supply on J4" in finding.condition
+
+
+def test_lines_pulled_above_all_supplies_of_a_connector_are_a_question() -> None:
+    sensor = (
+        "J4 Thermometer Connector_Generic:Conn_01x04 | 1 VIN passive +3V3 | 2 GND passive GND | 3 SCL passive /SCL"
+        " | 4 SDA passive /SDA\n"
+    )
+    pulls = resistor("R1", "4.7k", "+5V", "/SDA") + resistor("R2", "4.7k", "+5V", "/SCL")
+    assert [one[:2] for one in said(avr(sda="/SDA", scl="/SCL") + sensor + pulls)] == [("unknown", "input-overvoltage")]
+    assert said(avr(sda="/SDA", scl="/SCL") + sensor.replace("+3V3", "+5V") + pulls) == []
+
+
+def test_an_interrupt_of_a_motion_sensor_drives_both_levels() -> None:
+    """From reset on the INT pins of such sensors are push-pull: 1.8 V is no high for a 3.3 V controller."""
+    low = "U12 AP2112K-1.8 Regulator_Linear:x | 1 VIN power_in +3V3 | 2 GND power_in GND | 3 EN input +3V3 | 5 VOUT power_out +1V8\n"
+    sensor = "U4 LIS3DH Sensor_Motion:x | 1 Vdd_IO power_in +1V8 | 14 Vdd power_in +1V8 | 5 GND power_in GND | 11 INT1 output /INT\n"
+    assert said(low + sensor + esp(io="/INT")) == [("malfunction", "high-not-reached", "U2.26")]
+
+
+@pytest.mark.parametrize(("net", "settled"), [("/UART_TX", True), ("/TX", True), ("/GPIO", False)])
+def test_a_serial_net_settles_pins_that_can_be_its_ends(net: str, settled: bool) -> None:
+    header = (
+        "J1 Raspberry_Pi_2_3 Connector:Raspberry_Pi_2_3 | 2 5V power_in +5V | 1 3V3 power_in +3V3 | 6 GND power_in GND"
+    )
+    pins = case_of(SUPPLIES + header + f" | 8 GPIO14/TXD bidirectional {net}\n" + avr(rx=net)).pins
+    assert (not pins["J1", "8"].when) is settled
+
+
+def test_a_pull_up_does_not_stand_for_what_an_output_does_on_its_line() -> None:
+    """A 5 V output on the line of a 3.3 V pin is its own matter, whatever pulls the line up."""
+    found = findings_of(SUPPLIES + avr(io="/RST") + esp(io="/RST") + resistor("R1", "10k", "+5V", "/RST"))
+    assert [(one.outcome.value, one.rule, bool(one.condition)) for one in found] == [
+        ("damage", "input-overvoltage", True),
+        ("marginal", "pull-up-rail", False),
+    ]

@@ -161,7 +161,7 @@ class _Finder:
             volts = Spread.around(host[1], 0.05)
             why = f"{pin.part} goes to a {host[2]}"
             rail, style, basis = "", False, Basis.TRACED
-        elif pulled:
+        elif pulled and not self._fed_with_less(pin, pulled):
             rail, volts = max(pulled, key=lambda pull: pull[1].nominal)
             why = (
                 f"the other side of {pin.part}.{pin.number} is an open-drain line at the level of its pull-up to {rail}"
@@ -177,7 +177,7 @@ class _Finder:
             if volts.nominal > MOST_LOGIC_VOLTS:
                 return pin
             why = f"the other side of {pin.part}.{pin.number} works from {rail}, the only supply on {pin.part}"
-            style, basis = False, Basis.ASSUMED
+            style, basis = bool(pulled), Basis.ASSUMED
         return replace(
             pin,
             supply=rail,
@@ -192,6 +192,12 @@ class _Finder:
             inferred_far_end=True,
             why=why,
         )
+
+    def _fed_with_less(self, pin: PinModel, pulled: Sequence[tuple[str, Spread]]) -> bool:
+        """Tell whether all supplies on the pin's connector lie below its pull-up: then that need not be the level there."""
+        level = max(volts.nominal for _, volts in pulled)
+        supplies = self.supplies_on.get(pin.part, [])
+        return bool(supplies) and all(volts.nominal < (1 - SAME_SUPPLY) * level for _, volts in supplies)
 
     def _note_higher(self, pin: PinModel, pulled: Sequence[tuple[str, Spread]]) -> None:
         """Note that a pull-up tells the level only if what is plugged in has none of its own to a higher supply."""

@@ -8,6 +8,7 @@ from collections.abc import Iterable, Mapping, Set
 from dataclasses import replace
 
 from levelcrossing.model import Element, LineRate, PartFacts, PinModel, Rails
+from levelcrossing.pinnames import SERIAL_IN, SERIAL_OUT, pin_words
 
 # Direction pins of plain transceivers (74xx245 and kin): high is A to B (data sheets of the family).
 # Series resistors in bus lines are a few hundred ohms at most (UM10204 section 7.1.2); pull-ups are a kilohm and more.
@@ -16,6 +17,8 @@ HOST_GROUPS = frozenset({"mcu", "fpga"})
 # Names of lines of the serial peripheral interface that say who drives: host in, host out, and its clock.
 HOST_READS = re.compile(r"(.*[_.-])?(MISO|CIPO|POCI|SOMI)\d?([_.-].*)?", re.IGNORECASE)
 HOST_DRIVES = re.compile(r"(.*[_.-])?(MOSI|COPI|PICO|SIMO|SCK|SCLK)\d?([_.-].*)?", re.IGNORECASE)
+# Names of nets that carry an asynchronous serial line.
+SERIAL_NET = re.compile(r"(.*[_.\-])?(U?S?ART\d?|SERIAL\d?|(RX|TX)[DOI]?\d?)([_.\-].*)?", re.IGNORECASE)
 PLAIN_DIRECTION = re.compile(r"(\d?)(?:DIR|T/?~?R|A->B)(\d?)", re.IGNORECASE)
 
 
@@ -150,6 +153,36 @@ def settle_hosts(
             settled[hosts[0]] = replace(host, drive=None, when="", why=f"the controller reads {name}")
         elif drives and any(pin.receive is not None for pin in others):
             settled[hosts[0]] = replace(host, when="", why=f"the controller drives {name}")
+    return settled
+
+
+def settle_serial_lines(pins: Mapping[tuple[str, str], PinModel]) -> dict[tuple[str, str], PinModel]:
+    """Let TXD and RXD among a configurable pin's names say what it does on a net that is called after a serial line.
+
+    Parameters
+    ----------
+    pins : mapping
+        (reference, number) to PinModel.
+
+    Returns
+    -------
+    dict
+        All pins.
+    """
+    settled = dict(pins)
+    for key, pin in pins.items():
+        if not pin.when or pin.drive is None or pin.receive is None or pin.drive.style != "push-pull":
+            continue
+        if not SERIAL_NET.fullmatch(pin.net.rpartition("/")[2]):
+            continue
+        words = pin_words(pin.name)
+        out, into = (any(pattern.fullmatch(word) for word in words) for pattern in (SERIAL_OUT, SERIAL_IN))
+        if out and not into:
+            settled[key] = replace(pin, when="", why=f"{pin.net} is a serial line, and the pin can be its output")
+        elif into and not out:
+            settled[key] = replace(
+                pin, drive=None, when="", why=f"{pin.net} is a serial line, and the pin can be its input"
+            )
     return settled
 
 

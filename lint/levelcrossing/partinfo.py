@@ -178,7 +178,7 @@ def _alike(one: PinFacts, other: PinFacts) -> bool:
 def _names(pattern: str) -> str:
     """Return a pattern of pin names as people write a list; # stands for a digit, … for more of the name."""
     text = re.sub(r"\(\?![^)]*\)", "", pattern)
-    text = re.sub(r"\\d[?+*]?", "#", text).replace(".*", "…").replace("\\", "").replace("?", "")
+    text = re.sub(r"\\d[?+*]?", "#", text).replace(".*", "…").replace("\\w*", "…").replace("\\", "").replace("?", "")
     text = text[1:-1] if text.startswith("(") and text.endswith(")") and text.count("(") == 1 else text
     return ", ".join(dict.fromkeys(text.split("|"))) if "(" not in text else text.replace("|", ", ")
 

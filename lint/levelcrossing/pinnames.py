@@ -12,6 +12,9 @@ SUPPLY_NAME = re.compile(
     re.IGNORECASE,
 )
 
+# Names of the ends of an asynchronous serial line, from the part's own point of view.
+SERIAL_OUT, SERIAL_IN = (re.compile(rf"(U(ART)?\d?_?)?{way}(D|O|I)?\d?", re.IGNORECASE) for way in ("TX", "RX"))
+
 
 def pin_words(name: str) -> tuple[str, ...]:
     """Split a pin name into its alternates, without overbars: ``~{RESET}/PC6`` gives ``RESET`` and ``PC6``.

@@ -26,7 +26,8 @@ from levelcrossing.model import (
     Settings,
     Spread,
 )
-from levelcrossing.pinnames import looks_like_supply, pin_words
+from levelcrossing.pinnames import SERIAL_IN, SERIAL_OUT, looks_like_supply, pin_words
+from levelcrossing.trade_pins import matches
 from levelcrossing.tradebook import Tradebook
 from levelcrossing.units import format_volts
 
@@ -61,9 +62,9 @@ OPEN_DRAIN_NAME = re.compile(
     r".*(PGOOD|PWRGD|POK|PG$|^PG|ALERT|ALERTB|INT[B#N]?\d?$|IRQ|FAULT|FLT|nINT|OVCUR|OC$|CHRG|STDBY|STAT\d?$|STATUS|RDY/BSY).*",
     re.I,
 )
+PLUGGED_IN_GROUPS = frozenset({"memory", "sensor", "display", "module", "transceiver"})
 # Connectors of more pins are for boards of their own, of which one row does not tell all (SODIMM modules and the like).
 MOST_MODULE_PINS = 48
-SERIAL_OUT, SERIAL_IN = (re.compile(rf"(U(ART)?\d?_?)?{way}(D|O|I)?\d?", re.I) for way in ("TX", "RX"))
 STRICT_SUPPLY = re.compile(r"[AD]?V(DD|CC|PP|EE|TT)[A-Z0-9_]*", re.I)
 TWO_WAY_NAME = re.compile(r"(SDA|SCL|SMB|DQ|1W|IO|GPIO|P[A-Z]?\d|D\d|SDIO|ALERT|BUSY)", re.I)
 READ_NAME = re.compile(
@@ -274,10 +275,23 @@ def _plugged_in(part: Part, rails: Rails, book: Tradebook) -> PartFacts | None:
     A socket for an SD card or a header called HC-SR04 is no connector of which nothing tells the other side.
     """
     known = book.part(part) if len(part.pins) <= MOST_MODULE_PINS else None
-    if known is None or known.translator is not None or known.group not in ("memory", "sensor", "display", "module"):
+    if known is None or known.translator is not None or known.group not in PLUGGED_IN_GROUPS:
         return None
     supplied = [pin for pin in part.pins if known.pin(pin).direction == "supply" and rails.volts(pin.net) is not None]
+    if any(_out_of_range(pin, known, rails) for pin in supplied):
+        # The bare part would not work from it: there is a carrier board with a regulator of its own, and nothing tells more.
+        return None
     return known if supplied else None
+
+
+def _out_of_range(pin: Pin, known: PartFacts, rails: Rails) -> bool:
+    volts = rails.volts(pin.net)
+    ranges = [one for one in known.supplies if matches(one.pins, pin.name) and one.low_volts is not None]
+    if volts is None or not ranges:
+        return False
+    return not any(
+        (one.low_volts or 0.0) * 0.95 <= volts.nominal <= (one.high_volts or volts.nominal) * 1.05 for one in ranges
+    )
 
 
 def _plain(pin: Pin, role: str, why: str = "") -> PinModel:
@@ -513,14 +527,31 @@ class _PartModeller:
         """Return the rail net, its voltage and, when neither can be told, why."""
         if setting is not None and (setting.volts is not None or setting.rail):
             return setting.rail, setting.volts or self.rails.volts(setting.rail), ""
-        if facts.supply_volts is not None:
-            return "", Spread.around(facts.supply_volts, 0.05), ""
         if facts.supply:
             wanted = re.compile(facts.supply, re.I)
             matching = [candidate for candidate in self.supply_pins if _named(wanted, candidate)]
             chosen = self._one_of(pin, matching)
             if chosen is not None:
                 return chosen[0], chosen[1], chosen[2]
+        if facts.supply_volts is not None:
+            return "", Spread.around(facts.supply_volts, 0.05), ""
+        if facts.supply:
+            rail, volts, why = self._usual_supply(pin)
+            if volts is not None and not self._fits_io(volts):
+                # A board of its own is fed with more than its pins work from; its regulator's output is not connected.
+                return "", None, f"the I/O supply of {self.part.reference} is on no rail with a known voltage"
+            return rail, volts, why
+        return self._usual_supply(pin)
+
+    def _fits_io(self, volts: Spread) -> bool:
+        """Tell whether a voltage is not above what the trade data gives for the part's I/O supply."""
+        if self.facts is None or self.facts.translator is not None:
+            return True
+        most = [one.high_volts for one in self.facts.supplies if one.role == "io" and one.high_volts is not None]
+        return not most or volts.nominal <= 1.1 * max(most)
+
+    def _usual_supply(self, pin: Pin) -> tuple[str, Spread | None, str]:
+        """Return what the names of supply pins suggest, as :meth:`_supply`."""
         for pattern in IO_SUPPLY_NAMES:
             matching = [
                 candidate

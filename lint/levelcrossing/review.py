@@ -78,6 +78,7 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
     rails = rail_tracing.trace_rails(board, book, settings)
     pins, facts = pin_models.model_pins(board, rails, book, settings)
     pins = directions.settle_hosts(directions.settle_directions(pins, facts, rails), facts)
+    pins = directions.settle_serial_lines(pins)
     elements = island_survey.find_elements(board, book, facts, settings)
     rates = busrates.line_rates(board, pins, book.buses, settings)
     pins = directions.settle_open_drains(pins, rates, directions.pulled_up(elements, pins, rails))

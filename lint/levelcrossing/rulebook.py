@@ -35,6 +35,9 @@ class RuleFile:
     explains : tuple of str
         Rules whose findings on the same circuit this one's finding stands for.
     check : callable
+    covers : callable or None
+        ``covers(case, finding, other)``: whether a finding of this rule stands for another, where that depends on more
+        than their rules and places.
     path : str
     """
 
@@ -50,6 +53,7 @@ class RuleFile:
     explains: tuple[str, ...]
     check: Callable[[CaseFile], Iterable[Finding]]
     path: str
+    covers: Callable[[CaseFile, Finding, Finding], bool] | None = None
 
 
 def rules_folder() -> Path:
@@ -131,6 +135,7 @@ def _load(path: Path) -> RuleFile:
         explains=tuple(getattr(module, "EXPLAINS", ())),
         check=check,
         path=str(path),
+        covers=getattr(module, "covers", None),
     )
 
 
@@ -167,7 +172,7 @@ def run_rules(rules: Sequence[RuleFile], case: CaseFile) -> tuple[Finding, ...]:
     tuple of Finding
     """
     found = [finding for rule in rules for finding in rule.check(case)]
-    kept = consolidate(found, {rule.name: rule.explains for rule in rules}, case)
+    kept = consolidate(found, rules, case)
     return tuple(sorted(kept, key=finding_order))
 
 
@@ -187,14 +192,13 @@ def finding_order(finding: Finding) -> tuple[object, ...]:
     )
 
 
-def consolidate(found: Sequence[Finding], explains: dict[str, tuple[str, ...]], case: CaseFile) -> list[Finding]:
+def consolidate(found: Sequence[Finding], rules: Sequence[RuleFile], case: CaseFile) -> list[Finding]:
     """Let a finding that explains others stand for them.
 
     Parameters
     ----------
     found : sequence of Finding
-    explains : dict
-        Rule name to the names of the rules that it explains.
+    rules : sequence of RuleFile
     case : CaseFile
 
     Returns
@@ -202,6 +206,8 @@ def consolidate(found: Sequence[Finding], explains: dict[str, tuple[str, ...]], 
     list of Finding
         The explaining finding takes the worst outcome of those it stands for and lists their places in ``also``.
     """
+    explains = {rule.name: rule.explains for rule in rules}
+    covers = {rule.name: rule.covers for rule in rules if rule.covers is not None}
 
     def island_of(finding: Finding) -> int | None:
         if finding.crossing is None:
@@ -228,8 +234,13 @@ def consolidate(found: Sequence[Finding], explains: dict[str, tuple[str, ...]], 
                 other.crossing == head.crossing
                 or (island_of(other) is not None and island_of(other) == island_of(head) and _shares(head, other, case))
             )
-            same_rule = other.rule == head.rule and bool(head.cause) and head.cause == other.cause
-            if ((same_circuit or _same_channel(head, other, case)) and other.rule in names) or same_rule:
+            same_rule = other.rule == head.rule and (
+                (bool(head.cause) and head.cause == other.cause) or _same_output(head, other, case)
+            )
+            explained = other.rule in names and (same_circuit or _same_channel(head, other, case))
+            if explained and head.rule in covers:
+                explained = covers[head.rule](case, head, other)
+            if explained or same_rule:
                 absorbed.add(other_index)
                 head = _merged(head, other)
         result.append(head)
@@ -244,6 +255,24 @@ def _shares(head: Finding, other: Finding, case: CaseFile) -> bool:
     crossing = case.crossings[other.crossing].crossing
     ends = {pin.part for pin in (crossing.driver, crossing.stage_driver, crossing.receiver) if pin is not None}
     return head.part in {*crossing.link, *crossing.shifter.parts, *crossing.through, *ends}
+
+
+def _same_output(head: Finding, other: Finding, case: CaseFile) -> bool:
+    """Two findings at one receiver go back to one output: a translator's, seen alone and with what drives it."""
+    if head.crossing is None or other.crossing is None or (head.part, head.pin) != (other.part, other.pin):
+        return False
+    outputs = [
+        case.crossings[index].crossing.stage_driver or case.crossings[index].crossing.driver
+        for index in (head.crossing, other.crossing)
+    ]
+    stages = [case.crossings[index].crossing.stage_driver is not None for index in (head.crossing, other.crossing)]
+    return (
+        any(stages)
+        and not all(stages)
+        and outputs[0] is not None
+        and outputs[1] is not None
+        and (outputs[0].part, outputs[0].number) == (outputs[1].part, outputs[1].number)
+    )
 
 
 def _same_channel(head: Finding, other: Finding, case: CaseFile) -> bool:

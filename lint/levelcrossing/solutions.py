@@ -13,6 +13,7 @@ from levelcrossing.breakeven import break_even
 from levelcrossing.circuits import MOST_NODES, Builder, level_at
 from levelcrossing.corners import Codes, Variable, all_corners, chosen_corners, in_words, one_at_a_time
 from levelcrossing.model import (
+    Basis,
     BipolarFacts,
     Crossing,
     Element,
@@ -185,8 +186,8 @@ class _Solver:
             influence=influence,
         )
         result = self._with_break_evens(result, probe, receiver, supply_key, codes, answer, limits)
-        if receiver.inferred_far_end:
-            # What is plugged in there may read as guessed; what it bears is its own affair.
+        if receiver.inferred_far_end and receiver.drive is not None and receiver.drive.basis is Basis.TRACED:
+            # What is plugged in there works at the level of the pull-up; what it bears is its own affair.
             result = replace(result, rating_margin=None, low_rating_margin=None)
         return result, limits
 

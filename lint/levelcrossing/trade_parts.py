@@ -167,6 +167,7 @@ def excepted(base: PinFacts, values: Mapping[str, Any], row: Row) -> PinFacts:
             changes[field] = level(values[key])
     if "io_volts" in values:
         changes["supply_volts"] = float(values["io_volts"])
+        changes["supply"] = values.get("supply")
     if "pull_up_ohms" in values:
         changes["pull_up_ohms"] = float(values["pull_up_ohms"])
     if "capacitance_picofarads" in values:
