@@ -17,7 +17,7 @@ takes nothing at the usual values and less than 100 µA in the worst corner: tha
 from collections.abc import Iterator
 
 from levelcrossing.model import CaseFile, Finding, Outcome
-from levelcrossing.units import format_volts
+from levelcrossing.units import format_amps, format_volts
 
 NAME = "clamp-current"
 OUTCOME = Outcome.DAMAGE
@@ -54,13 +54,13 @@ def check(case: CaseFile) -> Iterator[Finding]:
         limit = receive.injection_amps
         text = (
             f"{solved.crossing.target} would rise to {format_volts(worst.open_volts.nominal)} (rating {format_volts(worst.rating_margin.limit)}); its clamp diode holds it "
-            f"and takes {_milliamperes(amps.nominal)}, {_milliamperes(amps.high)} at worst, from {solved.crossing.source}"
+            f"and takes {format_amps(amps.nominal)}, {format_amps(amps.high)} at worst, from {solved.crossing.source}"
         )
         if limit is not None:
             if amps.high <= limit * (1 + 1e-9):
                 continue
             outcome = Outcome.DAMAGE if amps.nominal > limit else Outcome.MARGINAL
-            text += f"; the maker allows {_milliamperes(limit)}."
+            text += f"; the maker allows {format_amps(limit)}."
         elif amps.nominal > UNRATED_AMPS:
             outcome = Outcome.DAMAGE
             text += "; no injection current is known for this part, and above 1 mA is not defensible (common practice)."
@@ -74,9 +74,3 @@ def check(case: CaseFile) -> Iterator[Finding]:
             text,
             cause=f"over {solved.crossing.receiver.part}.{solved.crossing.receiver.number} {solved.crossing.driver_rail}",
         )
-
-
-def _milliamperes(amps: float) -> str:
-    if amps < 1e-6:
-        return "less than 1 µA"
-    return f"{amps * 1e3:.2g} mA" if amps >= 1e-4 else f"{amps * 1e6:.2g} µA"

@@ -16,7 +16,7 @@ and when a clamp diode would not even begin to conduct.
 from collections.abc import Iterator
 
 from levelcrossing.model import CaseFile, Finding, Outcome
-from levelcrossing.units import format_volts
+from levelcrossing.units import format_amps, format_volts
 
 NAME = "input-overvoltage"
 OUTCOME = Outcome.DAMAGE
@@ -60,7 +60,7 @@ def check(case: CaseFile) -> Iterator[Finding]:
             f"it bears at most {format_volts(margin.limit)}"
         )
         if clamped:
-            text += f"; {worst.clamp_amps.nominal * 1e3:.1f} mA flow through its clamp diode"
+            text += f"; its clamp diode takes {format_amps(worst.clamp_amps.nominal)}, {format_amps(worst.clamp_amps.high)} at worst"
         remedy = (
             f"Tie {solved.crossing.receiver.label} to {solved.crossing.receiver_rail or 'its own supply'}."
             if tied

@@ -317,3 +317,44 @@ def test_a_pull_up_does_not_stand_for_what_an_output_does_on_its_line() -> None:
         ("damage", "input-overvoltage", True),
         ("marginal", "pull-up-rail", False),
     ]
+
+
+MUX = (
+    "U4 TCA9548APWR Interface_Expansion:x | 24 VCC power_in {rail} | 12 GND power_in GND | 23 SDA bidirectional /SDA"
+    " | 22 SCL input /SCL | 4 SD0 bidirectional /SD0 | 5 SC0 bidirectional /SC0\n"
+    "U3 DS1307Z Timer_RTC:x | 8 VCC power_in +5V | 4 GND power_in GND | 5 SDA bidirectional /SD0 | 6 SCL input /SC0\n"
+)
+MUX_PULLS = "".join(
+    resistor(f"R{n}", "4.7k", rail, net)
+    for n, (rail, net) in enumerate((("+3V3", "/SDA"), ("+3V3", "/SCL"), ("+5V", "/SD0"), ("+5V", "/SC0")), 1)
+)
+
+
+@pytest.mark.parametrize(("rail", "expected"), [("+3V3", []), ("+5V", [("marginal", "clamp-current", "U2.33")])])
+def test_a_multiplexer_passes_no_more_than_its_supply_lets_through(
+    rail: str, expected: list[tuple[str, str, str]]
+) -> None:
+    """TI TCA9548A SCPS207: at 3.3 V it passes at most 2.8 V, at 5 V up to 4.5 V, which a 3.3 V controller does not bear."""
+    text = MUX.format(rail=rail) + MUX_PULLS + esp(sda="/SDA", scl="/SCL")
+    ends = {(one.crossing.driver.part, one.crossing.receiver.part) for one in case_of(SUPPLIES + text).crossings}
+    assert ends == {("U3", "U2"), ("U2", "U3")}
+    assert said(text) == expected
+
+
+def test_a_stage_of_npn_transistors_ends_below_its_supply() -> None:
+    """TI NE555 at 5 V: 3.3 V typical at 100 mA; unloaded about two junctions below the supply."""
+    timer = (
+        "U5 {value} Timer:x | 8 VCC power_in +5V | 1 GND power_in GND | 3 Q output /X | 4 R input +5V | 5 CV input /C\n"
+    )
+    bipolar, cmos = (findings_of(SUPPLIES + timer.format(value=value) + esp(io="/X")) for value in ("NE555P", "TLC555"))
+    assert [(one.rule, one.outcome.value) for one in bipolar] == [("input-overvoltage", "marginal")]
+    assert [(one.rule, one.outcome.value) for one in cmos] == [("input-overvoltage", "damage")]
+
+
+def test_a_memory_on_lines_with_names_is_used_one_way() -> None:
+    flash = (
+        "U4 W25Q128JVS Memory_Flash:x | 8 VCC power_in +3V3 | 4 GND power_in GND | 6 CLK input /SCK"
+        " | 5 DI(IO0) bidirectional /MOSI | 2 DO(IO1) bidirectional /MISO\n"
+    )
+    pins = case_of(SUPPLIES + flash + avr(mosi="/MOSI", miso="/MISO", sck="/SCK")).pins
+    assert pins["U4", "5"].drive is None and pins["U1", "16"].drive is None and not pins["U4", "2"].when

@@ -131,7 +131,7 @@ def settle_hosts(
     Returns
     -------
     dict
-        All pins. Settled are those of the only controller on a net with another part that drives or reads it and no
+        All pins. Settled are those of memories and of the only controller on a net with another part that drives or reads it and no
         connector: a programmer plugged in there would make the controller the device.
     """
     on_net: dict[str, list[tuple[str, str]]] = defaultdict(list)
@@ -146,6 +146,16 @@ def settle_hosts(
         others = [pins[key] for key in keys if key not in hosts]
         if not (reads or drives) or len(hosts) != 1 or not others or any(pin.role == "far-end" for pin in others):
             continue
+        for key in keys:
+            pin = pins[key]
+            # Of a memory with several data pins the name says which way this one is used.
+            if (
+                key[0] in facts
+                and facts[key[0]].group == "memory"
+                and pin.drive is not None
+                and pin.receive is not None
+            ):
+                settled[key] = replace(pin, drive=None) if drives else replace(pin, when="")
         host = pins[hosts[0]]
         if not host.when or host.drive is None or host.receive is None or host.drive.style != "push-pull":
             continue

@@ -336,6 +336,8 @@ class PinFacts:
         Continuous input clamp current that the maker allows [A].
     outputs : tuple of OutputPoint
         Rated output points.
+    open_high : Level or None
+        High of the unloaded output [V], where that is not the supply.
     output_amps : float or None
         Absolute maximum output current [A].
     capacitance_farads : float or None
@@ -362,6 +364,7 @@ class PinFacts:
     clamp_low: bool | None = None
     injection_amps: float | None = None
     outputs: tuple[OutputPoint, ...] = ()
+    open_high: Level | None = None
     output_amps: float | None = None
     capacitance_farads: float | None = None
     side: str = ""

@@ -157,13 +157,13 @@ def drive_from(facts: PinFacts, style: str, part: PartFacts | None, supply_volts
 
     Notes
     -----
-    An unloaded CMOS output reaches its supply; at a rated point it may drop ``V - VOH`` at ``IOH``. The ratio is the
+    An unloaded CMOS output reaches its supply, others what their row says; at a rated point it may drop ``V - VOH`` at ``IOH``. The ratio is the
     worst output resistance. Real parts have about two fifths of it (common practice), at least a sixth.
     """
     high_worst, low_worst = UNKNOWN_OUTPUT_OHMS.high, UNKNOWN_OUTPUT_OHMS.high
     basis = Basis.ASSUMED if part is None else Basis.LIBRARY
     rated_low: float | None = None
-    high = level_text("V")
+    high = facts.open_high or level_text("V")
     points = sorted(facts.outputs, key=lambda point: abs(point.supply_volts - (supply_volts or point.supply_volts)))
     known = bool(points)
     highs = [point for point in points if point.voh is not None and point.ioh_amps > 0]
@@ -171,7 +171,7 @@ def drive_from(facts: PinFacts, style: str, part: PartFacts | None, supply_volts
     high_point = next((point for point in highs if point.ioh_amps >= 1e-3), highs[0] if highs else None)
     low_point = next((point for point in lows if point.iol_amps >= 1e-3), lows[0] if lows else None)
     if high_point is not None and high_point.voh is not None:
-        drop = high_point.supply_volts - high_point.voh.at(high_point.supply_volts)
+        drop = high.at(high_point.supply_volts) - high_point.voh.at(high_point.supply_volts)
         high_worst = drop / high_point.ioh_amps if drop > 0 else high_worst
     if low_point is not None and low_point.vol is not None:
         low_worst = low_point.vol.at(low_point.supply_volts) / low_point.iol_amps

@@ -123,6 +123,7 @@ def _base(row: Row) -> PinFacts:
         clamp_low=None if clamp is None else True,
         injection_amps=scaled(row.get("clamp_milliamperes"), 1e-3),
         outputs=output_points(row.get("outputs", ())),
+        open_high=level(row.get("output_high_volts")),
         output_amps=scaled(row.get("output_max_milliamperes"), 1e-3),
         capacitance_farads=scaled(row.get("capacitance_picofarads"), 1e-12),
         pull_up_ohms=row.get("pull_up_ohms"),

@@ -46,6 +46,7 @@ _INPUT = {
     "input_min_volts": "level",
     "clamp_milliamperes": "number",
     "capacitance_picofarads": "number",
+    "output_high_volts": "level",
     "output_max_milliamperes": "number",
 }
 _FORWARD = {"forward": "rows:forward", "capacitance_picofarads": "number"}

@@ -411,6 +411,23 @@ def format_si(value: float, unit: str, digits: int = 3) -> str:
     return f"{_trimmed(f'{shown:.{decimals}f}')} {symbol}{unit}"
 
 
+def format_amps(amps: float) -> str:
+    """Return a small current in words of the trade: ``1.1 mA``, ``90 µA``, ``less than 1 µA``.
+
+    Parameters
+    ----------
+    amps : float
+        Current [A].
+
+    Returns
+    -------
+    str
+    """
+    if amps < 1e-6:
+        return "less than 1 µA"
+    return f"{amps * 1e3:.2g} mA" if amps >= 1e-4 else f"{amps * 1e6:.2g} µA"
+
+
 def format_volts(volts: float, decimals: int = 2) -> str:
     """Return a voltage for reading: to 10 mV, without idle zeros.
 
