@@ -4,8 +4,8 @@ Why: a clean report must mean "judged and sound", never "not understood".
 
 What to do: declare the far end of the connector, the rail, or the pin in levelcrossing.toml; the finding names the line.
 
-Speaks when a signal leaves the board at a connector whose level nothing tells, and when the supply of a part's signal pins
-cannot be told; one finding per part.
+Speaks when a signal leaves the board at a connector whose level nothing tells, when the supply of a part's signal pins
+cannot be told, and when a transistor on a signal is of unknown kind; one finding per part.
 
 Stays quiet when every signal pin of the part was judged, and for analogue and differential lines.
 """
@@ -26,6 +26,17 @@ def check(case: CaseFile) -> Iterator[Finding]:
     for pin, why in case.not_judged:
         by_part[pin.part, why].append(pin.number)
     nets = {(pin.part, pin.number): pin.net for pin in case.pins.values()}
+    for part, value in case.left_out:
+        name = f"{part} ({value})" if value else part
+        yield Finding(
+            rule=NAME,
+            outcome=Outcome.UNKNOWN,
+            text=f"{name} is left out of every circuit: neither its number nor its symbol tells what transistor it is.",
+            remedy="Give its type as value, take a symbol that shows its polarity, or add a [[mosfet]] or [[bipolar]] row to levelcrossing-parts.toml.",
+            part=part,
+            basis=Basis.ASSUMED,
+            cause=f"unknown transistor {part}",
+        )
     for (part, why), numbers in sorted(by_part.items()):
         far = case.pins[part, numbers[0]].role == "far-end"
         if far:

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import pytest
-from gauge_cells import BUS, MOSFET_PAIR, PULL_UPS, SUPPLIES, resistor
-from small_boards import board_of, case_of
+from gauge_cells import BUS, CONTROLLER, MOSFET_PAIR, PULL_UPS, SUPPLIES, resistor
+from small_boards import board_of, case_of, findings_of
 
 from levelcrossing.diodepins import diode_pairs
 from levelcrossing.islands import MOSFET_TERMINALS, SOT23_MOSFET, transistor_devices
@@ -65,3 +65,17 @@ def test_diode_pins(value: str, pins: str, expected: list[tuple[str, str]]) -> N
     """Pin order of KiCad's symbols and of the makers' packages."""
     part = board_of(f"D1 {value} Device:D | {pins}").parts[0]
     assert [(anode.net, cathode.net) for anode, cathode in diode_pairs(part)] == expected
+
+
+def test_a_transistor_of_unknown_kind_is_named_where_it_touches_a_signal() -> None:
+    """It holds no circuit together, and a report without it would look clean."""
+    text = (
+        SUPPLIES
+        + CONTROLLER
+        + "Q5 {value} Transistor_FET:{value} | 1 G input {net} | 3 S passive GND | 2 D passive /LOAD\n"
+    )
+    unknown = findings_of(text.format(value="XQ9", net="/A"))
+    assert [(one.rule, one.outcome.value, one.part) for one in unknown] == [("pin-unknown", "unknown", "Q5")]
+    assert "neither its number nor its symbol" in unknown[0].text
+    assert not findings_of(text.format(value="BSS138", net="/A"))
+    assert not findings_of(text.format(value="XQ9", net="/ALONE"))

@@ -271,3 +271,29 @@ def find_islands(
             )
         )
     return tuple(islands)
+
+
+def left_out(board: Board, elements: Sequence[Element], islands: Sequence[Island]) -> tuple[tuple[str, str], ...]:
+    """Return the transistors that no circuit holds although they touch signals, each with its value.
+
+    Parameters
+    ----------
+    board : Board
+    elements : sequence of Element
+    islands : sequence of Island
+
+    Returns
+    -------
+    tuple of (str, str)
+        References and values of fitted transistors of which neither number nor symbol tells the polarity.
+    """
+    modelled = {element.part for element in elements}
+    signals = {net for island in islands if any(pin.role == "signal" for pin in island.pins) for net in island.nets}
+    return tuple(
+        (part.reference, part.value)
+        for part in board.parts
+        if part.fitted
+        and part.reference not in modelled
+        and partkinds.kind_of(part) == "transistor"
+        and any(pin.net in signals for pin in part.pins)
+    )

@@ -1429,6 +1429,8 @@ class CaseFile:
     settings: Settings
     not_judged: tuple[tuple[PinModel, str], ...] = ()
     line_rates: Mapping[str, LineRate] = field(default_factory=dict)
+    left_out: tuple[tuple[str, str], ...] = ()
+    """Transistors that no circuit holds, with their values: nothing tells what they are."""
 
     def pins_of(self, part: str) -> Iterator[PinModel]:
         """Yield the pins of one part."""

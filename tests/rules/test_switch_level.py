@@ -76,15 +76,22 @@ def test_a_diode_that_blocks_leaves_the_pin_without_a_say() -> None:
 
 @pytest.mark.parametrize(
     ("part", "expected"),
-    [("AO3400A", []), ("2N7002", []), ("BSS138", []), ("2N7000", [])],
+    [
+        ("AO3400A", []),
+        ("2N7002", []),
+        ("BSS138", []),
+        ("2N7000", []),
+        ("IRLZ44N", []),
+        ("IRF540N", [Outcome.MALFUNCTION]),
+    ],
 )
 def test_a_low_side_switch_needs_its_greatest_threshold_and_something_over(part: str, expected: list[Outcome]) -> None:
-    """Greatest thresholds 1.5, 2.5, 1.5 and 3.0 V (AOS, onsemi data sheets) against 3.23 V and 2.94 V less 0.2 V."""
+    """Greatest thresholds 1.5, 2.5, 1.5, 3.0, 2.0, 4.0 V (makers' sheets) against 3.23 V and 2.94 V less 0.2 V."""
     text = SUPPLIES + CONTROLLER + LOW_SIDE.format(part=part)
     assert outcomes(text) == expected
     assert all(one.crossing.segment for one in case_of(text).crossings)
     lower = text.replace("+3V3", "+3V0").replace("AMS1117-3.3", "AMS1117-3.0")
-    assert outcomes(lower) == ([Outcome.MARGINAL] if part == "2N7000" else [])
+    assert outcomes(lower) == ([Outcome.MARGINAL] if part == "2N7000" else expected)
 
 
 def test_a_transistor_that_carries_a_signal_is_judged_with_its_receiver() -> None:
