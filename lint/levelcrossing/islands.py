@@ -273,7 +273,9 @@ def find_islands(
     return tuple(islands)
 
 
-def left_out(board: Board, elements: Sequence[Element], islands: Sequence[Island]) -> tuple[tuple[str, str], ...]:
+def left_out(
+    board: Board, elements: Sequence[Element], islands: Sequence[Island], book: Tradebook
+) -> tuple[tuple[str, str], ...]:
     """Return the transistors that no circuit holds although they touch signals, each with its value.
 
     Parameters
@@ -281,6 +283,8 @@ def left_out(board: Board, elements: Sequence[Element], islands: Sequence[Island
     board : Board
     elements : sequence of Element
     islands : sequence of Island
+    book : Tradebook
+        Arrays of transistors that it knows as drivers are none of these.
 
     Returns
     -------
@@ -296,4 +300,5 @@ def left_out(board: Board, elements: Sequence[Element], islands: Sequence[Island
         and part.reference not in modelled
         and partkinds.kind_of(part) == "transistor"
         and any(pin.net in signals for pin in part.pins)
+        and book.part(part) is None
     )

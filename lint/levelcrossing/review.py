@@ -105,7 +105,7 @@ def open_case(board: Board, settings: Settings, book: tradebook.Tradebook) -> Ca
         crossings=solved,
         settings=settings,
         line_rates=rates,
-        left_out=island_survey.left_out(board, elements, islands),
+        left_out=island_survey.left_out(board, elements, islands, book),
         not_judged=tuple((pins[entry.part, entry.pin], entry.why) for entry in survey.not_judged)
         + tuple(
             (pins[part, number], "the level on the other side is not known") for part, number, _ in survey.far_ends
