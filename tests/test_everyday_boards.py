@@ -358,3 +358,20 @@ def test_a_memory_on_lines_with_names_is_used_one_way() -> None:
     )
     pins = case_of(SUPPLIES + flash + avr(mosi="/MOSI", miso="/MISO", sck="/SCK")).pins
     assert pins["U4", "5"].drive is None and pins["U1", "16"].drive is None and not pins["U4", "2"].when
+
+
+ARRAY = "U6 ULN2003A Transistor_Array:ULN2003A | 1 I1 input /IN | 8 GND power_in GND | 9 COM passive +5V | 16 O1 open_collector /O\n"
+
+
+@pytest.mark.parametrize(("volts", "expected"), [("3.3", []), ("1.8", [("malfunction", "high-not-reached", "U6.1")])])
+def test_a_darlington_array_needs_2_4_volts(volts: str, expected: list[tuple[str, str, str]]) -> None:
+    """TI ULN2003A SLRS027: 2.4 V at its input, whatever supplies the driver; the array itself has no supply."""
+    gate = "U4 74LVC1G34 74xGxx:x | 5 VCC power_in VLOW | 3 GND power_in GND | 2 - input GND | 4 - output /IN\n"
+    low = f"U12 AP2112K-{volts} Regulator_Linear:x | 1 VIN power_in +5V | 2 GND power_in GND | 3 EN input +5V | 5 VOUT power_out VLOW\n"
+    assert said(low + gate + ARRAY) == expected
+
+
+def test_a_darlington_transistor_pulls_no_lower_than_its_saturation() -> None:
+    text = SUPPLIES + avr(io="/IN") + ARRAY + resistor("R1", "4.7k", "+3V3", "/O") + esp(io="/O")
+    low = next(one.low for one in case_of(text).crossings if one.crossing.receiver.part == "U2")
+    assert 0.7 < low.nominal < 0.8

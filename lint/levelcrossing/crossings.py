@@ -263,7 +263,7 @@ class _Finder:
                 path = field.path(driver.net, receiver.net)
                 if path is None:
                     continue
-                yield self._crossing(field, driver, receiver, path)
+                yield self._crossing(field, driver, receiver, path, segment=self.rails.is_ground(receiver.supply))
 
     def _crossing(
         self, field: _Field, driver: PinModel, receiver: PinModel, path: Sequence[Element], **more: object
@@ -319,6 +319,7 @@ class _Finder:
                         island=field.island.index,
                         condition="",
                         level_if=level_if,
+                        segment=self.rails.is_ground(receiver.supply),
                         basis=Basis.weakest(receiver.basis, self.rails.by_net[rail].basis),
                     )
 

@@ -336,8 +336,8 @@ class PinFacts:
         Continuous input clamp current that the maker allows [A].
     outputs : tuple of OutputPoint
         Rated output points.
-    open_high : Level or None
-        High of the unloaded output [V], where that is not the supply.
+    open_high, open_low : Level or None
+        High and low of the unloaded output [V], where those are not the supply and ground.
     output_amps : float or None
         Absolute maximum output current [A].
     capacitance_farads : float or None
@@ -365,6 +365,7 @@ class PinFacts:
     injection_amps: float | None = None
     outputs: tuple[OutputPoint, ...] = ()
     open_high: Level | None = None
+    open_low: Level | None = None
     output_amps: float | None = None
     capacitance_farads: float | None = None
     side: str = ""

@@ -163,7 +163,7 @@ def drive_from(facts: PinFacts, style: str, part: PartFacts | None, supply_volts
     high_worst, low_worst = UNKNOWN_OUTPUT_OHMS.high, UNKNOWN_OUTPUT_OHMS.high
     basis = Basis.ASSUMED if part is None else Basis.LIBRARY
     rated_low: float | None = None
-    high = facts.open_high or level_text("V")
+    high, low = facts.open_high or level_text("V"), facts.open_low or level_text("0")
     points = sorted(facts.outputs, key=lambda point: abs(point.supply_volts - (supply_volts or point.supply_volts)))
     known = bool(points)
     highs = [point for point in points if point.voh is not None and point.ioh_amps > 0]
@@ -174,7 +174,8 @@ def drive_from(facts: PinFacts, style: str, part: PartFacts | None, supply_volts
         drop = high.at(high_point.supply_volts) - high_point.voh.at(high_point.supply_volts)
         high_worst = drop / high_point.ioh_amps if drop > 0 else high_worst
     if low_point is not None and low_point.vol is not None:
-        low_worst = low_point.vol.at(low_point.supply_volts) / low_point.iol_amps
+        rise = low_point.vol.at(low_point.supply_volts) - low.at(low_point.supply_volts)
+        low_worst = rise / low_point.iol_amps if rise > 0 else low_worst
         rated_low = low_point.iol_amps
     if part is not None and not known:
         basis = Basis.ASSUMED
@@ -191,7 +192,7 @@ def drive_from(facts: PinFacts, style: str, part: PartFacts | None, supply_volts
     return Drive(
         style=style,
         high=high,
-        low=level_text("0"),
+        low=low,
         high_ohms=_worst_resistance(high_worst, known),
         low_ohms=_worst_resistance(low_worst, known),
         limit_amps=facts.output_amps,
@@ -244,7 +245,8 @@ def model_pins(
         if not part.fitted or not part.pins:
             continue
         kind = partkinds.kind_of(part)
-        if kind in partkinds.ELEMENT_KINDS:
+        # Arrays of transistors that are sold as drivers have inputs and outputs.
+        if kind in partkinds.ELEMENT_KINDS and not (kind == "transistor" and book.part(part) is not None):
             for pin in part.pins:
                 pins[part.reference, pin.number] = _plain(pin, "element")
             continue
@@ -569,8 +571,17 @@ class _PartModeller:
         if chosen is not None:
             return chosen
         if not self.supply_pins:
+            ground = next((one.net for one in self.part.pins if self.rails.is_ground(one.net)), "")
+            if ground and self._stands_alone(pin):
+                # Nothing but ground feeds its inputs: their levels stand alone.
+                return ground, Spread.exactly(0.0), ""
             return "", None, f"{self.part.reference} has no supply pin that could be told"
         return "", None, f"no rail with a known voltage supplies {self.part.reference}"
+
+    def _stands_alone(self, pin: Pin) -> bool:
+        """Tell whether the trade data gives a pin levels that follow no supply."""
+        facts = self.facts.pin(pin) if self.facts is not None else PinFacts()
+        return all(one is not None and "V" not in one.text for one in (facts.vih, facts.vil, facts.vmax))
 
     def _one_of(self, pin: Pin, candidates: Sequence[Pin]) -> tuple[str, Spread | None, str] | None:
         """Choose among supply pins: those of the pin's own bank, else all when they agree on the voltage."""

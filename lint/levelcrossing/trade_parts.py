@@ -124,6 +124,7 @@ def _base(row: Row) -> PinFacts:
         injection_amps=scaled(row.get("clamp_milliamperes"), 1e-3),
         outputs=output_points(row.get("outputs", ())),
         open_high=level(row.get("output_high_volts")),
+        open_low=level(row.get("output_low_volts")),
         output_amps=scaled(row.get("output_max_milliamperes"), 1e-3),
         capacitance_farads=scaled(row.get("capacitance_picofarads"), 1e-12),
         pull_up_ohms=row.get("pull_up_ohms"),

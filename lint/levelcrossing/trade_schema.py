@@ -47,6 +47,7 @@ _INPUT = {
     "clamp_milliamperes": "number",
     "capacitance_picofarads": "number",
     "output_high_volts": "level",
+    "output_low_volts": "level",
     "output_max_milliamperes": "number",
 }
 _FORWARD = {"forward": "rows:forward", "capacitance_picofarads": "number"}
