@@ -24,7 +24,7 @@ SOLVING = (*WORDS, "numerics", "circuits")
 
 LAYERS: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     # layer: (its modules, the layers that it may know besides itself), in the order of the data
-    "vocabulary": (("levelcrossing", "errors", "model", "units", "levels"), ()),
+    "vocabulary": (("levelcrossing", "errors", "model", "model.*", "units", "levels"), ()),
     "kinds of parts": (("pinnames", "partkinds", "diodepins"), WORDS),
     "trade data": (("trade_*", "tradebook"), WORDS),
     "settings": (("declared", "symbolfields", "settings"), WORDS),
